@@ -1,0 +1,70 @@
+"""Exact market values of sale groups, solved where and when asked for, kept for whoever asks again (C9)."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+
+import numpy as np
+import numpy.typing as npt
+
+from projector.balance.holdings import Holdings
+from projector.balance.holdings_kernels import group_values
+from projector.bonds.decisions import CallEvents
+from projector.bonds.solving import MonthSolver
+
+Array = npt.NDArray[np.float64]
+BoolArray = npt.NDArray[np.bool_]
+
+
+def outstanding(events: CallEvents, month: int) -> Array:
+    """Share of each security not called up to and including a month. [-], shape (security, path)"""
+    shape = (events.start.shape[0], events.start.shape[1] - 1)
+    left = np.ones(shape)
+    count = (events.start[:, 1:] - events.start[:, :-1]).ravel()
+    cell = np.repeat(np.arange(count.size), count)
+    past = events.month <= month
+    np.multiply.at(left.reshape(-1), cell[past], 1.0 - events.share[past])
+    return left
+
+
+@dataclass
+class GroupValues:
+    """Value incl. accrued of each group at a held share of one, by month and path; never interpolated."""
+
+    holdings: Holdings
+    solver: MonthSolver
+    survival: Array  # [security, month]
+    events: CallEvents
+    known: dict[int, tuple[Array, BoolArray]] = field(default_factory=dict)
+
+    def at(self, month: int, discount: Array, wanted: BoolArray) -> Array:
+        """Values of the groups of each segment on the paths wanted. [currency], shape (group, path)
+
+        discount  P(tau) of that month; wanted [segment, path]; other cells hold what was known before, or 0
+        """
+        shape = (self.holdings.groups.count, discount.shape[1])
+        value, have = self.known.get(month, (np.zeros(shape), np.zeros(wanted.shape, dtype=np.bool_)))
+        missing = wanted & ~have
+        if missing.any():
+            fresh = self.solve(month, discount, missing)
+            rows = missing[self.holdings.groups.segment]
+            value = np.where(rows, fresh, value)
+            self.known[month] = (value, have | missing)
+        return value
+
+    def solve(self, month: int, discount: Array, wanted: BoolArray) -> Array:
+        """Solves every security of the segments wanted on those paths and adds its holdings up to groups."""
+        bonds = self.solver.bonds
+        out = np.zeros((self.holdings.groups.count, discount.shape[1]))
+        alive = bonds.maturity[self.holdings.security] > month
+        rows = np.flatnonzero(alive & wanted.any(axis=1)[self.holdings.segment])
+        if rows.size == 0:
+            return out
+        units, at = np.unique(self.holdings.security[rows], return_inverse=True)
+        left = outstanding(self.events, month)[units]
+        asked = np.zeros((units.size, discount.shape[1]), dtype=np.bool_)
+        np.logical_or.at(asked, at, wanted[self.holdings.segment[rows]])
+        unit_value = self.solver.values(month, units, discount, asked & (left > 0.0))
+        scale = self.holdings.par[rows] / 100.0 * self.survival[self.holdings.security[rows], month]
+        group_values(at, self.holdings.group[rows], scale, unit_value, left, out)
+        return out

@@ -1,0 +1,138 @@
+"""Each security's valuation spread: the one that gives its price back under the issuer's policy (C1, C6)."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass
+
+import numpy as np
+import numpy.typing as npt
+
+from projector.bonds.exercise.path_kernels import straight_values
+from projector.bonds.exercise.step_operator import GRID_FINE
+from projector.bonds.mapped import MappedBonds
+from projector.bonds.solving import ExerciseModel, Jobs, MonthSolver
+from projector.bonds.spreads import SpreadPath
+
+Array = npt.NDArray[np.float64]
+IntArray = npt.NDArray[np.int64]
+BoolArray = npt.NDArray[np.bool_]
+
+LOWEST, HIGHEST = -0.02, 0.20
+PRICE_TOLERANCE = 1e-9  # per 100
+LEAST_SLOPE = 0.2  # per 100 of price for 100 bp
+
+
+@dataclass(frozen=True)
+class Calibrated:
+    """Valuation spreads at month 0 and what they give back. shape (security,)
+
+    origin  "price", "given" or "rating_spread" (the fallback: no root between -200 and 2,000 bp, or a slope under 0.2
+            per 100 of price for 100 bp)
+    """
+
+    spread: Array
+    model_price: Array  # clean, per 100
+    clean_price: Array  # the price stated, or the model's where a spread was stated
+    slope: Array  # change of price for +100 bp [per 100]
+    origin: tuple[str, ...]
+
+
+@dataclass(frozen=True)
+class PriceToday:
+    """Dirty value at month 0 as a function of the valuation spread, the issuer's policy held (or moved with it)."""
+
+    bonds: MappedBonds
+    spreads: SpreadPath
+    model: ExerciseModel
+    discount: Array  # [tau, 1] of month 0
+    refunding_is_valuation: bool
+
+    def __call__(self, units: IntArray, spread: Array) -> Array:
+        """Holder's value of every security at its spread. [per 100], shape (unit,)"""
+        out = np.empty(units.size)
+        callable_now = np.isfinite(self.bonds.clean_price[units]).any(axis=1)
+        for s in sorted(set(self.bonds.coupon_step[units[~callable_now]].tolist())):
+            rows = np.flatnonzero(~callable_now & (self.bonds.coupon_step[units] == s))
+            value = np.empty((rows.size, 1))
+            straight_values(
+                0, int(s), units[rows], self.bonds.maturity, self.bonds.flow, spread[rows], self.discount,
+                np.ones((rows.size, 1), dtype=np.bool_), value,
+            )  # fmt: skip
+            out[rows] = value[:, 0]
+        offset = (self.bonds.maturity[units] - 1) % self.bonds.step[units] + 1
+        for s, o in sorted({(int(a), int(b)) for a, b in zip(self.bonds.step[units], offset)}):
+            rows = np.flatnonzero(callable_now & (self.bonds.step[units] == s) & (offset == o))
+            if rows.size:
+                out[rows] = self.solved(units[rows], spread[rows], s, o)
+        return out
+
+    def solved(self, units: IntArray, spread: Array, step: int, offset: int) -> Array:
+        """Holder's value of securities with rights, on one grid. [per 100], shape (unit,)"""
+        refunding = self.spreads.refunding
+        if self.refunding_is_valuation:
+            refunding = refunding.copy()
+            refunding[units, 0] = spread
+        path = SpreadPath(self.spreads.class_spread, self.spreads.fade, self.spreads.residual, refunding)
+        both = self.model.cost != 0.0 or not self.refunding_is_valuation
+        solver = MonthSolver(self.bonds, path, self.model)
+        jobs = Jobs(0, step, offset, units, np.zeros(units.size, dtype=np.int64))
+        return solver.solve(jobs, self.discount, GRID_FINE, both, holder_spread=spread)[1]
+
+
+def spread_roots(
+    price: Callable[[IntArray, Array], Array], units: IntArray, target: Array, start: Array
+) -> tuple[Array, BoolArray]:
+    """Spread at which each price meets its target, by a secant kept inside a bracket. [1/year]
+
+    The second result says where a root lies between -200 and 2,000 bp; elsewhere the spread is nan.
+    """
+    low, high = np.full(units.size, LOWEST), np.full(units.size, HIGHEST)
+    miss_low, miss_high = price(units, low) - target, price(units, high) - target
+    found = (miss_low >= 0.0) & (miss_high <= 0.0)
+    x = np.clip(start, LOWEST, HIGHEST)
+    before, miss_before = low.copy(), miss_low.copy()
+    root = np.full(units.size, np.nan)
+    open_ = np.flatnonzero(found)
+    for _ in range(60):
+        if open_.size == 0:
+            break
+        miss = price(units[open_], x[open_]) - target[open_]
+        done = np.abs(miss) <= PRICE_TOLERANCE
+        root[open_[done]] = x[open_[done]]
+        above = miss > 0.0
+        low[open_[above]] = x[open_[above]]
+        high[open_[~above]] = x[open_[~above]]
+        rise = miss - miss_before[open_]
+        rise = np.where(rise == 0.0, 1.0, rise)
+        step = x[open_] - miss * (x[open_] - before[open_]) / rise
+        inside = (step > low[open_]) & (step < high[open_])
+        before[open_], miss_before[open_] = x[open_], miss
+        closed = high[open_] - low[open_] < 1e-14
+        root[open_[closed & ~done]] = x[open_[closed & ~done]]
+        x[open_] = np.where(inside, step, 0.5 * (low[open_] + high[open_]))
+        open_ = open_[~(done | closed)]
+    root[open_] = x[open_]
+    return root, found
+
+
+def calibrate(price: PriceToday, clean_price: Array, given_spread: Array, class_spread: Array) -> Calibrated:
+    """Valuation spreads from stated prices (nan where a spread was stated instead). shape (security,)"""
+    units = np.arange(clean_price.size)
+    accrued = price.bonds.accrued[:, 0]
+    priced = np.flatnonzero(~np.isnan(clean_price))
+    spread = given_spread.copy()
+    origin = np.full(clean_price.size, "given", dtype=object)
+    root, found = spread_roots(price, priced, clean_price[priced] + accrued[priced], class_spread[priced])
+    spread[priced] = np.where(found, root, class_spread[priced])
+    value = price(units, spread)
+    slope = (price(units, spread + 1e-4) - value) * 100.0
+    flat = np.abs(slope[priced]) < LEAST_SLOPE
+    origin[priced] = np.where(found & ~flat, "price", "rating_spread")
+    back = priced[found & flat]
+    if back.size:
+        spread[back] = class_spread[back]
+        value[back] = price(back, spread[back])
+    model = value - accrued
+    stated = np.where(np.isnan(clean_price), model, clean_price)
+    return Calibrated(spread, model, stated, slope, tuple(origin.tolist()))

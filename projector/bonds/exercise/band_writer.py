@@ -1,0 +1,59 @@
+"""Writes `band_kernels.py`: the weighted sum over a band as one unrolled expression per band width.
+
+A loop over the band inside the lane loop is not vectorised well by the compiler; one expression is. Run this module
+to write the file again; a test holds the committed file to it.
+"""
+
+from __future__ import annotations
+
+from pathlib import Path
+
+BANDS = (9, 13, 21)
+
+HEAD = '''"""Weighted sums over a band, unrolled (written by `band_writer`; do not edit by hand)."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from projector.arithmetic.kernels import Floats, Integers, kernel
+'''
+
+FUNCTION = '''
+
+@kernel
+def step_back_{band}(
+    lo: int, hi: int, base: int, row: int, lanes: int, band_start: Integers, weights: Floats, value: Floats,
+    factor: Floats, out: Floats,
+) -> None:  # fmt: skip
+    """One step of the recursion with a band of {band} nodes: out = factor x sum of W V, every node and lane."""
+    n = np.uint64(lanes)
+    for i in range(lo, hi + 1):
+        r = np.uint64(i - row)
+        s = np.uint64(band_start[r] - base) * n
+        o = np.uint64(i - base) * n
+{loads}
+        for lane in range(n):
+            out[o + lane] = factor[lane] * (
+{terms}
+            )
+'''
+
+
+def one_function(band: int) -> str:
+    """Source of the kernel for one band width."""
+    loads = "\n".join(f"        w{j} = weights[r, np.uint64({j})]" for j in range(band))
+    terms = "\n".join(
+        f"                {'+ ' if j else ''}w{j} * value[s + lane{f' + np.uint64({j}) * n' if j else ''}]"
+        for j in range(band)
+    )
+    return FUNCTION.format(band=band, loads=loads, terms=terms)
+
+
+def band_kernels() -> str:
+    """Source of the whole file."""
+    return HEAD + "".join(one_function(band) for band in BANDS)
+
+
+if __name__ == "__main__":
+    Path(__file__).with_name("band_kernels.py").write_text(band_kernels(), encoding="utf-8")

@@ -1,0 +1,134 @@
+"""From a month's curve to batches of solves: deterministic bounds, lanes packed across securities, straight values.
+
+Tables are [unit, month] per 100 of par on mapped months: `flow` promised payments, `price` dirty call prices (inf where
+there is no right). Discounts are one month's P(tau) [tau, path]; spreads are continuously compounded [1/year].
+"""
+
+from __future__ import annotations
+
+import numpy as np
+
+from projector.arithmetic.elementary import exp_one
+from projector.arithmetic.kernels import Flags, Floats, Integers, kernel
+from projector.bonds.exercise.solver_kernels import LANES, solve_lanes
+
+
+@kernel
+def upper_bounds(
+    month: int, step: int, units: Integers, maturity: Integers, flow: Floats, price: Floats, cost: float,
+    spread: Floats, discount: Floats, alive: Flags, out: Floats,
+) -> None:  # fmt: skip
+    """Cost of the best policy fixed in advance, an upper bound of the issuer's continuation. [per 100], [unit, path]
+
+    The least over later rights k of the payments up to k and the bar at k, and over running to maturity.
+    Paths where the security is gone are given -inf.
+    """
+    paths = discount.shape[1]
+    for n in range(units.shape[0]):
+        u = units[n]
+        decay = exp_one(-spread[n] * step / 12.0)
+        for p in range(paths):
+            if not alive[n, p]:
+                out[n, p] = -np.inf
+                continue
+            paid = 0.0
+            best = np.inf
+            factor = 1.0
+            for t in range(month + step, maturity[u] + 1, step):
+                factor = factor * decay
+                d = discount[t - month, p] * factor
+                paid += flow[u, t] * d
+                if t < maturity[u] and price[u, t] < np.inf:
+                    stop = paid + (price[u, t] + cost) * d
+                    if stop < best:
+                        best = stop
+            out[n, p] = paid if paid < best else best
+
+
+@kernel
+def straight_values(
+    month: int, step: int, units: Integers, maturity: Integers, flow: Floats, spread: Floats, discount: Floats,
+    wanted: Flags, out: Floats,
+) -> None:  # fmt: skip
+    """Value of the promised payments after `month`. [per 100], [unit, path]; paths not wanted are left alone.
+
+    step  [month] greatest step on which all payments of these units fall, counted back from maturity
+    """
+    paths = discount.shape[1]
+    for n in range(units.shape[0]):
+        u = units[n]
+        first = month + 1 + (maturity[u] - month - 1) % step
+        start = exp_one(-spread[n] * (first - month) / 12.0)
+        decay = exp_one(-spread[n] * step / 12.0)
+        for p in range(paths):
+            if not wanted[n, p]:
+                continue
+            total = 0.0
+            factor = start
+            for t in range(first, maturity[u] + 1, step):
+                total += flow[u, t] * discount[t - month, p] * factor
+                factor = factor * decay
+            out[n, p] = total
+
+
+@kernel
+def run_jobs(
+    half_band: int, lo: Integers, hi: Integers, conv: Floats, row: int, band_start: Integers, weights: Floats,
+    growth: Floats, straight_conv: Floats, first_weights: Floats, first_local: Flags, local_x: Floats,
+    local_weights: Floats, month: int, offset: int, step: int, job_unit: Integers, job_path: Integers,
+    maturity: Integers, flow: Floats, price: Floats, cost: float, issuer_spread: Floats, holder_spread: Floats,
+    discount: Floats, both: bool, issuer_cost: Floats, holder_value: Floats,
+) -> None:  # fmt: skip
+    """Solves every job (unit, path) on that path's own curve of `month`, sixteen at a time across units.
+
+    issuer_spread, holder_spread  [job]
+    offset                        months to the first step of these units' grids
+    """
+    jobs = job_unit.shape[0]
+    for start in range(0, jobs, LANES):
+        count = min(LANES, jobs - start)
+        top = 0
+        for lane in range(count):
+            u = job_unit[start + lane]
+            top = max(top, (maturity[u] - month - offset) // step + 1)
+        steps = np.empty(LANES, dtype=np.int64)
+        first = np.zeros(LANES, dtype=np.int64)
+        last = np.zeros(LANES, dtype=np.int64)
+        ratio = np.ones((top + 1, LANES))
+        holder_ratio = np.ones((top + 1, LANES))
+        flows = np.zeros((top + 1, LANES))
+        prices = np.full((top + 1, LANES), np.inf)
+        bars = np.full((top + 1, LANES), np.inf)
+        for lane in range(LANES):
+            job = start + min(lane, count - 1)  # a short batch is filled with copies of its last job
+            u, p = job_unit[job], job_path[job]
+            steps[lane] = (maturity[u] - month - offset) // step + 1
+            decay_first = exp_one(-issuer_spread[job] * offset / 12.0)
+            decay = exp_one(-issuer_spread[job] * step / 12.0)
+            held_first = exp_one(-holder_spread[job] * offset / 12.0)
+            held = exp_one(-holder_spread[job] * step / 12.0)
+            before = 1.0
+            for k in range(1, steps[lane] + 1):
+                t = month + offset + (k - 1) * step
+                here = discount[t - month, p]
+                forward = here / before
+                before = here
+                ratio[k - 1, lane] = forward * (decay_first if k == 1 else decay)
+                holder_ratio[k - 1, lane] = forward * (held_first if k == 1 else held)
+                flows[k, lane] = flow[u, t]
+                if t < maturity[u] and price[u, t] < np.inf:
+                    prices[k, lane] = price[u, t]
+                    bars[k, lane] = price[u, t] + cost
+                    if first[lane] == 0:
+                        first[lane] = k
+                    last[lane] = k
+        cost_out = np.empty(LANES)
+        value_out = np.empty(LANES)
+        solve_lanes(
+            half_band, lo, hi, conv, row, band_start, weights, growth, straight_conv, first_weights, first_local,
+            local_x, local_weights, steps, first, last, ratio, holder_ratio, flows, prices, bars, both, cost_out,
+            value_out,
+        )  # fmt: skip
+        for lane in range(count):
+            issuer_cost[start + lane] = cost_out[lane]
+            holder_value[start + lane] = value_out[lane]

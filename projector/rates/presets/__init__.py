@@ -1,0 +1,1 @@
+"""Path sets that a regulation names."""

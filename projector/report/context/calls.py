@@ -1,0 +1,205 @@
+"""Section 10: who was called, when, why, at what cost."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from functools import cached_property
+
+import pandas as pd
+
+from projector.report import cells, words
+from projector.report.context.call_charts import call_map, par_called
+from projector.report.context.reading import Reading, total
+from projector.report.numbers import as_date, count_of, fixed
+from projector.report.parts import LARGEST_SHOWN, LONG_TABLE, Cell, Chart, Column, Row, Table, told
+from projector.report.words import explained_call
+
+NO_CALL = "not called"
+DECIDED_BY = ("bound", "solve", "second grid", "third grid")
+
+
+@dataclass(frozen=True, kw_only=True)
+class Calls:
+    """Section 10."""
+
+    any_callable: bool = told("whether a callable security is held")
+    largest: Table = told("table 10.1")
+    given_up: Table = told("table 10.2")
+    explained: Table = told("table 10.4")
+    decided: Table = told("table 10.5")
+    map: Chart = told("chart 10.1")
+    par: Chart = told("chart 10.2")
+    sentences: tuple[str, ...] = told("three decisions in words")
+    shown_of: str = told("says that not every scenario is drawn; empty when all are")
+
+
+@dataclass(frozen=True)
+class CallReading:
+    """The calls of the results, by security and scenario."""
+
+    reading: Reading
+
+    @cached_property
+    def securities(self) -> pd.DataFrame:
+        """Callable securities, largest par first."""
+        frame = self.reading.results.securities
+        frame = frame[frame["security_id"].isin(self.reading.callable_ids)]
+        return frame.sort_values(["par", "security_id"], ascending=[False, True], kind="stable")
+
+    @cached_property
+    def months(self) -> dict[tuple[str, str], int]:
+        """Month of the first payment by security and scenario."""
+        frame = self.reading.results.calls
+        first = frame.groupby(["security_id", "scenario"], sort=False)["month"].min()
+        return {(str(a), str(b)): int(month) for (a, b), month in first.items()}
+
+    def called(self, security: str, scenario: str) -> Cell:
+        """The month called, or not called in grey."""
+        month, key = self.months.get((security, scenario)), f"calls.month/{security}/{scenario}"
+        return cells.word(self.reading.month(month), key) if month is not None else cells.quiet(NO_CALL, key)
+
+
+def calls(reading: Reading) -> Calls:
+    """Section 10 from the results."""
+    found = CallReading(reading)
+    chosen = _chosen(reading, found)
+    return Calls(
+        any_callable=bool(reading.callable_ids), largest=_largest(found), given_up=_given_up(found),
+        explained=_explained(reading, chosen), decided=_decided(reading), map=call_map(reading, found.months),
+        par=par_called(reading), sentences=tuple(_sentence(reading, *item) for item in chosen), shown_of=reading.shown_of,
+    )  # fmt: skip
+
+
+def _largest(found: CallReading) -> Table:
+    return call_table(found, "10.1", f"The {fixed(LARGEST_SHOWN)} largest callable securities: month called by scenario",
+                      LARGEST_SHOWN)  # fmt: skip
+
+
+def call_table(found: CallReading, number: str, caption: str, at_most: int | None) -> Table:
+    """Callable securities by par, with the month in which each is called in every scenario."""
+    reading = found.reading
+    frame = found.securities if at_most is None else found.securities.head(at_most)
+    rows = []
+    for bond in frame.to_dict("records"):
+        name = str(bond["security_id"])
+        first = as_date(bond["first_call_date"])
+        rows.append(Row(name=name, own_words=True, cells=(
+            reading.cell(float(bond["par"]), f"securities.par/{name}"),
+            cells.yearly_rate(float(bond["coupon_rate"]), f"securities.coupon_rate/{name}"),
+            cells.word(first.isoformat()[:7] if first else "none", f"securities.first_call_date/{name}"),
+            *(found.called(name, scenario) for scenario in reading.scenarios),
+        )))  # fmt: skip
+    columns = (
+        Column(name="Par"), Column(name="Coupon", unit="%"), Column(name="First call", words=True),
+        *(Column(name=scenario, words=True) for scenario in reading.scenarios),
+    )  # fmt: skip
+    rows = rows or [Row(name="None held", cells=tuple(cells.quiet("none", f"securities/none/{k}") for k in range(len(columns))))]
+    rest = ""
+    if len(rows) > LONG_TABLE:
+        rest = f"All {fixed(len(rows))} lines are in the workbook, sheet {number}; their par is {reading.money.phrase(total(frame['par']))}."
+    return Table(
+        number=number, caption=caption, row_head="Security", columns=columns, rows=tuple(rows), most_columns=10, rest=rest,
+        basis=f"Par in {reading.money.unit} at the valuation date, largest first. Months of payment on the scenario's path; "
+              "model calls, not a forecast.",
+    )  # fmt: skip
+
+
+def _given_up(found: CallReading) -> Table:
+    reading = found.reading
+    rows = []
+    for name in reading.scenarios:
+        row, key = reading.measures(name), f"/all/{name}"
+        count = sum(1 for _, scenario in found.months if scenario == name)
+        rows.append(Row(name=reading.scenario(name), own_words=True, cells=(
+            cells.count(count, f"calls.securities{key}", "M-31"),
+            reading.cell(float(row["par_called"]), f"measures.par_called{key}", "M-31"),
+            cells.share(row["par_called"], row["callable_par"], f"measures.par_called%callable_par{key}", "M-31"),
+            reading.cell(float(row["call_premium"]), f"measures.call_premium{key}", "M-31"),
+            reading.cell(float(row["yield_given_up"]), f"measures.yield_given_up{key}", "M-12"),
+            cells.word(words.effect_of_later_calls(row["yield_given_up"], reading.money), f"calls.later{key}"),
+        )))  # fmt: skip
+    callable_par = reading.money.phrase(reading.measures(reading.scenarios[0])["callable_par"])
+    return Table(
+        number="10.2", caption="Par called and yield given up by scenario",
+        basis=f"{reading.money.unit} over the horizon, undiscounted, all segments; callable par {callable_par}. Premium: paid "
+              "to the holder above par. Yield given up (M-12): positive = income lost.",
+        row_head="Scenario", rows=tuple(rows),
+        columns=(Column(name="Securities called", unit="count"), Column(name="Par called"),
+                 Column(name="Of callable par", unit="%"), Column(name="Premium"), Column(name="Yield given up"),
+                 Column(name="Later calls would", words=True)),
+    )  # fmt: skip
+
+
+Chosen = tuple[str, dict[str, object]]
+
+
+def _chosen(reading: Reading, found: CallReading) -> list[Chosen]:
+    """Three decisions picked by rule: the largest call solved, the nearest miss, the surest keep."""
+    frame = reading.results.decisions
+    par = dict(zip(reading.results.securities["security_id"], reading.results.securities["par"], strict=True))
+    solved = frame[frame["continuation"].notna()]
+    solved = solved.assign(par=solved["security_id"].map(par).fillna(0.0), gap=solved["bar"] - solved["continuation"])
+    called, kept = solved[solved["called"].astype(bool)], solved[~solved["called"].astype(bool)]
+    never = kept[[(str(i), str(s)) not in found.months for i, s in zip(kept["security_id"], kept["scenario"], strict=True)]]
+    picks: list[Chosen] = []
+    for what, part, by in (("called", called, ["par"]), ("nearly called", kept, ["gap"]), ("never called", never, ["par"])):
+        if len(part):
+            keys = [*by, "scenario", "month", "security_id"]
+            order = part.sort_values(keys, ascending=[by == ["gap"], True, True, True], kind="stable")
+            picks.append((what, {str(k): v for k, v in order.iloc[0].to_dict().items()}))
+    return picks
+
+
+def _sentence(reading: Reading, what: str, row: dict[str, object]) -> str:
+    month = reading.month(float(str(row["month"])))
+    continuation, bar = (fixed(float(str(row[name])), 2) for name in ("continuation", "bar"))
+    text = explained_call(what, month, continuation, bar)
+    return f"{row['security_id']}, {reading.scenario(str(row['scenario']))}, {what}. {text}"
+
+
+def _explained(reading: Reading, chosen: list[Chosen]) -> Table:
+    rows = []
+    for what, row in chosen:
+        security, scenario, month = str(row["security_id"]), str(row["scenario"]), int(float(str(row["month"])))
+        key = f"/{security}/{scenario}/month {month}"
+        rows.append(Row(name=f"{security}, {what}", own_words=True, cells=(
+            cells.word(scenario, f"decisions.scenario{key}"), cells.word(reading.month(month), f"decisions.month{key}"),
+            *(cells.per_100(float(str(row[name])), f"decisions.{name}{key}", formula)
+              for name, formula in (("upper_bound", "M-20"), ("continuation", "M-20"), ("bar", "M-21"))),
+            cells.word(str(row["decided_by"]), f"decisions.decided_by{key}"),
+        )))  # fmt: skip
+    none = tuple(cells.quiet("none", f"decisions/none/{k}") for k in range(6))
+    return Table(
+        number="10.4", caption="Decisions explained",
+        basis="Per 100 of par, with accrued interest. Upper bound: cost of the best policy fixed in advance. The largest "
+              "solved call, the kept decision nearest to its bar, and the largest security never called, by rule.",
+        row_head="Security", rows=tuple(rows) or (Row(name="None taken", cells=none),),
+        why_missing="the bound settled the decision",
+        columns=(Column(name="Scenario", words=True), Column(name="Month", words=True),
+                 Column(name="Upper bound", unit="per 100"), Column(name="Continuation", unit="per 100"),
+                 Column(name="Bar", unit="per 100"), Column(name="Decided by", words=True)),
+    )  # fmt: skip
+
+
+def _decided(reading: Reading) -> Table:
+    frame = reading.results.decisions
+    counts = frame.groupby(["scenario", "decided_by"], sort=False).size()
+    found = {(str(a), str(b)): int(n) for (a, b), n in counts.items()}
+    called = frame.groupby("scenario", sort=False)["called"].sum()
+    rows = []
+    for name in reading.scenarios:
+        made = tuple(cells.count(found.get((name, how), 0), f"decisions.count/{how}/{name}", "M-31") for how in DECIDED_BY)
+        calls_made = int(called.get(name, 0))
+        rows.append(Row(name=reading.scenario(name), own_words=True, cells=(
+            *made, cells.count(calls_made, f"decisions.called/{name}", "M-22"))))  # fmt: skip
+    return Table(
+        number="10.5", caption="How decisions were settled",
+        basis="Count of decisions, one for each security, month with a right and scenario, until called.", row_head="Scenario",
+        columns=(*(Column(name=how.capitalize(), unit="count") for how in DECIDED_BY), Column(name="Called", unit="count")),
+        rows=tuple(rows),
+    )  # fmt: skip
+
+
+def callable_count(reading: Reading) -> str:
+    """How many securities can be called, in words."""
+    return count_of(len(reading.callable_ids), "callable security", "callable securities")
