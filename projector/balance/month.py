@@ -178,6 +178,8 @@ def month_step(
     accrued_bought = purchases.accrued(state.cohorts, m)
     sale = sell(state, m, need, segment, strategy.mix, next_discount, values)
     cash = cash + sale.start + sale.bought
+    # a sale of less than everything meets the need; what is left of it is rounding, not a shortfall
+    cash = np.where((need > 0.0) & (sale.share > 0.0) & (sale.share < 1.0), 0.0, cash)
     drawn = np.maximum(-cash, 0.0)
     cash = cash + drawn
     state.shortfall = state.shortfall + drawn

@@ -181,6 +181,19 @@ def _share_left(bond: DatedBond, opening: date, closing: date, day: date) -> flo
     return 1.0 - gone if gone < 1.0 else actual
 
 
+def periods_between(bond: DatedBond, start: date, end: date) -> float:
+    """Regular periods from `start` to a later `end`, always above 0. [period]
+
+    The difference of `periods_left`; where 30/360 finds no time between two days, as from a 30th to a 31st, actual days
+    over the actual days of the period.
+    """
+    between = periods_left(bond, start) - periods_left(bond, end)
+    if between > 0.0 or end <= start:
+        return between
+    whole = whole_periods_left(bond, start)
+    return actual_days(start, end) / actual_days(bond.regular_date(whole + 1), bond.regular_date(whole))
+
+
 def next_coupon(bond: DatedBond, day: date) -> Coupon | None:
     """The first coupon paid after `day`, or None."""
     place = bisect_right(bond.payment_dates, day)
@@ -190,3 +203,13 @@ def next_coupon(bond: DatedBond, day: date) -> Coupon | None:
 def coupons_between(bond: DatedBond, after: date, until: date) -> tuple[Coupon, ...]:
     """Coupons paid after `after` and on or before `until`."""
     return bond.coupons[bisect_right(bond.payment_dates, after) : bisect_right(bond.payment_dates, until)]
+
+
+def coupon_times(bond: DatedBond, after: date, until: date) -> tuple[float, ...]:
+    """Regular periods from `after` to each of the coupons of `coupons_between`. [period]
+
+    The last coupon is at maturity and each other a whole period before the next, so no calendar is asked.
+    """
+    now = periods_left(bond, after)
+    places = range(bisect_right(bond.payment_dates, after), bisect_right(bond.payment_dates, until))
+    return tuple(now - (len(bond.coupons) - 1 - place) for place in places)

@@ -13,11 +13,12 @@ from dataclasses import dataclass
 from datetime import date
 from typing import NamedTuple
 
-from projector.bonds.schedule import DatedBond, coupons_between, periods_left
+from projector.bonds.schedule import DatedBond, coupon_times, coupons_between, periods_between, periods_left
 from projector.bonds.yields import (
     Redemption,
     accrued_interest,
     broken_stretch,
+    growth,
     rate_at_price,
     redemption_amount,
     yield_from_clean,
@@ -64,10 +65,10 @@ class _Endings:
         discount = 1.0 / (1.0 + rate)
         paid = [0.0]  # value of the first n coupons, every period compounded
         for time, amount in zip(self.times, self.amounts, strict=True):
-            paid.append(paid[-1] + amount * discount**time)
+            paid.append(paid[-1] + amount * growth(discount, time))
         # Coupons before the end share its simple stretch w: v^t becomes v^(t - w) / (1 + w i).
         return [
-            (paid[end.coupons] * (1.0 + rate) ** end.broken + end.amount * discount**end.whole)
+            (paid[end.coupons] * (1.0 + rate) ** end.broken + end.amount * growth(discount, end.whole))
             / (1.0 + end.broken * rate)
             for end in self.endings
         ]
@@ -93,7 +94,7 @@ def _endings(bond: DatedBond, settlement: date, ways: tuple[Redemption, ...], co
     return _Endings(
         redemptions=ways,
         endings=tuple(_ending(bond, settlement, now, way, convention) for way in ways),
-        times=tuple(now - periods_left(bond, coupon.payment) for coupon in coupons),
+        times=coupon_times(bond, settlement, bond.maturity),
         amounts=tuple(coupon.amount for coupon in coupons),
     )
 
@@ -104,7 +105,7 @@ def _ending(bond: DatedBond, settlement: date, now: float, way: Redemption, conv
     if before and before[-1].payment == way.day:
         amount += before[-1].amount
         before = before[:-1]
-    last = now - periods_left(bond, way.day)
+    last = periods_between(bond, settlement, way.day)
     broken = broken_stretch(convention, now, last, alone=not before)
     return _Ending(coupons=len(before), amount=amount, broken=broken, whole=last - broken)
 

@@ -20,15 +20,18 @@ from scipy.optimize import brentq
 
 from projector.bonds.schedule import (
     DatedBond,
+    coupon_times,
     coupons_between,
     interest_earned,
     next_coupon,
+    periods_between,
     periods_left,
 )
 
 CONVENTIONS = ("street", "treasury")
 HIGHEST_RATE = 1e6  # [1/period] beyond this there is no yield worth the name
 LOWEST_GROWTH = 1e-15  # [-] 1 + rate a period
+VALUE_CAP = 1e250  # [-] far below the largest float, so that sums and products of it stay finite
 
 
 class Redemption(NamedTuple):
@@ -87,12 +90,12 @@ def remaining_payments(
         raise ValueError(f"redemption {end.day} is not after settlement {settlement} and by maturity {bond.maturity}")
     now = periods_left(bond, settlement)
     coupons = coupons_between(bond, settlement, end.day)
-    times = [now - periods_left(bond, coupon.payment) for coupon in coupons]
+    times = list(coupon_times(bond, settlement, end.day))
     amounts = [coupon.amount for coupon in coupons]
     if coupons and coupons[-1].payment == end.day:
         amounts[-1] += end.price
     else:
-        times.append(now - periods_left(bond, end.day))
+        times.append(periods_between(bond, settlement, end.day))
         amounts.append(redemption_amount(bond, end))
     broken = broken_stretch(convention, now, times[-1], alone=len(times) == 1)
     return RemainingPayments(
@@ -137,7 +140,14 @@ def present_value(payments: RemainingPayments, annual_yield: float) -> float:
     rate = annual_yield / payments.periods_a_year
     discount = 1.0 / (1.0 + rate)
     pairs = zip(payments.amounts, payments.whole, strict=True)
-    return math.fsum(amount * discount**time for amount, time in pairs) / (1.0 + payments.broken * rate)
+    return math.fsum(amount * growth(discount, time) for amount, time in pairs) / (1.0 + payments.broken * rate)
+
+
+def growth(base: float, periods: float) -> float:
+    """base ** periods, and VALUE_CAP where that is larger: a search at rates near -100 % may pass there. [-]"""
+    if base > 1.0 and periods * math.log(base) > math.log(VALUE_CAP):
+        return VALUE_CAP
+    return base**periods
 
 
 def yield_of(payments: RemainingPayments, dirty_price: float) -> float:
@@ -161,12 +171,12 @@ def rate_at_price(value: Callable[[float], float], price: float) -> float:
     value  price [per 100] as a falling function of the rate a period, above -100 %
     """
     low, high = 0.0, 0.0
-    growth, shrink = 1.0, 0.95  # small steps first: far payments overflow at a growth that near ones may need
+    lowest, shrink = 1.0, 0.95
     while value(low) < price:
-        growth, shrink = growth * shrink, max(shrink**3, 0.25)
-        if growth < LOWEST_GROWTH:
+        lowest, shrink = lowest * shrink, max(shrink**3, 0.25)
+        if lowest < LOWEST_GROWTH:
             raise ValueError(f"no yield above -100 % a period gives the price {price}")
-        low, high = growth - 1.0, low
+        low, high = lowest - 1.0, low
     step = 0.05
     while value(high) > price:
         low, high, step = high, high + step, step * 4.0

@@ -31,10 +31,10 @@ def shift_paths(
 
     A twist is a table whose shift differs by tenor. After the last year the shift stays.
     """
-    titles = in_order(table["scenario"])
+    titles = in_order(table["title"])
     out = np.empty((months + 1, len(tenors), len(titles)))
     for p, title in enumerate(titles):
-        rows = table[table["scenario"] == title]
+        rows = table[table["title"] == title]
         years = np.array(sorted(set(rows["year"].astype(float))))
         grid = np.stack(
             [

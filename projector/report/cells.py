@@ -39,11 +39,11 @@ def missing(key: str) -> Cell:
 
 
 def percent(value: float, key: str, formula: str = "", decimals: int = 1) -> Cell:
-    """A decimal share or rate, printed in percent."""
+    """A decimal share or rate, printed in percent; the sign % stands in the header."""
     if not math.isfinite(value):
         return missing(key)
     style = {0: "percent_whole", 1: "percent", 2: "percent_two"}[decimals]
-    return _number(numbers.percent(value, decimals), value, "1", key, formula, 1.0, style)
+    return _number(numbers.fixed(100.0 * value, decimals), value, "1", key, formula, 0.01, style)
 
 
 def share(part: float, whole: float, key: str, formula: str, decimals: int = 1) -> Cell:

@@ -107,7 +107,20 @@ def month_label(start: date, months: int) -> str:
 
 def date_words(day: date) -> str:
     """December 31, 2025."""
-    names = ("January February March April May June July August September October November December").split()
+    names = [
+        "January",
+        "February",
+        "March",
+        "April",
+        "May",
+        "June",
+        "July",
+        "August",
+        "September",
+        "October",
+        "November",
+        "December",
+    ]
     return f"{names[day.month - 1]} {day.day}, {day.year}"
 
 
@@ -148,4 +161,6 @@ TURNING = "\u202a\u202b\u202c\u202d\u202e\u2066\u2067\u2068\u2069"  # letters th
 
 def clean(text: str) -> str:
     """Text of the study without control letters or direction marks that would reach beyond it."""
-    return "".join("\ufffd" if c in TURNING or (unicodedata.category(c) in ("Cc", "Cs") and c not in "\n\t") else c for c in text)
+    return "".join(
+        "\ufffd" if c in TURNING or (unicodedata.category(c) in ("Cc", "Cs") and c not in "\n\t") else c for c in text
+    )

@@ -8,7 +8,6 @@ from __future__ import annotations
 
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, field
-from typing import Any
 
 from markupsafe import Markup
 
@@ -16,26 +15,28 @@ from projector.report.numbers import NOT_AVAILABLE, as_number
 
 LONG_TABLE = 500  # rows; longer ones print their largest lines and leave the rest to the workbook
 LARGEST_SHOWN = 25
+LONG_WORDS = 22  # letters; longer cells and row names may break into lines
+LONG_NAME = 40
 ADDING_NOTE = "Items may not add to totals because of rounding."
 
 
-def told(help: str, unit: str = "-") -> Any:
-    """A field that says what it is and in which unit; every field of a context record is made by it."""
-    return field(metadata={"help": help, "unit": unit})
+def told(help: str, unit: str = "-") -> dict[str, str]:
+    """What a field is and in which unit: the metadata of every field of a context record."""
+    return {"help": help, "unit": unit}
 
 
 @dataclass(frozen=True, kw_only=True)
 class Cell:
     """One cell: what is printed, and what stands behind it."""
 
-    shown: str = told("the printed text")
-    value: float | str = told("the full value, or the word", "as `unit` says")
-    unit: str = told("unit of the full value; - for words")
-    key: str = told("stable key: outlives a re-ordered table")
-    formula: str = told("formula id of section 7; empty for words and inputs")
-    look: str = told("number, word, quiet (nothing there) or study (the study's own words)")
-    scale: float = told("full value per printed unit", "as `unit` says")
-    style: str = told("workbook format: one, two, four, whole, percent, percent_two or text")
+    shown: str = field(metadata=told("the printed text"))
+    value: float | str = field(metadata=told("the full value, or the word", "as `unit` says"))
+    unit: str = field(metadata=told("unit of the full value; - for words"))
+    key: str = field(metadata=told("stable key: outlives a re-ordered table"))
+    formula: str = field(metadata=told("formula id of section 7; empty for words and inputs"))
+    look: str = field(metadata=told("number, word, quiet (nothing there) or study (the study's own words)"))
+    scale: float = field(metadata=told("full value per printed unit", "as `unit` says"))
+    style: str = field(metadata=told("workbook format: one, two, four, whole, percent, percent_two or text"))
 
     @property
     def negative(self) -> bool:
@@ -44,8 +45,9 @@ class Cell:
 
     @property
     def css(self) -> str:
-        """The classes of the printed cell."""
-        return {"number": "neg" if self.negative else "", "quiet": "w quiet"}.get(self.look, "w")
+        """The classes of the printed cell; only long words may break."""
+        long = " long" if len(self.shown) > LONG_WORDS else ""
+        return {"number": "neg" if self.negative else "", "quiet": f"w quiet{long}"}.get(self.look, f"w{long}")
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -56,6 +58,12 @@ class Row:
     cells: tuple[Cell, ...]
     total: bool = False
     own_words: bool = False  # the name is text of the study
+    anchor: str = ""  # a further link target of the line
+
+    @property
+    def long(self) -> bool:
+        """Whether the name may break into lines."""
+        return len(self.name) > LONG_NAME
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -81,6 +89,7 @@ class Table:
     notes: tuple[str, ...] = ()
     why_missing: str = ""  # the reason for every [n/a] in the table
     most_columns: int = 8  # more are printed as a further piece below
+    prose: bool = False  # cells are sentences
     rest: str = ""  # where the rest of a long table is, with its control total
 
     def __post_init__(self) -> None:
@@ -111,6 +120,11 @@ class Table:
         """Short enough to be kept on one printed page."""
         return len(self.printed_rows) <= 15
 
+    @property
+    def css(self) -> str:
+        """The classes of the printed table."""
+        return " ".join(name for name, on in (("short", self.short), ("prose", self.prose)) if on)
+
     def address(self, line: int, column: int) -> str:
         """`T1.1.7.1`: table 1.1, line 7, column 1 (both counted from 1)."""
         return f"T{self.number}.{line}.{column}"
@@ -136,11 +150,11 @@ class Table:
 class Chart:
     """A numbered chart: its picture, and the words that serve the same purpose."""
 
-    number: str = told("chart number")
-    title: str = told("the finding, by a tested rule")
-    subtitle: str = told("measure, unit, period and basis")
-    text: str = told("the text alternative, 60 to 500 characters, naming the table with the numbers")
-    svg: Markup = told("the drawing")
+    number: str = field(metadata=told("chart number"))
+    title: str = field(metadata=told("the finding, by a tested rule"))
+    subtitle: str = field(metadata=told("measure, unit, period and basis"))
+    text: str = field(metadata=told("the text alternative, 60 to 500 characters, naming the table with the numbers"))
+    svg: Markup = field(metadata=told("the drawing"))
 
 
 def rows_with_total(rows: Sequence[Row], total: Row) -> tuple[Row, ...]:

@@ -15,8 +15,8 @@ from projector.report.context.page import Page, page
 from projector.report.numbers import clean
 from projector.run.results import RunResults
 
-ADDRESS_COLUMNS = ("address", "table", "line", "column", "row_name", "column_name", "shown", "value", "word", "unit", "key",
-                   "formula")  # fmt: skip
+ADDRESS_COLUMNS = ("address", "table", "line", "column", "row_name", "column_name", "shown", "value", "word", "unit",
+                   "key", "formula")  # fmt: skip
 
 
 def render_report(results: RunResults, run_command: str) -> str:
@@ -34,8 +34,13 @@ def addresses(results: RunResults, run_command: str = "") -> pd.DataFrame:
 
     `value` is the full figure in `unit` (empty for words, which stand in `word`); it rounds to `shown`.
     """
+    return addresses_of(page(results, run_command))
+
+
+def addresses_of(context: Page) -> pd.DataFrame:
+    """The addresses of a context already built."""
     rows = []
-    for table in page(results, run_command).tables():
+    for table in context.tables():
         for address, row, column, cell in table.addressed():
             _, line, place = address.rsplit(".", 2)
             number = cell.value if isinstance(cell.value, float) else None

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
 from projector.report.parts import told
 
@@ -11,9 +11,9 @@ from projector.report.parts import told
 class Heading:
     """One section's opening."""
 
-    number: str = told("section number, or A")
-    name: str = told("section name")
-    question: str = told("the question the section answers, as its reader asks it")
+    number: str = field(metadata=told("section number, or A"))
+    name: str = field(metadata=told("section name"))
+    question: str = field(metadata=told("the question the section answers, as its reader asks it"))
 
     @property
     def id(self) -> str:
@@ -48,8 +48,8 @@ HEADINGS = (
 class Placed:
     """A memorandum item and the section that holds it."""
 
-    item: str = told("what a memorandum must hold, in the words of its usual list")
-    section: str = told("section number")
+    item: str = field(metadata=told("what a memorandum must hold, in the words of its usual list"))
+    section: str = field(metadata=told("section number"))
 
 
 REQUIREMENTS = (

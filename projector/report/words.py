@@ -123,8 +123,8 @@ def title_mix(opening: float | None, later: Sequence[float], year: int) -> str:
     if opening is None or not later or not all(value < opening for value in later):
         return "Asset mix by scenario"
     low, high = percent(min(later), 0), percent(max(later), 0)
-    span = low if low == high else f"{low} to {high}"
-    return f"Callable share falls from {percent(opening, 0)} to {span} of assets by year {fixed(year)}"
+    span = low if low == high else f"between {low} and {high}"
+    return f"Callable share falls from {percent(opening, 0)} of assets to {span} by year {fixed(year)}"
 
 
 def title_call_map(called: Sequence[tuple[str, int]], callable_count: int) -> str:
@@ -133,11 +133,12 @@ def title_call_map(called: Sequence[tuple[str, int]], callable_count: int) -> st
         return "No security can be called at a stated price"
     most, least = max(called, key=lambda c: c[1]), min(called, key=lambda c: c[1])
     of = f"of {count_of(callable_count, 'callable security', 'callable securities')}"
+    are = "is" if most[1] == 1 else "are"
     if not most[1]:
         return f"None {of} is called in {_every(len(called))}"
     if most[1] == least[1]:
-        return f"{fixed(most[1])} {of} called in {_every(len(called))}"
-    return f"{fixed(most[1])} {of} called in {most[0]}, {fixed(least[1])} in {least[0]}"
+        return f"{fixed(most[1])} {of} {are} called in {_every(len(called))}"
+    return f"{fixed(most[1])} {of} {are} called in {most[0]}, {fixed(least[1])} in {least[0]}"
 
 
 def title_par_called(called: Sequence[tuple[str, float]], callable_par: float) -> str:

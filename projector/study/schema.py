@@ -111,6 +111,7 @@ class DefaultsSection(Sourced):
 
 class PurchaseClassSection(Form):
     name: Line = Field(description="name of the class")
+    # the choices are the columns' own list, which a type checker cannot read as literals
     rating: Literal[RATINGS] = Field(description="rating such as A")  # type: ignore[valid-type]
     term_years: int = Field(ge=1, le=30, description="whole years to maturity")
     spread_bp: float = Field(ge=-200, le=2000, description="over Treasury, continuously compounded [bp]")

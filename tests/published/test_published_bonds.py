@@ -396,6 +396,16 @@ def test_limit_bond_valued_the_day_before_it_matures_on_30_360_still_has_a_yield
     assert yields.yield_from_clean(ours, D("2022-12-31"), 99.99, "street") > 0.03
 
 
+def test_limit_call_the_day_after_settlement_has_a_yield_on_any_day_of_any_count():
+    for day_count, months_end in itertools.product(DAY_COUNTS, [True, False]):
+        ours = bond(0.05, "2013-02-28", "2033-08-31", day_count=day_count, end_of_month=months_end)
+        for day in (D("2024-01-15") + timedelta(days=k) for k in range(400)):
+            call = Redemption(day + timedelta(days=1), 100.0)
+            payments = remaining_payments(ours, day, "street", call)
+            assert 0.0 < payments.broken < 0.02
+            assert yields.yield_of(payments, yields.present_value(payments, 0.04)) == pytest.approx(0.04, abs=1e-9)
+
+
 def test_limit_slopes_are_those_of_the_price():
     for convention, settled in itertools.product(yields.CONVENTIONS, ["2024-03-03", "2030-04-04"]):
         payments = remaining_payments(bond(0.05, "2020-06-15", "2030-06-15"), D(settled), convention)

@@ -237,7 +237,7 @@ def _tables() -> dict[str, list[Row]]:
         "default_costs": [{"rating": "A", "annual_cost": "0.0005"}, {"rating": "BBB", "annual_cost": "0.002"}],
         "liability_streams": [
             *(_stream("annuity_payment", month, "70000.125") for month in range(1, HORIZON + 1)),
-            *(_stream("reserve_statutory", month, str(1_800_000 - 60_000 * month)) for month in range(HORIZON + 1)),
+            *(_stream("reserve_statutory", month, str(1_850_000 - 60_000 * month)) for month in range(HORIZON + 1)),
         ],
         "control_totals": [
             {"item": item, "segment": "all", "amount": amount}
@@ -245,7 +245,7 @@ def _tables() -> dict[str, list[Row]]:
                 ("lots_count", "4"),
                 ("par", "1850000.5"),
                 ("book_value", "1845000.75"),
-                ("reserve_statutory", "1800000"),
+                ("reserve_statutory", "1850000"),
                 ("cash", "1000.5"),
             )
         ],

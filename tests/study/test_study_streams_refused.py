@@ -156,8 +156,8 @@ def test_limit_streams_by_scenario_need_the_digest_of_their_set(small: Any, only
 def test_limit_the_reserve_at_the_start_is_one_amount(small: Any, only_fault: Any) -> None:
     _two_scenarios(small)
     small.replace("rate_insensitive_blocks = []", f'rate_insensitive_blocks = []\nscenario_set_digest = "{"0a" * 32}"')
-    error = only_fault(small.cell("liability_streams", 75, "amount", "1800000.01"))
-    assert (error.code, error.row, error.column, error.value) == ("E445", 75, "amount", "1800000.01")
+    error = only_fault(small.cell("liability_streams", 75, "amount", "1850000.01"))
+    assert (error.code, error.row, error.column, error.value) == ("E445", 75, "amount", "1850000.01")
 
 
 @pytest.mark.parametrize(

@@ -110,7 +110,8 @@ def test_limit_an_identifier_that_reads_NA_is_kept(small: Any) -> None:
 
     small.cell("securities", 2, "issuer", "NA").cell("securities", 2, "sector", "null")
     study, _ = read_study(small.write())
-    assert study.tables.securities.loc[0, ["issuer", "sector"]].tolist() == ["NA", "null"]
+    securities = study.tables.securities
+    assert (securities["issuer"].iloc[0], securities["sector"].iloc[0]) == ("NA", "null")
 
 
 def _rename(study: Any, table: str, old: str, new: str) -> None:

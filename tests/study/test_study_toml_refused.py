@@ -121,8 +121,8 @@ def test_limit_an_interest_maintenance_reserve_reads_as_a_sentence(small: Any, o
     small.replace("interest_maintenance_reserve = 0", "interest_maintenance_reserve = 125000")
     assert only_fault(small).sentence() == (
         f"E508 study.toml, row {small.line('interest_maint')}, "
-        "column maintenance_reserve.interest_maintenance_reserve: an interest maintenance reserve is not honoured by this version "
-        "(found '125000.0'); write 0 only when that is the amount; otherwise another tool is needed."
+        "column maintenance_reserve.interest_maintenance_reserve: an interest maintenance reserve is not honoured "
+        "by this version (found '125000.0'); write 0 only when that is the amount; otherwise another tool is needed."
     )
 
 

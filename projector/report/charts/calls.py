@@ -13,7 +13,7 @@ from projector.report.charts import canvas
 from projector.report.charts.canvas import BLUE, GREY, INK, MARK_GREY, RULE
 
 MOST_ROWS = 300  # securities drawn one a row; more are drawn by year of first call date
-LEFT, RIGHT, HEAD = 0.86, 0.1, 0.36
+LEFT, RIGHT, HEAD = 0.86, 0.1, 0.5
 
 
 @dataclass(frozen=True)
@@ -46,14 +46,14 @@ def draw_map(names: Sequence[str], heads: Sequence[str], rows: Sequence[CallRow]
     heights, labels = _heights(ordered)
     with canvas.settings():
         tall = min(6.2, max(1.0, 0.055 * (heights[-1] + 1.0)))
-        figure = canvas.sheet(HEAD + tall + 0.34)
+        figure = canvas.sheet(HEAD + tall + 0.38)
         panel = (canvas.WIDTH - LEFT - RIGHT) / len(names)
         for k, name in enumerate(names):
             axes = canvas.place(figure, LEFT + k * panel, HEAD, panel - 0.08, tall)
             _map_panel(axes, ordered, heights, k, years)
             _head(figure, LEFT + k * panel, name, heads[k])
         _groups(figure, labels, heights[-1] + 1.0, tall)
-        canvas.write(figure, LEFT, HEAD + tall + 0.28, "years after the valuation date", fontsize=canvas.SMALL,
+        canvas.write(figure, LEFT, HEAD + tall + 0.3, "years after the valuation date", fontsize=canvas.SMALL,
                      color=GREY)  # fmt: skip
         return canvas.raw_svg(figure)
 
@@ -78,7 +78,7 @@ def _map_panel(axes: Axes, rows: Sequence[CallRow], heights: Sequence[float], sc
     gap = float("nan")
     spans = [(x, y) for row, y in zip(rows, heights) for x in (row.first, min(row.maturity, years), gap)]
     axes.plot([x for x, _ in spans], [y for _, y in spans], color=MARK_GREY, linewidth=0.7, solid_capstyle="butt")
-    dots = [(row.called[scenario], y) for row, y in zip(rows, heights) if row.called[scenario] is not None]
+    dots = [(at, y) for row, y in zip(rows, heights) if (at := row.called[scenario]) is not None]
     if dots:  # a stroke of no length with a round end is a dot: one path for all of them
         points = [(x, y) for at, y in dots for x in (at, at, gap)]
         axes.plot([x for x, _ in points], [y for _, y in points], color=INK, linewidth=3.0, solid_capstyle="round")
@@ -86,17 +86,19 @@ def _map_panel(axes: Axes, rows: Sequence[CallRow], heights: Sequence[float], sc
     axes.set_ylim(heights[-1] + 1.0, -1.0)
     axes.set_yticks([])
     axes.spines["left"].set_color(RULE)
-    canvas.plain_ticks(axes.xaxis, most=3)
+    canvas.plain_ticks(axes.xaxis, most=3, prune="upper")
 
 
 def _head(figure: Figure, left: float, name: str, line: str) -> None:
-    canvas.write(figure, left, 0.13, canvas.cut(name, 14), fontsize=canvas.SMALL, fontweight="bold", va="baseline")
-    canvas.write(figure, left, 0.28, line, fontsize=canvas.SMALL, color=GREY, va="baseline")
+    first, _, rest = name.partition(" ")
+    canvas.write(figure, left, 0.13, canvas.cut(first, 12), fontsize=canvas.TEXT, fontweight="bold", va="baseline")
+    canvas.write(figure, left, 0.27, canvas.cut(rest, 13), fontsize=canvas.SMALL, va="baseline")
+    canvas.write(figure, left, 0.41, line, fontsize=canvas.SMALL, color=GREY, va="baseline")
 
 
 def _groups(figure: Figure, labels: Sequence[tuple[float, str]], bottom: float, tall: float) -> None:
-    canvas.write(figure, 0.02, 0.13, "first call", fontsize=canvas.SMALL, color=GREY, va="baseline")
-    canvas.write(figure, 0.02, 0.28, "(count)", fontsize=canvas.SMALL, color=GREY, va="baseline")
+    canvas.write(figure, 0.02, 0.27, "first call", fontsize=canvas.SMALL, color=GREY, va="baseline")
+    canvas.write(figure, 0.02, 0.41, "(count)", fontsize=canvas.SMALL, color=GREY, va="baseline")
     last = -1.0
     for middle, text in labels:
         top = HEAD + tall * (middle + 1.0) / (bottom + 1.0)
@@ -109,7 +111,7 @@ def draw_groups(names: Sequence[str], heads: Sequence[str], groups: Sequence[Cal
     """The same columns for many securities: one row a year of first call date, par called as small columns."""
     with canvas.settings():
         row = min(0.42, 4.6 / max(len(groups), 1))
-        figure = canvas.sheet(HEAD + row * len(groups) + 0.34)
+        figure = canvas.sheet(HEAD + row * len(groups) + 0.38)
         panel = (canvas.WIDTH - LEFT - RIGHT) / len(names)
         top = max((v for g in groups for years in g.by_year for v in years), default=0.0) or 1.0
         for k, name in enumerate(names):
@@ -119,9 +121,9 @@ def draw_groups(names: Sequence[str], heads: Sequence[str], groups: Sequence[Cal
         labels = [(k + 0.5, f"{g.group} ({g.count})") for k, g in enumerate(groups)]
         for middle, text in labels:
             canvas.write(figure, 0.02, HEAD + row * middle, text, fontsize=canvas.SMALL, va="center")
-        canvas.write(figure, 0.02, 0.13, "first call", fontsize=canvas.SMALL, color=GREY, va="baseline")
-        canvas.write(figure, 0.02, 0.28, "(count)", fontsize=canvas.SMALL, color=GREY, va="baseline")
-        canvas.write(figure, LEFT, HEAD + row * len(groups) + 0.28, "years after the valuation date",
+        canvas.write(figure, 0.02, 0.27, "first call", fontsize=canvas.SMALL, color=GREY, va="baseline")
+        canvas.write(figure, 0.02, 0.41, "(count)", fontsize=canvas.SMALL, color=GREY, va="baseline")
+        canvas.write(figure, LEFT, HEAD + row * len(groups) + 0.3, "years after the valuation date",
                      fontsize=canvas.SMALL, color=GREY)  # fmt: skip
         return canvas.raw_svg(figure)
 
@@ -138,7 +140,7 @@ def _group_panel(axes: Axes, groups: Sequence[CallGroup], scenario: int, top: fl
     axes.set_ylim(0.0, float(len(groups)))
     axes.set_yticks([])
     axes.spines["left"].set_color(RULE)
-    canvas.plain_ticks(axes.xaxis, most=3)
+    canvas.plain_ticks(axes.xaxis, most=3, prune="upper")
 
 
 def draw_par(names: Sequence[str], lines: Sequence[str], by_year: Sequence[Sequence[float]], unit: str) -> str:

@@ -7,9 +7,11 @@ import warnings
 from collections.abc import Iterator, Sequence
 from contextlib import contextmanager
 from dataclasses import dataclass
+from typing import Any
 
 import matplotlib
 from matplotlib.axes import Axes
+from matplotlib.axis import Axis
 from matplotlib.figure import Figure
 from matplotlib.ticker import FuncFormatter, MaxNLocator
 
@@ -21,7 +23,7 @@ SKY, PALE_BLUE, PALE_VERMILLION = "#4f93cc", "#cfe0f0", "#f0c4a8"
 
 WIDTH = 7.0  # inches: prints at true size in a portrait column
 TEXT, SMALL = 8.0, 7.5
-SETTINGS = {
+SETTINGS: Any = {
     "svg.fonttype": "none", "svg.hashsalt": "report", "font.family": ["DejaVu Sans"], "font.size": TEXT,
     "text.color": INK, "text.parse_math": False, "axes.edgecolor": MARK_GREY, "axes.linewidth": 0.6,
     "axes.labelcolor": GREY, "axes.labelsize": SMALL, "axes.spines.top": False, "axes.spines.right": False,
@@ -54,9 +56,9 @@ def place(figure: Figure, left: float, top: float, width: float, height: float) 
     return figure.add_axes((left / WIDTH, 1.0 - (top + height) / full, width / WIDTH, height / full))
 
 
-def write(figure: Figure, left: float, top: float, text: str, **look: object) -> None:
+def write(figure: Figure, left: float, top: float, text: str, **look: Any) -> None:
     """Text on the sheet, in inches from the left and from the top."""
-    figure.text(left / WIDTH, 1.0 - top / figure.get_figheight(), text, **look)  # type: ignore[arg-type]
+    figure.text(left / WIDTH, 1.0 - top / figure.get_figheight(), text, **look)
 
 
 def raw_svg(figure: Figure) -> str:
@@ -72,10 +74,10 @@ def cut(name: str, most: int = 24) -> str:
     return name if len(name) <= most else name[: most - 1].rstrip() + "…"
 
 
-def plain_ticks(axis: object, decimals: int = 0, most: int = 5) -> None:
+def plain_ticks(axis: Axis, decimals: int = 0, most: int = 5, prune: str | None = None) -> None:
     """Round tick values written by the report's own formatter."""
-    axis.set_major_locator(MaxNLocator(most, steps=[1, 2, 2.5, 5, 10], min_n_ticks=2))  # type: ignore[attr-defined]
-    axis.set_major_formatter(FuncFormatter(lambda value, _: _tick(value, decimals)))  # type: ignore[attr-defined]
+    axis.set_major_locator(MaxNLocator(most, steps=[1, 2, 2.5, 5, 10], min_n_ticks=2, prune=prune))
+    axis.set_major_formatter(FuncFormatter(lambda value, _: _tick(value, decimals)))
 
 
 def _tick(value: float, decimals: int) -> str:

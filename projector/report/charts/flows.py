@@ -4,6 +4,9 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 
+from matplotlib.axes import Axes
+from matplotlib.patches import Rectangle
+
 from projector.report.charts import canvas
 from projector.report.charts.canvas import BLUE, INK, VERMILLION
 
@@ -11,7 +14,7 @@ from projector.report.charts.canvas import BLUE, INK, VERMILLION
 def draw(assets: Sequence[float], liabilities: Sequence[float]) -> str:
     """Assets in above the line and filled, liabilities out below and open, the net as a dotted line."""
     with canvas.settings():
-        figure = canvas.sheet(2.5)
+        figure = canvas.sheet(2.6)
         axes = canvas.place(figure, 0.5, 0.1, 5.2, 2.05)
         years = list(range(1, len(assets) + 1))
         axes.bar(years, assets, 0.72, facecolor=BLUE, edgecolor=BLUE)
@@ -27,16 +30,12 @@ def draw(assets: Sequence[float], liabilities: Sequence[float]) -> str:
         axes.set_ylim(*canvas.bounds([*assets, *(-v for v in liabilities), *net]))
         canvas.plain_ticks(axes.yaxis, most=6)
         canvas.plain_ticks(axes.xaxis, most=9)
-        canvas.write(figure, 0.5, 2.44, "year after the valuation date", fontsize=canvas.SMALL, color=canvas.GREY)
+        canvas.write(figure, 0.5, 2.52, "year after the valuation date", fontsize=canvas.SMALL, color=canvas.GREY)
         _key(canvas.place(figure, 5.82, 0.1, 1.16, 1.6))
         return canvas.raw_svg(figure)
 
 
-def _key(axes: object) -> None:
-    from matplotlib.axes import Axes
-    from matplotlib.patches import Rectangle
-
-    assert isinstance(axes, Axes)
+def _key(axes: Axes) -> None:
     axes.set_axis_off()
     axes.set_xlim(0, 1.16)
     axes.set_ylim(1.6, 0)

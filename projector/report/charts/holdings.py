@@ -24,8 +24,8 @@ class Ladder:
 
 
 KINDS = (
-    ("callable at stated prices", BLUE),
-    ("make-whole, then par call", PALE_BLUE),
+    ("callable at\nstated prices", BLUE),
+    ("make-whole,\nthen par call", PALE_BLUE),
     ("not callable", "white"),
 )
 
@@ -33,7 +33,7 @@ KINDS = (
 def draw(ladders: Sequence[Ladder]) -> str:
     """Stacked columns, callable at stated prices on top, swatches in the same order."""
     with canvas.settings():
-        figure = canvas.sheet(2.5)
+        figure = canvas.sheet(2.46)
         top = max(_tallest(ladder) for ladder in ladders) * 1.06 or 1.0
         for index, ladder in enumerate(ladders):
             left = 0.5 + index * 2.55
@@ -41,7 +41,7 @@ def draw(ladders: Sequence[Ladder]) -> str:
             _columns(axes, ladder, top)
             axes.tick_params(labelleft=index == 0)
             canvas.write(figure, left, 0.16, ladder.title, fontsize=canvas.TEXT, fontweight="bold")
-            canvas.write(figure, left, 2.42, "years, up to (bins of unequal width)", fontsize=canvas.SMALL, color=GREY)
+            canvas.write(figure, left, 2.4, "years, up to (bins of unequal width)", fontsize=canvas.SMALL, color=GREY)
         key = canvas.place(figure, 5.6, 0.3, 1.38, 1.2)
         _key(key)
         return canvas.raw_svg(figure)
@@ -68,5 +68,5 @@ def _key(axes: Axes) -> None:
     axes.set_xlim(0, 1.38)
     axes.set_ylim(1.2, 0)
     for k, (name, colour) in enumerate(KINDS):
-        axes.add_patch(Rectangle((0.0, 0.06 + 0.24 * k), 0.14, 0.14, facecolor=colour, edgecolor=GREY, linewidth=0.6))
-        axes.text(0.2, 0.13 + 0.24 * k, name, va="center", fontsize=canvas.SMALL)
+        axes.add_patch(Rectangle((0.0, 0.06 + 0.34 * k), 0.14, 0.14, facecolor=colour, edgecolor=GREY, linewidth=0.6))
+        axes.text(0.2, 0.13 + 0.34 * k, name, va="center", fontsize=canvas.SMALL, linespacing=1.1)

@@ -54,7 +54,7 @@ def _columns(axes: Axes, panel: MixPanel, years: Sequence[int]) -> None:
                       fontsize=canvas.SMALL)  # fmt: skip
     axes.set_xticks(list(places), [str(year) for year in years])
     axes.tick_params(axis="x", length=0)
-    axes.set_ylim(min(0.0, *base), max(100.0, *base))
+    axes.set_ylim(0.0, max(100.0, round(max(base), 6)))
     canvas.plain_ticks(axes.yaxis, most=4)
 
 

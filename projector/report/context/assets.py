@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from datetime import date
 
 import pandas as pd
@@ -17,19 +17,23 @@ from projector.report.svg import finished
 
 BOUNDS = (1, 2, 3, 5, 7, 10, 15, 20, 30)
 CALLABLE_WITHIN = (1, 3, 5)
-SPREAD_FROM = {"price": "from the market price", "given": "stated by the study", "rating_spread": "class spread, fallback"}
+SPREAD_FROM = {
+    "price": "from the market price",
+    "given": "stated by the study",
+    "rating_spread": "class spread, fallback",
+}
 
 
 @dataclass(frozen=True, kw_only=True)
 class Assets:
     """Section 4."""
 
-    by_class: Table = told("table 4.1")
-    by_rating: Table = told("table 4.2")
-    spreads: Table = told("table 4.3")
-    ladder: Table = told("table 4.4")
-    chart: Chart = told("chart 4.1")
-    callable_text: str = told("share of par callable within one, three and five years")
+    by_class: Table = field(metadata=told("table 4.1"))
+    by_rating: Table = field(metadata=told("table 4.2"))
+    spreads: Table = field(metadata=told("table 4.3"))
+    ladder: Table = field(metadata=told("table 4.4"))
+    chart: Chart = field(metadata=told("chart 4.1"))
+    callable_text: str = field(metadata=told("share of par callable within one, three and five years"))
 
 
 def assets(reading: Reading) -> Assets:
@@ -64,15 +68,20 @@ def _kind(form: str, first: date | None) -> str:
 
 def _by_class(reading: Reading, frame: pd.DataFrame) -> Table:
     groups = [(str(name), part) for name, part in frame.groupby("asset_class", sort=True)]
-    rows = [Row(name=name, own_words=True, cells=_class_cells(reading, part, f"asset_class={name}")) for name, part in groups]
+    rows = [
+        Row(name=name, own_words=True, cells=_class_cells(reading, part, f"asset_class={name}"))
+        for name, part in groups
+    ]
     whole = Row(name="Total", total=True, cells=_class_cells(reading, frame, "all"))
     adds = ("Securities", "Par", "Statement value", "Market value", "Accrued", "Callable par")
     return Table(
         number="4.1", caption="Holdings by asset class",
-        basis=f"{reading.money.unit} at the valuation date; market value = clean price × par, without accrued. Book yields: "
-              "lowest and highest of the class, before default cost (table 4.2) and investment expense (table 8.1).",
-        row_head="Asset class", rows=rows_with_total(rows, whole), why_missing="no security of the class has the figure",
-        columns=(*(Column(name=name, unit="count" if name == "Securities" else "", adds=True) for name in adds),
+        basis=f"{reading.money.unit} at the valuation date; market value = clean price × par, without accrued. Book "
+              "yields: lowest and highest of the class, before default cost (table 4.2) and investment expense "
+              "(table 8.1).",
+        row_head="Asset class", rows=rows_with_total(rows, whole), why_missing="no security of the class has the "
+                                                                               "figure",
+        columns=(*(Column(name=name, adds=True) for name in adds),
                  Column(name="Book yield, lowest", unit="%"), Column(name="Book yield, highest", unit="%")),
     )  # fmt: skip
 
@@ -103,20 +112,24 @@ def _by_rating(reading: Reading, frame: pd.DataFrame) -> Table:
     rows = []
     for rating in order:
         part, key = frame[frame["rating"] == rating], f"rating={rating}"
-        found = rating in costs.index
         picked = tuple(
-            cells.yearly_rate(float(costs.loc[rating, column]) if found else float("nan"), f"default_costs.{column}/{rating}",
-                              "M-27") for column, _ in heads)  # fmt: skip
+            cells.yearly_rate(_figure(costs, rating, column), f"default_costs.{column}/{rating}", "M-27")
+            for column, _ in heads
+        )
         rows.append(Row(name=rating, cells=(*_rating_cells(reading, part, key, frame), *picked)))
     return Table(
         number="4.2", caption="Holdings by rating, with the default cost assumed",
         basis=f"{reading.money.unit} at the valuation date; default cost in % a year (M-27), from the study's table. "
               "Share: part of total statement value.",
         row_head="Rating", rows=tuple(rows), why_missing="the study's table has no such rating",
-        columns=(Column(name="Securities", unit="count"), Column(name="Par"), Column(name="Statement value"),
+        columns=(Column(name="Securities"), Column(name="Par"), Column(name="Statement value"),
                  Column(name="Market value"), Column(name="Share", unit="%"),
                  *(Column(name=head, unit="%") for _, head in heads)),
     )  # fmt: skip
+
+
+def _figure(costs: pd.DataFrame, rating: str, column: str) -> float:
+    return float(costs[column].to_dict()[rating]) if rating in costs.index else float("nan")
 
 
 def _rating_cells(reading: Reading, part: pd.DataFrame, key: str, whole: pd.DataFrame) -> tuple[Cell, ...]:
@@ -135,6 +148,7 @@ def _spreads(reading: Reading, frame: pd.DataFrame) -> Table:
     for code, name in SPREAD_FROM.items():
         part, key = frame[frame["spread_from"] == code], f"spread_from={code}"
         gaps = (part["model_price"] - part["clean_price"]).abs()
+        widest = float(gaps.max()) if len(gaps) else float("nan")
         spread = part["valuation_spread_bp"].dropna()
         ends = (float(spread.min()), float(spread.max())) if len(spread) else (float("nan"), float("nan"))
         rows.append(Row(name=name, cells=(
@@ -142,14 +156,14 @@ def _spreads(reading: Reading, frame: pd.DataFrame) -> Table:
             reading.cell(total(part["par"]), f"securities.par/{key}", "M-31"),
             cells.basis_points(ends[0], f"securities.valuation_spread_bp.lowest/{key}", "M-23"),
             cells.basis_points(ends[1], f"securities.valuation_spread_bp.highest/{key}", "M-23"),
-            cells.per_100(float(gaps.max()) if len(gaps) else float("nan"), f"securities.price_gap.largest/{key}", "M-23"),
+            cells.per_100(widest, f"securities.price_gap.largest/{key}", "M-23"),
         )))  # fmt: skip
     return Table(
         number="4.3", caption="Where each valuation spread comes from",
         basis=f"Par in {reading.money.unit}; spreads continuously compounded over Treasury (M-23). Price difference: "
               "largest of model price less clean price, either sign.",
         row_head="Spread", rows=tuple(rows), why_missing="no security falls in the line",
-        columns=(Column(name="Securities", unit="count"), Column(name="Par"), Column(name="Lowest", unit="bp"),
+        columns=(Column(name="Securities"), Column(name="Par"), Column(name="Lowest", unit="bp"),
                  Column(name="Highest", unit="bp"), Column(name="Price difference", unit="per 100")),
     )  # fmt: skip
 
@@ -168,8 +182,10 @@ def _ladder(frame: pd.DataFrame, column: str, kinds: tuple[str, ...]) -> list[li
 
 
 LADDERS = (
-    ("to_maturity", "fixed", "By maturity: not callable"), ("to_maturity", "make_whole", "By maturity: make-whole, then par"),
-    ("to_maturity", "stated", "By maturity: stated prices"), ("to_call", "make_whole", "By first call: make-whole, then par"),
+    ("to_maturity", "fixed", "By maturity: not callable"), ("to_maturity", "make_whole", "By maturity: make-whole, "
+                                                                                         "then par"),
+    ("to_maturity", "stated", "By maturity: stated prices"), ("to_call", "make_whole", "By first call: make-whole, "
+                                                                                       "then par"),
     ("to_call", "stated", "By first call: stated prices"),
 )  # fmt: skip
 
@@ -189,7 +205,8 @@ def _ladder_table(reading: Reading, frame: pd.DataFrame) -> Table:
     return Table(
         number="4.4", caption="Par by years to maturity and to the first call at a stated price",
         basis=f"{reading.money.unit} of par at the valuation date; years from the valuation date in whole months.",
-        row_head="Years", rows=rows_with_total(rows, whole), columns=tuple(Column(name=n, adds=True) for *_, n in LADDERS),
+        row_head="Years", rows=rows_with_total(rows, whole),
+        columns=tuple(Column(name=n, adds=True) for *_, n in LADDERS),
     )  # fmt: skip
 
 
@@ -204,8 +221,8 @@ def _chart(reading: Reading, frame: pd.DataFrame) -> Chart:
     soon = total(frame.loc[frame["to_call"] <= CALLABLE_WITHIN[-1], "par"])
     title = words.title_callability(soon, can, par)
     text = (
-        f"Two panels of stacked columns of par, by maturity and by first call date. {share(can, par, 0)} of par can be called "
-        f"at a stated price, {share(soon, par, 0)} within five years. Numbers: table 4.4."
+        f"Two panels of stacked columns of par, by maturity and by first call date. {share(can, par, 0)} of par can "
+        f"be called at a stated price, {share(soon, par, 0)} within five years. Numbers: table 4.4."
     )
     return Chart(
         number="4.1", title=title, text=text, subtitle=f"{reading.money.unit} of par at the valuation date",

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
 from projector.report import cells
 from projector.report.context.reading import Reading
@@ -14,11 +14,11 @@ from projector.report.parts import Cell, Column, Row, Table, told
 class Assumptions:
     """Section 8."""
 
-    used: Table = told("table 8.1")
-    sources: Table = told("table 8.2")
-    purchases: Table = told("table 8.3")
-    spreads: Table = told("table 8.4")
-    counted: str = told("how many choices are stated, how many are defaults")
+    used: Table = field(metadata=told("table 8.1"))
+    sources: Table = field(metadata=told("table 8.2"))
+    purchases: Table = field(metadata=told("table 8.3"))
+    spreads: Table = field(metadata=told("table 8.4"))
+    counted: str = field(metadata=told("how many choices are stated, how many are defaults"))
 
 
 def assumptions(reading: Reading) -> Assumptions:
@@ -30,7 +30,8 @@ def assumptions(reading: Reading) -> Assumptions:
     ))  # fmt: skip
     defaults = int((frame["stated"] == "default").sum())
     return Assumptions(
-        used=_used(reading, origins), sources=_sources(origins), purchases=_purchases(reading), spreads=_spreads(reading),
+        used=_used(reading, origins), sources=_sources(origins), purchases=_purchases(reading),
+        spreads=_spreads(reading),
         counted=f"{count_of(len(frame), 'choice')}, {count_of(defaults, 'default')} among them.",
     )  # fmt: skip
 
@@ -52,8 +53,8 @@ def _used(reading: Reading, origins: list[tuple[str, str, str, str]]) -> Table:
         )))  # fmt: skip
     return Table(
         number="8.1", caption="Choices as used",
-        basis="Each with its unit. The study holds one value for each choice, the one used; it holds no separate best "
-              "estimate, margin or value of last year.",
+        basis="Each with its unit. The study holds one value for each choice, the one used; it holds no separate "
+              "best estimate, margin or value of last year.",
         row_head="Choice", rows=tuple(rows),
         columns=(Column(name="Used", words=True), Column(name="Stated or default", words=True),
                  Column(name="Source", words=True)),
@@ -88,8 +89,8 @@ def _purchases(reading: Reading) -> Table:
     share = cells.percent(reading.study.purchases.share_of_cash_invested, "purchases/share").shown
     return Table(
         number="8.3", caption="What positive cash buys",
-        basis=f"Non-callable bonds at par (M-28); {share} of positive cash is invested, the rest stays in cash. Spread "
-              "continuously compounded over Treasury.",
+        basis=f"Non-callable bonds at par (M-28); {share} of positive cash is invested, the rest stays in cash. "
+              "Spread continuously compounded over Treasury.",
         row_head="Class", rows=tuple(rows),
         columns=(Column(name="Rating", words=True), Column(name="Term", unit="years"), Column(name="Spread", unit="bp"),
                  Column(name="Weight", unit="%")),

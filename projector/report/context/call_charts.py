@@ -21,27 +21,38 @@ def call_map(reading: Reading, months: Months) -> Chart:
     heads = [f"{fixed(called[name])} of {fixed(count)}" for name in reading.shown]
     names = [reading.scenario(name) for name in reading.shown]
     if count > MOST_ROWS:
-        form, drawn = "one row for each year of first call date", drawing.draw_groups(names, heads, _groups(reading, months))
+        form, drawn = (
+            "one row for each year of first call date",
+            drawing.draw_groups(names, heads, _groups(reading, months)),
+        )
     else:
         rows = _rows(reading, months)
         form = "one row a security, a line from first call date to maturity and a dot at the month called"
-        drawn = drawing.draw_map(names, heads, rows, float(reading.horizon_years)) if rows else drawing.draw_groups(names, heads, [])
+        drawn = (
+            drawing.draw_map(names, heads, rows, float(reading.horizon_years))
+            if rows
+            else drawing.draw_groups(names, heads, [])
+        )
     most, least = max(called, key=called.__getitem__), min(called, key=called.__getitem__)
     text = (
-        f"One column a scenario, {form}. {fixed(called[most])} of {count_of(count, 'security', 'securities')} called in {most}, "
-        f"{fixed(called[least])} in {least}. Numbers: tables 10.1, 10.2 and A.3."
+        f"One column a scenario, {form}. {fixed(called[most])} of {count_of(count, 'security', 'securities')} called "
+        f"in {most}, {fixed(called[least])} in {least}. Numbers: tables 10.1, 10.2 and A.3."
     )
     return Chart(
-        number="10.1", title=title, text=text, svg=finished(drawn, prefix="c101", title=title, text=text),
-        subtitle=f"callable securities by year of first call date, years 0 to {fixed(reading.horizon_years)}; "
-                 "model calls on this path, not a forecast",
+        number="10.2", title=title, text=text, svg=finished(drawn, prefix="c102", title=title, text=text),
+        subtitle=f"callable securities by year of first call date, years 0 to {fixed(reading.horizon_years)}; model "
+                 "calls on this path, not a forecast",
     )  # fmt: skip
 
 
 def _rows(reading: Reading, months: Months) -> list[CallRow]:
     start, rows = reading.study.valuation_date, []
     for bond in reading.results.securities.to_dict("records"):
-        first, maturity, name = as_date(bond["first_call_date"]), as_date(bond["maturity_date"]), str(bond["security_id"])
+        first, maturity, name = (
+            as_date(bond["first_call_date"]),
+            as_date(bond["maturity_date"]),
+            str(bond["security_id"]),
+        )
         if first is None or maturity is None:
             continue
         called = tuple(months[name, s] / 12 if (name, s) in months else None for s in reading.shown)
@@ -66,7 +77,9 @@ def _groups(reading: Reading, months: Months) -> list[CallGroup]:
     groups = []
     for year in sorted(set(group_of.values())):
         members = [name for name, group in group_of.items() if group == year]
-        by_year = [tuple(total(v) / reading.money.scale for v in sums.get((year, s), [[]] * years)) for s in reading.shown]
+        by_year = [
+            tuple(total(v) / reading.money.scale for v in sums.get((year, s), [[]] * years)) for s in reading.shown
+        ]
         whole = total(par_of[name] for name in members) / reading.money.scale
         shares = tuple(share(total(values), whole, 0) for values in by_year)
         groups.append(CallGroup(year, len(members), tuple(by_year), shares))
@@ -82,17 +95,25 @@ def par_called(reading: Reading) -> Chart:
     by_year = {name: [total(values) / scale for values in parts] for name, parts in sums.items()}
     rows = {name: reading.measures(name) for name in reading.scenarios}
     callable_par = float(rows[reading.scenarios[0]]["callable_par"])
-    title = words.title_par_called([(reading.scenario(n), float(rows[n]["par_called"])) for n in reading.scenarios], callable_par)
-    lines = [f"{reading.money.text(rows[n]['par_called'])}, {share(rows[n]['par_called'], callable_par, 0)}" for n in reading.shown]
+    title = words.title_par_called(
+        [(reading.scenario(n), float(rows[n]["par_called"])) for n in reading.scenarios], callable_par
+    )
+    lines = [
+        f"{reading.money.text(rows[n]['par_called'])}, {share(rows[n]['par_called'], callable_par, 0)}"
+        for n in reading.shown
+    ]
     most = max(reading.scenarios, key=lambda n: float(rows[n]["par_called"]))
     least = min(reading.scenarios, key=lambda n: float(rows[n]["par_called"]))
     of = f" ({percent(rows[most]['par_called'] / callable_par, 0)} of callable par)" if callable_par else ""
     text = (
-        f"Columns of par called by year, one panel a scenario on one scale. Most in {most}, {reading.money.text(rows[most]['par_called'])}"
-        f"{of}; least in {least}, {reading.money.text(rows[least]['par_called'])}. Numbers: table 10.2."
+        f"Columns of par called by year, one panel a scenario on one scale. Most in {most}, "
+        f"{reading.money.text(rows[most]['par_called'])}{of}; least in {least}, "
+        f"{reading.money.text(rows[least]['par_called'])}. Numbers: table 10.1."
     )
-    drawn = drawing.draw_par([reading.scenario(n) for n in reading.shown], lines, [by_year[n] for n in reading.shown], reading.money.unit)
+    drawn = drawing.draw_par(
+        [reading.scenario(n) for n in reading.shown], lines, [by_year[n] for n in reading.shown], reading.money.unit
+    )
     return Chart(
-        number="10.2", title=title, text=text, svg=finished(drawn, prefix="c102", title=title, text=text),
+        number="10.1", title=title, text=text, svg=finished(drawn, prefix="c101", title=title, text=text),
         subtitle=f"{reading.money.unit} a year, all segments; under each name: total and share of callable par",
     )  # fmt: skip

@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from collections import Counter
+from dataclasses import dataclass, field
 from functools import cached_property
 
 import pandas as pd
@@ -22,15 +23,15 @@ DECIDED_BY = ("bound", "solve", "second grid", "third grid")
 class Calls:
     """Section 10."""
 
-    any_callable: bool = told("whether a callable security is held")
-    largest: Table = told("table 10.1")
-    given_up: Table = told("table 10.2")
-    explained: Table = told("table 10.4")
-    decided: Table = told("table 10.5")
-    map: Chart = told("chart 10.1")
-    par: Chart = told("chart 10.2")
-    sentences: tuple[str, ...] = told("three decisions in words")
-    shown_of: str = told("says that not every scenario is drawn; empty when all are")
+    any_callable: bool = field(metadata=told("whether a callable security is held"))
+    largest: Table = field(metadata=told("table 10.2"))
+    given_up: Table = field(metadata=told("table 10.1"))
+    explained: Table = field(metadata=told("table 10.4"))
+    decided: Table = field(metadata=told("table 10.5"))
+    par: Chart = field(metadata=told("chart 10.1"))
+    map: Chart = field(metadata=told("chart 10.2"))
+    sentences: tuple[str, ...] = field(metadata=told("three decisions in words"))
+    shown_of: str = field(metadata=told("says that not every scenario is drawn; empty when all are"))
 
 
 @dataclass(frozen=True)
@@ -50,8 +51,11 @@ class CallReading:
     def months(self) -> dict[tuple[str, str], int]:
         """Month of the first payment by security and scenario."""
         frame = self.reading.results.calls
-        first = frame.groupby(["security_id", "scenario"], sort=False)["month"].min()
-        return {(str(a), str(b)): int(month) for (a, b), month in first.items()}
+        found: dict[tuple[str, str], int] = {}
+        for security, scenario, month in zip(frame["security_id"], frame["scenario"], frame["month"], strict=True):
+            key = str(security), str(scenario)
+            found[key] = min(int(month), found.get(key, int(month)))
+        return found
 
     def called(self, security: str, scenario: str) -> Cell:
         """The month called, or not called in grey."""
@@ -66,12 +70,14 @@ def calls(reading: Reading) -> Calls:
     return Calls(
         any_callable=bool(reading.callable_ids), largest=_largest(found), given_up=_given_up(found),
         explained=_explained(reading, chosen), decided=_decided(reading), map=call_map(reading, found.months),
-        par=par_called(reading), sentences=tuple(_sentence(reading, *item) for item in chosen), shown_of=reading.shown_of,
+        par=par_called(reading), sentences=tuple(_sentence(reading, *item) for item in chosen),
+        shown_of=reading.shown_of,
     )  # fmt: skip
 
 
 def _largest(found: CallReading) -> Table:
-    return call_table(found, "10.1", f"The {fixed(LARGEST_SHOWN)} largest callable securities: month called by scenario",
+    return call_table(found, "10.2", f"The {fixed(LARGEST_SHOWN)} largest callable securities: month called by "
+                                     "scenario",
                       LARGEST_SHOWN)  # fmt: skip
 
 
@@ -93,14 +99,18 @@ def call_table(found: CallReading, number: str, caption: str, at_most: int | Non
         Column(name="Par"), Column(name="Coupon", unit="%"), Column(name="First call", words=True),
         *(Column(name=scenario, words=True) for scenario in reading.scenarios),
     )  # fmt: skip
-    rows = rows or [Row(name="None held", cells=tuple(cells.quiet("none", f"securities/none/{k}") for k in range(len(columns))))]
+    rows = rows or [
+        Row(name="None held", cells=tuple(cells.quiet("none", f"securities/none/{k}") for k in range(len(columns))))
+    ]
     rest = ""
     if len(rows) > LONG_TABLE:
-        rest = f"All {fixed(len(rows))} lines are in the workbook, sheet {number}; their par is {reading.money.phrase(total(frame['par']))}."
+        par = reading.money.phrase(total(frame["par"]))
+        rest = f"All {fixed(len(rows))} lines are in the workbook, sheet {number}; their par is {par}."
     return Table(
-        number=number, caption=caption, row_head="Security", columns=columns, rows=tuple(rows), most_columns=10, rest=rest,
-        basis=f"Par in {reading.money.unit} at the valuation date, largest first. Months of payment on the scenario's path; "
-              "model calls, not a forecast.",
+        number=number, caption=caption, row_head="Security", columns=columns, rows=tuple(rows), most_columns=10,
+        rest=rest,
+        basis=f"Par in {reading.money.unit} at the valuation date, largest first. Months of payment on the scenario's "
+              "path; model calls, not a forecast.",
     )  # fmt: skip
 
 
@@ -120,11 +130,11 @@ def _given_up(found: CallReading) -> Table:
         )))  # fmt: skip
     callable_par = reading.money.phrase(reading.measures(reading.scenarios[0])["callable_par"])
     return Table(
-        number="10.2", caption="Par called and yield given up by scenario",
-        basis=f"{reading.money.unit} over the horizon, undiscounted, all segments; callable par {callable_par}. Premium: paid "
-              "to the holder above par. Yield given up (M-12): positive = income lost.",
+        number="10.1", caption="Par called and yield given up by scenario",
+        basis=f"{reading.money.unit} over the horizon, undiscounted, all segments; callable par {callable_par}. "
+              "Premium: paid to the holder above par. Yield given up (M-12): positive = income lost.",
         row_head="Scenario", rows=tuple(rows),
-        columns=(Column(name="Securities called", unit="count"), Column(name="Par called"),
+        columns=(Column(name="Securities called"), Column(name="Par called"),
                  Column(name="Of callable par", unit="%"), Column(name="Premium"), Column(name="Yield given up"),
                  Column(name="Later calls would", words=True)),
     )  # fmt: skip
@@ -140,9 +150,15 @@ def _chosen(reading: Reading, found: CallReading) -> list[Chosen]:
     solved = frame[frame["continuation"].notna()]
     solved = solved.assign(par=solved["security_id"].map(par).fillna(0.0), gap=solved["bar"] - solved["continuation"])
     called, kept = solved[solved["called"].astype(bool)], solved[~solved["called"].astype(bool)]
-    never = kept[[(str(i), str(s)) not in found.months for i, s in zip(kept["security_id"], kept["scenario"], strict=True)]]
+    never = kept[
+        [(str(i), str(s)) not in found.months for i, s in zip(kept["security_id"], kept["scenario"], strict=True)]
+    ]
     picks: list[Chosen] = []
-    for what, part, by in (("called", called, ["par"]), ("nearly called", kept, ["gap"]), ("never called", never, ["par"])):
+    for what, part, by in (
+        ("called", called, ["par"]),
+        ("nearly called", kept, ["gap"]),
+        ("never called", never, ["par"]),
+    ):
         if len(part):
             keys = [*by, "scenario", "month", "security_id"]
             order = part.sort_values(keys, ascending=[by == ["gap"], True, True, True], kind="stable")
@@ -171,8 +187,9 @@ def _explained(reading: Reading, chosen: list[Chosen]) -> Table:
     none = tuple(cells.quiet("none", f"decisions/none/{k}") for k in range(6))
     return Table(
         number="10.4", caption="Decisions explained",
-        basis="Per 100 of par, with accrued interest. Upper bound: cost of the best policy fixed in advance. The largest "
-              "solved call, the kept decision nearest to its bar, and the largest security never called, by rule.",
+        basis="Per 100 of par, with accrued interest. Upper bound: cost of the best policy fixed in advance. The "
+              "largest solved call, the kept decision nearest to its bar, and the largest security never called, by "
+              "rule.",
         row_head="Security", rows=tuple(rows) or (Row(name="None taken", cells=none),),
         why_missing="the bound settled the decision",
         columns=(Column(name="Scenario", words=True), Column(name="Month", words=True),
@@ -183,19 +200,19 @@ def _explained(reading: Reading, chosen: list[Chosen]) -> Table:
 
 def _decided(reading: Reading) -> Table:
     frame = reading.results.decisions
-    counts = frame.groupby(["scenario", "decided_by"], sort=False).size()
-    found = {(str(a), str(b)): int(n) for (a, b), n in counts.items()}
+    found = Counter(zip(frame["scenario"].astype(str), frame["decided_by"].astype(str), strict=True))
     called = frame.groupby("scenario", sort=False)["called"].sum()
     rows = []
     for name in reading.scenarios:
-        made = tuple(cells.count(found.get((name, how), 0), f"decisions.count/{how}/{name}", "M-31") for how in DECIDED_BY)
+        made = tuple(cells.count(found[name, how], f"decisions.count/{how}/{name}", "M-31") for how in DECIDED_BY)
         calls_made = int(called.get(name, 0))
         rows.append(Row(name=reading.scenario(name), own_words=True, cells=(
             *made, cells.count(calls_made, f"decisions.called/{name}", "M-22"))))  # fmt: skip
     return Table(
         number="10.5", caption="How decisions were settled",
-        basis="Count of decisions, one for each security, month with a right and scenario, until called.", row_head="Scenario",
-        columns=(*(Column(name=how.capitalize(), unit="count") for how in DECIDED_BY), Column(name="Called", unit="count")),
+        basis="Count of decisions, one for each security, month with a right and scenario, until "
+              "called.", row_head="Scenario",
+        columns=(*(Column(name=how.capitalize()) for how in DECIDED_BY), Column(name="Called")),
         rows=tuple(rows),
     )  # fmt: skip
 

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
 from projector.report import cells
 from projector.report.cautions import Caution, cautions
@@ -19,33 +19,33 @@ from projector.report.parts import Column, Row, Table, told
 class Checks:
     """Section 15."""
 
-    table: Table = told("table 15.1")
-    summary: str = told("how many identities hold over how many sums")
+    table: Table = field(metadata=told("table 15.1"))
+    summary: str = field(metadata=told("how many identities hold over how many sums"))
 
 
 @dataclass(frozen=True, kw_only=True)
 class Reproduce:
     """Section 16."""
 
-    table: Table = told("table 16.1")
-    command: str = told("the command that made the run")
-    input_digest: str = told("SHA-256 of checked tables and choices")
-    set_digest: str = told("SHA-256 of the rate paths")
+    table: Table = field(metadata=told("table 16.1"))
+    command: str = field(metadata=told("the command that made the run"))
+    input_digest: str = field(metadata=told("SHA-256 of checked tables and choices"))
+    set_digest: str = field(metadata=told("SHA-256 of the rate paths"))
 
 
 @dataclass(frozen=True, kw_only=True)
 class Cautions:
     """Section 17."""
 
-    items: tuple[Caution, ...] = told("the twenty cautions")
-    reliances: Table = told("table 17.1")
+    items: tuple[Caution, ...] = field(metadata=told("the twenty cautions"))
+    reliances: Table = field(metadata=told("table 17.1"))
 
 
 @dataclass(frozen=True, kw_only=True)
 class Appendix:
     """Appendix A."""
 
-    tables: tuple[Table, ...] = told("long tables, in order")
+    tables: tuple[Table, ...] = field(metadata=told("long tables, in order"))
 
 
 def checks(reading: Reading) -> Checks:
@@ -63,13 +63,15 @@ def checks(reading: Reading) -> Checks:
     )  # fmt: skip
     hold, sums = int(frame["holds"].sum()), int(total(frame["checked"]))
     return Checks(
-        summary=f"{fixed(hold)} of {count_of(len(frame), 'identity', 'identities')} hold over {count_of(sums, 'sum')} compared.",
+        summary=f"{fixed(hold)} of {count_of(len(frame), 'identity', 'identities')} hold over {count_of(sums, 'sum')} "
+                "compared.",
         table=Table(
             number="15.1", caption="Identities checked on this run",
             basis="Differences in currency units; each side recomputed by code apart from the projection (M-30).",
             row_head="Identity", rows=rows,
-            columns=(Column(name="Sums compared", unit="count"), Column(name="Tolerance", words=True),
-                     Column(name="Worst difference"), Column(name="Where", words=True), Column(name="Result", words=True)),
+            columns=(Column(name="Sums compared"), Column(name="Tolerance", words=True),
+                     Column(name="Worst difference"), Column(name="Where", words=True),
+                     Column(name="Result", words=True)),
         ),
     )  # fmt: skip
 
@@ -87,9 +89,10 @@ def reproduce(reading: Reading, run_command: str) -> Reproduce:
         command=run_command, input_digest=reading.study.input_digest, set_digest=reading.results.set_digest,
         table=Table(
             number="16.1", caption="Digests of results",
-            basis="SHA-256 of each table's canonical rounded content, independent of file format and row order of inputs.",
+            basis="SHA-256 of each table's canonical rounded content, independent of file format and row order of "
+                  "inputs.",
             row_head="Table", rows=rows,
-            columns=(Column(name="Rows", unit="count"), Column(name="SHA-256", words=True)),
+            columns=(Column(name="Rows"), Column(name="SHA-256", words=True)),
         ),
     )  # fmt: skip
 
@@ -100,7 +103,8 @@ def caution_section(reading: Reading) -> Cautions:
     items = cautions(study, date_words(study.valuation_date), date_words(study.information_date), defects(reading))
     said = [text for text in study.texts.reliances if text.strip()]
     rows = tuple(
-        Row(name=f"Reliance {fixed(k)}", cells=(cells.said(text, f"texts.reliances/{k}"),)) for k, text in enumerate(said, 1)
+        Row(name=f"Reliance {fixed(k)}", cells=(cells.said(text, f"texts.reliances/{k}"),))
+        for k, text in enumerate(said, 1)
     )
     none = (Row(name="Reliance", cells=(cells.quiet("none stated by the study", "texts.reliances/none"),)),)
     return Cautions(
@@ -115,7 +119,9 @@ def caution_section(reading: Reading) -> Cautions:
 def appendix(reading: Reading) -> Appendix:
     """Appendix A: surplus by segment, opening yields of every security, every callable security."""
     segments = reading.segments if len(reading.segments) > 1 else ()
-    by_segment = tuple(by_year(reading, f"A.1{letter}", name) for letter, name in zip(_letters(), segments, strict=False))
+    by_segment = tuple(
+        by_year(reading, f"A.1{letter}", name) for letter, name in zip(_letters(), segments, strict=False)
+    )
     every = call_table(CallReading(reading), "A.3", "Every callable security: month called by scenario", None)
     _, long = measures.tables(reading)
     return Appendix(tables=(*by_segment, _securities(reading), every, *long))
@@ -132,7 +138,8 @@ def _securities(reading: Reading) -> Table:
     for bond in frame.to_dict("records"):
         name = str(bond["security_id"])
         rows.append(Row(name=name, own_words=True, cells=(
-            cells.said(str(bond["issuer"]), f"securities.issuer/{name}"), cells.word(str(bond["rating"]), f"securities.rating/{name}"),
+            cells.said(str(bond["issuer"]), f"securities.issuer/{name}"),
+            cells.word(str(bond["rating"]), f"securities.rating/{name}"),
             cells.day(bond["maturity_date"], f"securities.maturity_date/{name}"),
             cells.word(str(bond["call_form"]).replace("_", "-"), f"securities.call_form/{name}"),
             reading.cell(float(bond["par"]), f"securities.par/{name}"),
@@ -144,14 +151,17 @@ def _securities(reading: Reading) -> Table:
             cells.basis_points(float(bond["valuation_spread_bp"]), f"securities.valuation_spread_bp/{name}", "M-23"),
             cells.basis_points(float(bond["refunding_spread_bp"]), f"securities.refunding_spread_bp/{name}", "M-24"),
         )))  # fmt: skip
-    heads = (("Issuer", "", True), ("Rating", "", True), ("Maturity", "", True), ("Call form", "", True), ("Par", "", False),
+    heads = (("Issuer", "", True), ("Rating", "", True), ("Maturity", "", True), ("Call form", "", True),
+             ("Par", "", False),
              ("Statement value", "", False), ("Clean price", "per 100", False), ("Book yield", "%", False),
              ("Yield to worst", "%", False), ("Worst date", "", True), ("Valuation spread", "bp", False),
              ("Refunding spread", "bp", False))  # fmt: skip
-    rest = f"All {fixed(len(rows))} lines are in the workbook, sheet A.2; their par is {reading.money.phrase(total(frame['par']))}."
+    par = reading.money.phrase(total(frame["par"]))
+    rest = f"All {fixed(len(rows))} lines are in the workbook, sheet A.2; their par is {par}."
     return Table(
-        number="A.2", caption="Every security at the valuation date", row_head="Security", rows=tuple(rows), most_columns=12,
+        number="A.2", caption="Every security at the valuation date", row_head="Security", rows=tuple(rows),
+        most_columns=12,
         columns=tuple(Column(name=name, unit=unit, words=is_word) for name, unit, is_word in heads), rest=rest,
-        basis=f"Par and statement value in {reading.money.unit}, largest par first; prices per 100, yields in % bond-equivalent, "
-              "spreads in bp.", why_missing="the figure does not exist for the security",
+        basis=f"Par and statement value in {reading.money.unit}, largest par first; prices per 100, yields in % "
+              "bond-equivalent, spreads in bp.", why_missing="the figure does not exist for the security",
     )  # fmt: skip

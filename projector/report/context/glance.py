@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
 from projector.report import cells, words
 from projector.report.charts import result
@@ -17,26 +17,30 @@ from projector.report.words import Outcome
 class Fact:
     """One of three facts beside the verdict."""
 
-    name: str = told("what it is")
-    text: str = told("the figure, with its unit")
-    where: str = told("where it stands in the report")
+    name: str = field(metadata=told("what it is"))
+    text: str = field(metadata=told("the figure, with its unit"))
+    where: str = field(metadata=told("where it stands in the report"))
 
 
 @dataclass(frozen=True, kw_only=True)
 class Glance:
     """Section 1."""
 
-    verdict: str = told("met or not, where not, by how much")
-    criterion_head: str = told("where the criterion comes from and when it was fixed")
-    criterion: str = told("the study's own sentence")
-    segments: str = told("segments that do not meet the criterion's measure alone; empty when there are none")
-    shortfall: str = told("scenarios in which assets and borrowing ran out; empty when there are none")
-    prior: str = told("last year's additional reserve in the study's words; empty when the study states none")
-    facts: tuple[Fact, ...] = told("three facts")
-    table: Table = told("table 1.1")
-    chart: Chart = told("chart 1.1")
-    breaks: tuple[str, ...] = told("three lines, each with amount and table")
-    shown_of: str = told("says that not every scenario is shown; empty when all are")
+    verdict: str = field(metadata=told("met or not, where not, by how much"))
+    criterion_head: str = field(metadata=told("where the criterion comes from and when it was fixed"))
+    criterion: str = field(metadata=told("the study's own sentence"))
+    segments: str = field(
+        metadata=told("segments that do not meet the criterion's measure alone; empty when there are none")
+    )
+    shortfall: str = field(metadata=told("scenarios in which assets and borrowing ran out; empty when there are none"))
+    prior: str = field(
+        metadata=told("last year's additional reserve in the study's words; empty when the study states none")
+    )
+    facts: tuple[Fact, ...] = field(metadata=told("three facts"))
+    table: Table = field(metadata=told("table 1.1"))
+    chart: Chart = field(metadata=told("chart 1.1"))
+    breaks: tuple[str, ...] = field(metadata=told("three lines, each with amount and table"))
+    shown_of: str = field(metadata=told("says that not every scenario is shown; empty when all are"))
 
 
 def glance(reading: Reading) -> Glance:
@@ -101,14 +105,14 @@ def _table(reading: Reading) -> Table:
         Column(name="PV of ending surplus"),
         Column(name="Ending surplus"),
         Column(name="Lowest at a year end"),
-        Column(name="In year", unit="year"),
+        Column(name="In year"),
         Column(name="Callable par called", unit="%"),
         Column(name="Criterion", words=True),
     )
     return Table(
         number="1.1", caption="Result by scenario, all segments together",
-        basis=f"{reading.money.unit}, before tax. PV: statement surplus discounted at net earned rates (M-3). Ending and "
-              f"lowest: {measure}, undiscounted.",
+        basis=f"{reading.money.unit}, before tax. PV: statement surplus discounted at net earned rates (M-3). Ending "
+              f"and lowest: {measure}, undiscounted.",
         row_head="Scenario", columns=columns,
         rows=tuple(Row(name=reading.scenario(s), own_words=True, cells=_cells(reading, s)) for s in reading.shown),
     )  # fmt: skip
@@ -138,8 +142,8 @@ def _chart(reading: Reading) -> Chart:
     heads = ("PV of ending surplus", "Lowest surplus at a year end")
     drawn = result.draw(names, [v / scale for v in values], [v / scale for v in lows], heads)
     text = (
-        f"Two panels of dots on one scale, one row a scenario. Present value of ending surplus: {_span(reading, values)}. "
-        f"Lowest surplus at a year end: {_span(reading, lows)}. Numbers: table 1.1."
+        "Two panels of dots on one scale, one row a scenario. Present value of ending surplus: "
+        f"{_span(reading, values)}. Lowest surplus at a year end: {_span(reading, lows)}. Numbers: table 1.1."
     )
     return Chart(
         number="1.1", title=title, text=text, svg=finished(drawn, prefix="c11", title=title, text=text),
@@ -170,11 +174,11 @@ def _calls(reading: Reading) -> str:
     name = max(reading.scenarios, key=lambda s: float(reading.measures(s)["yield_given_up"]))
     row = reading.measures(name)
     if not row["par_called"]:
-        return "Calls: no scenario in which calls give up yield (table 10.2)."
+        return "Calls: no scenario in which calls give up yield (table 10.1)."
     called = percent(row["par_called"] / row["callable_par"], 0) if row["callable_par"] else "none"
     return (
-        f"Calls: most yield given up in {reading.scenario(name)}, {reading.money.phrase(row['yield_given_up'])} before "
-        f"discounting, with {called} of callable par called (table 10.2)."
+        f"Calls: most yield given up in {reading.scenario(name)}, {reading.money.phrase(row['yield_given_up'])} "
+        f"before discounting, with {called} of callable par called (table 10.1)."
     )
 
 

@@ -2,11 +2,11 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
 import pandas as pd
 
-from projector.report import cells, words
+from projector.report import words
 from projector.report.charts import flows
 from projector.report.context.reading import Reading, total
 from projector.report.numbers import fixed, listed
@@ -23,11 +23,11 @@ EVERY_PATH = "all"  # scenario column of a block that does not react to rates
 class Liabilities:
     """Section 5."""
 
-    blocks: Table = told("table 5.1")
-    by_year: Table = told("table 5.2")
-    chart: Chart = told("chart 5.1")
-    scenario: str = told("the scenario shown")
-    sensitive: str = told("which blocks react to rates")
+    blocks: Table = field(metadata=told("table 5.1"))
+    by_year: Table = field(metadata=told("table 5.2"))
+    chart: Chart = field(metadata=told("chart 5.1"))
+    scenario: str = field(metadata=told("the scenario shown"))
+    sensitive: str = field(metadata=told("which blocks react to rates"))
 
 
 def liabilities(reading: Reading) -> Liabilities:
@@ -81,7 +81,8 @@ def _sensitive(reading: Reading) -> str:
     fixed_blocks = list(reading.study.liabilities.rate_insensitive_blocks)
     if not fixed_blocks:
         return "Every block has its own stream on every path."
-    return f"One stream serves every path for {listed(fixed_blocks, 8)}, declared insensitive to rates by the study; all other blocks have a stream for each path."
+    named = listed(fixed_blocks, 8)
+    return f"One stream serves every path for {named}, as the study declares; all other blocks have one for each path."
 
 
 def _both_sides(reading: Reading) -> list[tuple[float, float]]:
@@ -113,9 +114,11 @@ def _by_year(reading: Reading, sides: list[tuple[float, float]]) -> Table:
     whole = line("", total(a for a, _ in sides), total(o for _, o in sides), "all")
     return Table(
         number="5.2", caption="Cash flows of both sides by year",
-        basis=f"{reading.money.unit}, undiscounted, {reading.scenario(scenario)}, all segments. Assets: coupons, principal, "
-              "calls and recoveries of the starting holdings, sales left out. Outgo: benefits and expenses less premiums.",
-        row_head="Year after the valuation date", rows=rows_with_total(rows, Row(name="Total", total=True, cells=whole)),
+        basis=f"{reading.money.unit}, undiscounted, {reading.scenario(scenario)}, all segments. Assets: coupons, "
+              "principal, calls and recoveries of the starting holdings, sales left out. Outgo: benefits and "
+              "expenses less premiums.",
+        row_head="Year after the valuation date",
+        rows=rows_with_total(rows, Row(name="Total", total=True, cells=whole)),
         columns=tuple(Column(name=name, adds=True) for name in ("Assets in", "Liabilities out", "Net")),
     )  # fmt: skip
 
@@ -127,9 +130,9 @@ def _chart(reading: Reading, sides: list[tuple[float, float]]) -> Chart:
     title = words.title_flows([0.0 if money.is_zero(v) else v for v in net], name)
     most = max(range(len(net)), key=lambda k: sides[k][0])
     text = (
-        f"Columns by year, assets in above the zero line and liabilities out below, with the net as a dotted line. Assets in "
-        f"are largest in year {fixed(most + 1)}, {money.text(sides[most][0])}; the net ends at {money.text(net[-1])}. "
-        f"Numbers: table 5.2."
+        "Columns by year, assets in above the zero line and liabilities out below, with the net as a dotted line. "
+        f"Assets in are largest in year {fixed(most + 1)}, {money.text(sides[most][0])}; the net ends at "
+        f"{money.text(net[-1])}. Numbers: table 5.2."
     )
     drawn = flows.draw([a / scale for a, _ in sides], [o / scale for _, o in sides])
     return Chart(

@@ -31,9 +31,9 @@ SURPLUS = (
     Measure("ending_statement_surplus", "Ending statement", "M-1", "money"),
     Measure("ending_market_surplus", "Ending market", "M-2", "money"),
     Measure("lowest_statement_surplus", "Lowest statement", "M-5", "money"),
-    Measure("lowest_statement_year", "in year", "M-5", "year", "year"),
+    Measure("lowest_statement_year", "In year", "M-5", "year"),
     Measure("lowest_market_surplus", "Lowest market", "M-5", "money"),
-    Measure("lowest_market_year", "in year", "M-5", "year", "year"),
+    Measure("lowest_market_year", "In year", "M-5", "year"),
     Measure("criterion_value", "Criterion value", "M-6", "money"),
     Measure("criterion_met", "Criterion", "", "met"),
 )
@@ -48,11 +48,11 @@ GAPS = (
     Measure("horizon_return", "Horizon return", "M-11", "rate", "%"),
 )
 CASH = (
-    Measure("years_negative", "Year ends below zero", "M-5", "count", "count"),
+    Measure("years_negative", "Year ends below zero", "M-5", "count"),
     Measure("peak_borrowing", "Largest borrowing", "M-29", "money"),
     Measure("par_sold", "Par sold", "M-31", "money"),
     Measure("sale_gain", "Gain on sales", "M-31", "money"),
-    Measure("first_shortfall_month", "First shortfall", "", "month", "month"),
+    Measure("first_shortfall_month", "First shortfall", "", "month"),
     Measure("largest_shortfall", "Largest shortfall", "M-29", "money"),
 )
 STATUS = {"none": "no root", "several": "several roots"}
@@ -64,20 +64,20 @@ def tables(reading: Reading) -> tuple[tuple[Table, Table, Table], tuple[Table, .
     whole = [(scenario, ALL_SEGMENTS) for scenario in reading.scenarios]
     if len(pairs) <= LONGEST_IN_TEXT:
         return _three(reading, ("9.1", "9.5", "9.6"), pairs), ()
-    return _three(reading, ("9.1", "9.5", "9.6"), whole), _three(reading, ("A.4", "A.5", "A.6"), pairs[len(whole):])  # fmt: skip
+    of_segments = _three(reading, ("A.4", "A.5", "A.6"), pairs[len(whole) :])
+    return _three(reading, ("9.1", "9.5", "9.6"), whole), of_segments
 
 
-def _three(
-    reading: Reading, numbers: tuple[str, str, str], pairs: list[tuple[str, str]]
-) -> tuple[Table, Table, Table]:
+def _three(reading: Reading, numbers: tuple[str, str, str], pairs: list[tuple[str, str]]) -> tuple[Table, Table, Table]:
     unit = reading.money.unit
     return (
         _table(reading, numbers[0], "Surplus by scenario and segment", SURPLUS, pairs,
-               f"{unit}, before tax. PV = ending statement surplus discounted; lows are undiscounted, at month 0 or a year end.",
+               f"{unit}, before tax. PV = ending statement surplus discounted; lows are undiscounted, at month 0 or a "
+               "year end.",
                "market values are not calculated for the line", 10),
         _table(reading, numbers[1], "Gaps and returns by scenario and segment", GAPS, pairs,
-               f"{unit}; rates annual effective in %, IRR gap in percentage points. Run-off of the starting holdings, no sale "
-               "and no purchase, except the horizon return.",
+               f"{unit}; rates annual effective in %, IRR gap in percentage points. Run-off of the starting holdings, "
+               "no sale and no purchase, except the horizon return.",
                "without exactly one root on each side there is no gap", 8),
         _table(reading, numbers[2], "Cash, sales and shortfall by scenario and segment", CASH, pairs,
                f"{unit}; a gain is proceeds less statement value, positive = gain. Largest = at a month end.", "", 8),
@@ -109,7 +109,11 @@ def _cell(reading: Reading, measure: Measure, row: dict[str, Any], key: str) -> 
     value = row[measure.column]
     if measure.make == "status":
         status = str(row[f"{measure.column}_status"])
-        return cells.word(STATUS[status], key) if status in STATUS else cells.yearly_rate(float(value), key, measure.formula)
+        return (
+            cells.word(STATUS[status], key)
+            if status in STATUS
+            else cells.yearly_rate(float(value), key, measure.formula)
+        )
     simple: dict[str, Callable[[], Cell]] = {
         "money": lambda: reading.cell(float(value), key, measure.formula),
         "rate": lambda: cells.yearly_rate(float(value), key, measure.formula),

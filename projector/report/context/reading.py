@@ -127,8 +127,8 @@ class Reading:
         if len(self.shown) == len(self.scenarios):
             return ""
         return (
-            f"The {numbers.fixed(len(self.shown))} scenarios with the lowest criterion values are shown; "
-            f"all {numbers.fixed(len(self.scenarios))} are in table 9.1."
+            f"The {numbers.fixed(len(self.shown))} scenarios with the lowest criterion values are shown; all "
+            f"{numbers.fixed(len(self.scenarios))} are in table 9.1."
         )
 
     @cached_property

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
 from projector.report import cells, words
 from projector.report.charts import mix as mix_chart
@@ -25,20 +25,20 @@ KINDS = ("held, callable", "held, not callable", "bought", "cash")
 class Results:
     """Section 9."""
 
-    surplus: Table = told("table 9.1")
-    by_year: Table = told("table 9.2")
-    reserve: Table = told("table 9.3")
-    mix: Table = told("table 9.4")
-    gaps: Table = told("table 9.5")
-    cash: Table = told("table 9.6")
-    classes: Table = told("table 9.7")
-    chart: Chart = told("chart 9.1")
-    mix_chart: Chart = told("chart 9.2")
-    lows: tuple[str, ...] = told("each scenario that is below zero on the way or at the end")
-    measure: str = told("the criterion's measure in words")
-    level: str = told("the scenario of table 9.7")
-    single: bool = told("one segment only, so no aggregation")
-    shown_of: str = told("says that not every scenario is drawn; empty when all are")
+    surplus: Table = field(metadata=told("table 9.1"))
+    by_year: Table = field(metadata=told("table 9.2"))
+    reserve: Table = field(metadata=told("table 9.3"))
+    mix: Table = field(metadata=told("table 9.4"))
+    gaps: Table = field(metadata=told("table 9.5"))
+    cash: Table = field(metadata=told("table 9.6"))
+    classes: Table = field(metadata=told("table 9.7"))
+    chart: Chart = field(metadata=told("chart 9.1"))
+    mix_chart: Chart = field(metadata=told("chart 9.2"))
+    lows: tuple[str, ...] = field(metadata=told("each scenario that is below zero on the way or at the end"))
+    measure: str = field(metadata=told("the criterion's measure in words"))
+    level: str = field(metadata=told("the scenario of table 9.7"))
+    single: bool = field(metadata=told("one segment only, so no aggregation"))
+    shown_of: str = field(metadata=told("says that not every scenario is drawn; empty when all are"))
 
 
 def results(reading: Reading) -> Results:
@@ -47,7 +47,8 @@ def results(reading: Reading) -> Results:
     shares = _shares(reading)
     return Results(
         surplus=surplus, gaps=gaps, cash=cash, by_year=by_year(reading, "9.2", ALL_SEGMENTS), reserve=_reserve(reading),
-        mix=_mix(reading, shares), classes=_classes(reading), chart=_chart(reading), mix_chart=_mix_chart(reading, shares),
+        mix=_mix(reading, shares), classes=_classes(reading), chart=_chart(reading),
+        mix_chart=_mix_chart(reading, shares),
         lows=_lows(reading), measure=reading.surplus_word, level=reading.scenario(reading.scenarios[0]),
         single=len(reading.segments) == 1, shown_of=reading.shown_of,
     )  # fmt: skip
@@ -76,8 +77,14 @@ def _reserve(reading: Reading) -> Table:
     key = "additional_reserve"
     prior = reading.study.texts.prior_additional_reserve
     rows = (
-        Row(name="Additional reserve that meets the criterion", cells=(cells.quiet("Not calculated in this version", key),)),
-        Row(name="Re-test with the reserve held", cells=(cells.quiet("Not calculated in this version", f"{key}/re-test"),)),
+        Row(
+            name="Additional reserve that meets the criterion",
+            cells=(cells.quiet("Not calculated in this version", key),),
+        ),
+        Row(
+            name="Re-test with the reserve held",
+            cells=(cells.quiet("Not calculated in this version", f"{key}/re-test"),),
+        ),
         Row(name="Last year, as the study states it", cells=(cells.said(prior, f"{key}/prior"),)),
     )
     return Table(
@@ -116,8 +123,8 @@ def _mix(reading: Reading, shares: dict[tuple[str, int], list[float]]) -> Table:
         rows.append(Row(name=label, own_words=True, cells=(*made, reading.cell(whole, f"{key}/all", "M-31"))))
     return Table(
         number="9.4", caption="Asset mix at stated years, all segments",
-        basis=f"% of statement value and cash; last column in {reading.money.unit}. Held = starting holdings left; bought = "
-              "purchases of the projection, none of them callable.",
+        basis=f"% of statement value and cash; last column in {reading.money.unit}. Held = starting holdings left; "
+              "bought = purchases of the projection, none of them callable.",
         row_head="Scenario, year", rows=tuple(rows),
         columns=(*(Column(name=kind.capitalize(), unit="%") for kind in KINDS), Column(name="Total")),
     )  # fmt: skip
@@ -128,19 +135,25 @@ def _classes(reading: Reading) -> Table:
     first = reading.scenarios[0]
     frame = frame[(frame["segment"] == ALL_SEGMENTS) & (frame["scenario"] == first)]
     years = [year for year in MIX_YEARS if (frame["year"] == year).any()]
-    keys = sorted({(str(n), bool(c)) for n, c in zip(frame["asset_class"], frame["callable"], strict=True)}, key=_class_key)
+    keys = sorted(
+        {(str(n), bool(c)) for n, c in zip(frame["asset_class"], frame["callable"], strict=True)}, key=_class_key
+    )
     values = {
         (str(n), bool(c), int(y)): float(v)
-        for n, c, y, v in zip(frame["asset_class"], frame["callable"], frame["year"], frame["statement_value"], strict=True)
+        for n, c, y, v in zip(
+            frame["asset_class"], frame["callable"], frame["year"], frame["statement_value"], strict=True
+        )
     }
     rows = [
         Row(name=f"{name}, callable" if can else name, own_words=True, cells=tuple(
-            reading.cell(values.get((name, can, year), 0.0), f"mix.statement_value/all/{first}/year {year}/{name}/{can}", "M-14")
+            reading.cell(values.get((name, can, year), 0.0), f"mix.statement_value/all/{first}/year "
+                                                             f"{year}/{name}/{can}", "M-14")
             for year in years))
         for name, can in keys
     ]  # fmt: skip
     whole = tuple(
-        reading.cell(total(values.get((n, c, year), 0.0) for n, c in keys), f"mix.statement_value/all/{first}/year {year}", "M-31")
+        reading.cell(total(values.get((n, c, year), 0.0) for n, c in keys), f"mix.statement_value/all/{first}/year "
+                                                                            f"{year}", "M-31")
         for year in years)  # fmt: skip
     return Table(
         number="9.7", caption=f"Assets by class, {reading.scenario(first)}",
@@ -166,8 +179,8 @@ def _lows(reading: Reading) -> tuple[str, ...]:
         months = int((reading.results.balance.loc[borrowed, "borrowing"] > 0).sum())
         lines.append(
             f"{reading.scenario(name)}: lowest {reading.money.phrase(low)} in year {fixed(row[reading.lowest_year])}; "
-            f"{count_of(months, 'month')} with borrowing; "
-            f"{reading.money.phrase(row['par_called'])} of par called over the horizon."
+            f"{count_of(months, 'month')} with borrowing; {reading.money.phrase(row['par_called'])} of par called "
+            "over the horizon."
         )
     return tuple(lines)
 
@@ -183,7 +196,9 @@ def _chart(reading: Reading) -> Chart:
     lows = [(name, float(reading.measures(name)[reading.lowest])) for name in reading.scenarios]
     title = words.title_surplus([low for _, low in lows], reading.surplus_word.capitalize(), money)
     below = sorted((pair for pair in lows if money.is_negative(pair[1])), key=lambda pair: pair[1])
-    named = listed([f"{n} {money.text(low)} in year {fixed(reading.measures(n)[reading.lowest_year])}" for n, low in below])
+    named = listed(
+        [f"{n} {money.text(low)} in year {fixed(reading.measures(n)[reading.lowest_year])}" for n, low in below]
+    )
     said = f"Lowest points below zero: {named}" if below else "No scenario is below zero at a year end"
     text = f"{count_of(len(panels), 'line chart')} of {reading.surplus_word} on one scale. {said}. Numbers: table 9.2."
     drawn = paths.draw_surplus(panels, money.unit, "below zero")
@@ -198,18 +213,23 @@ def _mix_chart(reading: Reading, shares: dict[tuple[str, int], list[float]]) -> 
     panels = []
     for name in reading.shown:
         parts = tuple(_percentages(shares[name, year]) for year in years)
-        panels.append(MixPanel(reading.scenario(name), f"total at end {reading.money.text(total(shares[name, years[-1]]))}", parts))
+        panels.append(
+            MixPanel(
+                reading.scenario(name), f"total at end {reading.money.text(total(shares[name, years[-1]]))}", parts
+            )
+        )
     at = CALLABLE_SHOWN_AT if CALLABLE_SHOWN_AT in years else years[-1]
     later = [_percentages(shares[name, at])[0] / 100 for name in reading.scenarios if (name, at) in shares]
     opening = _percentages(shares[reading.scenarios[0], years[0]])[0] / 100
     title = words.title_mix(opening, later, at)
     text = (
         f"Stacked columns of shares at years {listed([fixed(y) for y in years], 9)}, callable holdings at the bottom: "
-        f"{percent(opening, 0)} at the start, {percent(min(later), 0)} to {percent(max(later), 0)} in year {fixed(at)} by "
-        f"scenario. Numbers: table 9.4."
+        f"{percent(opening, 0)} at the start, {percent(min(later), 0)} to {percent(max(later), 0)} in year "
+        f"{fixed(at)} by scenario. Numbers: table 9.4."
     )
     return Chart(
-        number="9.2", title=title, text=text, subtitle="% of statement value and cash, all segments, at the years named",
+        number="9.2", title=title, text=text, subtitle="% of statement value and cash, all segments, at the years "
+                                                       "named",
         svg=finished(mix_chart.draw(panels, years), prefix="c92", title=title, text=text),
     )  # fmt: skip
 

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
 from projector.report import cells, words
 from projector.report.charts import paths
@@ -11,6 +11,7 @@ from projector.report.context.reading import Reading
 from projector.report.numbers import count_of, fixed, percent
 from projector.report.parts import Chart, Column, Row, Table, told
 from projector.report.svg import finished
+from projector.study.records import PathSource
 
 YEARS = (0, 1, 5, 10, 20, 30)
 LONG, SHORT = 120, 12  # tenors drawn, where quoted [months]
@@ -31,14 +32,14 @@ WORDS = {
 class Scenarios:
     """Section 6."""
 
-    long: Table = told("table 6.1")
-    short: Table = told("table 6.2")
-    curve: Table = told("table 6.3")
-    chart: Chart = told("chart 6.1")
-    sources: tuple[str, ...] = told("each source of paths and how it was read")
-    start_source: str = told("source of the starting curve, in the study's words")
-    basis: str = told("rate basis")
-    shown_of: str = told("says that not every scenario is drawn; empty when all are")
+    long: Table = field(metadata=told("table 6.1"))
+    short: Table = field(metadata=told("table 6.2"))
+    curve: Table = field(metadata=told("table 6.3"))
+    chart: Chart = field(metadata=told("chart 6.1"))
+    sources: tuple[str, ...] = field(metadata=told("each source of paths and how it was read"))
+    start_source: str = field(metadata=told("source of the starting curve, in the study's words"))
+    basis: str = field(metadata=told("rate basis"))
+    shown_of: str = field(metadata=told("says that not every scenario is drawn; empty when all are"))
 
 
 def scenarios(reading: Reading) -> Scenarios:
@@ -56,10 +57,11 @@ def scenarios(reading: Reading) -> Scenarios:
     )  # fmt: skip
 
 
-def _source(source: object) -> str:
-    kind = str(getattr(source, "kind"))  # noqa: B009 - the same reading serves every kind of source
-    parts = [WORDS[value] for name in ("floor", "within_year", "recovery", "replay") if (value := getattr(source, name))]
-    return f"{KINDS[kind]}: {'; '.join(parts)}" if parts else KINDS[kind]
+def _source(source: PathSource) -> str:
+    named = (source.floor, source.within_year, source.recovery, source.replay)
+    parts = [WORDS.get(value, value) for value in named if value]
+    kind = KINDS.get(source.kind, source.kind)
+    return f"{kind}: {'; '.join(parts)}" if parts else kind
 
 
 def _tenor(reading: Reading, wanted: int) -> int:
@@ -75,9 +77,7 @@ def _yields(reading: Reading, tenor: int) -> dict[tuple[str, int], float]:
     """Yield by scenario and month; month 0 is the starting curve where the paths do not repeat it."""
     frame = reading.results.rates
     part = frame[frame["tenor_months"] == tenor]
-    found = {
-        (str(s), int(m)): float(r) for s, m, r in zip(part["scenario"], part["month"], part["rate"], strict=True)
-    }
+    found = {(str(s), int(m)): float(r) for s, m, r in zip(part["scenario"], part["month"], part["rate"], strict=True)}
     curve = reading.study.tables.yield_curve
     start = curve.loc[curve["tenor_months"] == tenor, "rate"]
     for name in reading.scenarios:
@@ -91,7 +91,8 @@ def _table(reading: Reading, number: str, tenor: int) -> Table:
     years = [year for year in YEARS if year <= reading.horizon_years]
     rows = tuple(
         Row(name=reading.scenario(name), own_words=True, cells=tuple(
-            cells.yearly_rate(found.get((name, 12 * year), float("nan")), f"rates.rate/{tenor} months/{name}/year {year}", "M-18")
+            cells.yearly_rate(found.get((name, 12 * year), float("nan")), f"rates.rate/{tenor} months/{name}/year "
+                                                                          f"{year}", "M-18")
             for year in years))
         for name in reading.scenarios
     )  # fmt: skip
@@ -106,7 +107,8 @@ def _table(reading: Reading, number: str, tenor: int) -> Table:
 def _curve(reading: Reading) -> Table:
     curve = reading.study.tables.yield_curve
     rows = tuple(
-        Row(name=_tenor_name(int(tenor)), cells=(cells.yearly_rate(float(rate), f"yield_curve.rate/{int(tenor)} months"),))
+        Row(name=_tenor_name(int(tenor)), cells=(cells.yearly_rate(float(rate), f"yield_curve.rate/{int(tenor)} "
+                                                                                "months"),))
         for tenor, rate in zip(curve["tenor_months"], curve["rate"], strict=True)
     )  # fmt: skip
     return Table(
@@ -127,12 +129,13 @@ def _chart(reading: Reading) -> Chart:
         line = f"{percent(of_long[0] / 100, 2)}, end {percent(of_long[-1] / 100, 2)}"
         panels.append(RatePanel(reading.scenario(name), line, of_long, of_short))
     title = words.title_rates([by_long[name, months[-1]] for name in reading.scenarios])
-    lows = {name: min(by_long[name, month] for month in months) for name in reading.scenarios}
+    tabled = [12 * year for year in YEARS if 12 * year in months]
+    lows = {name: min(by_long[name, month] for month in tabled) for name in reading.scenarios}
     lowest = min(lows, key=lows.__getitem__)
     text = (
         f"{count_of(len(panels), 'line chart')} on one scale. The {_tenor_name(long)} yield starts at "
-        f"{percent(by_long[reading.scenarios[0], months[0]], 2)} everywhere and is lowest in {lowest}, at {percent(lows[lowest], 2)}. "
-        f"The {_tenor_name(short)} yield is dashed. Numbers: tables 6.1 and 6.2."
+        f"{percent(by_long[reading.scenarios[0], months[0]], 2)} everywhere and is lowest in {lowest}, at "
+        f"{percent(lows[lowest], 2)}. The {_tenor_name(short)} yield is dashed. Numbers: tables 6.1 and 6.2."
     )
     drawn = paths.draw_rates(panels, [m / 12 for m in months], _tenor_name(long), _tenor_name(short))
     return Chart(

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from typing import Any
 
 from projector.report import cells
@@ -12,9 +12,10 @@ from projector.report.parts import Cell, Column, Row, Table, rows_with_total, to
 from projector.run.results import ALL_SEGMENTS
 
 ITEMS = {
-    "lots_count": "Lots, count", "par": "Par", "book_value": "Statement value of bonds", "cash": "Cash",
+    "lots_count": "Lots", "par": "Par", "book_value": "Statement value of bonds", "cash": "Cash",
     "reserve_statutory": "Statutory reserve", "starting_assets": "Starting assets",
 }  # fmt: skip
+CONTROL = ("ledger", "read", "difference")
 OPENING = (
     ("statement_start", "Statement value"), ("accrued", "Accrued interest"), ("cash", "Cash"),
     ("assets", "Starting assets"), ("reserve", "Reserves tested"), ("statement_surplus", "Statement surplus"),
@@ -25,13 +26,13 @@ OPENING = (
 class Scope:
     """Section 3."""
 
-    control: Table = told("table 3.1")
-    opening: Table = told("table 3.2")
-    defects: Table = told("table 3.3")
-    defects_text: str = told("how many special cases were found")
-    warnings: tuple[str, ...] = told("warnings of the check, in its words")
-    notes: tuple[str, ...] = told("notes of the study, in its words")
-    materiality: str = told("materiality level in the study's words; empty when not stated")
+    control: Table = field(metadata=told("table 3.1"))
+    opening: Table = field(metadata=told("table 3.2"))
+    defects: Table = field(metadata=told("table 3.3"))
+    defects_text: str = field(metadata=told("how many special cases were found"))
+    warnings: tuple[str, ...] = field(metadata=told("warnings of the check, in its words"))
+    notes: tuple[str, ...] = field(metadata=told("notes of the study, in its words"))
+    materiality: str = field(metadata=told("materiality level in the study's words; empty when not stated"))
 
 
 def scope(reading: Reading) -> Scope:
@@ -47,7 +48,8 @@ def defects(reading: Reading) -> str:
     """How many special cases were found, in words."""
     found = int((reading.results.special_cases["count"] > 0).sum()) if len(reading.results.special_cases) else 0
     kinds = count_of(found, "kind of special case", "kinds of special case")
-    return f"{kinds[0].upper()}{kinds[1:]} and {count_of(len(reading.results.warnings), 'warning')} were found in the data."
+    warned = count_of(len(reading.results.warnings), "warning")
+    return f"Found in the data: {kinds} and {warned}."
 
 
 def _control(reading: Reading) -> Table:
@@ -58,7 +60,7 @@ def _control(reading: Reading) -> Table:
         key = f"{item}/{segment}"
         rows.append(Row(
             name=f"{ITEMS.get(item, item)}, {reading.segment(segment)}", own_words=True,
-            cells=tuple(make(row[column], f"control.{column}/{key}", "M-31") for column in ("ledger", "read", "difference")),
+            cells=tuple(make(row[column], f"control.{column}/{key}", "M-31") for column in CONTROL),
         ))  # fmt: skip
     currency = reading.study.currency
     return Table(
@@ -81,8 +83,9 @@ def _opening(reading: Reading) -> Table:
         rows = list(rows_with_total(rows, _opening_row(reading, ALL_SEGMENTS, sums)))
     return Table(
         number="3.2", caption="Starting assets against reserves tested, by segment",
-        basis=f"{reading.money.unit} at the valuation date. Starting assets = statement value + accrued interest + cash "
-              "(M-31); surplus by M-1. Interest maintenance and asset valuation reserves are nil in this version.",
+        basis=f"{reading.money.unit} at the valuation date. Starting assets = statement value + accrued interest + "
+              "cash (M-31); surplus by M-1. Interest maintenance and asset valuation reserves are nil in this "
+              "version.",
         row_head="Segment", columns=tuple(Column(name=head, adds=True) for _, head in OPENING), rows=tuple(rows),
     )  # fmt: skip
 
@@ -100,7 +103,9 @@ def _opening_row(reading: Reading, name: str, numbers: dict[str, float]) -> Row:
         for column, _ in OPENING
     )
     everything = name == ALL_SEGMENTS
-    return Row(name="Total" if everything else reading.segment(name), own_words=not everything, total=everything, cells=made)
+    return Row(
+        name="Total" if everything else reading.segment(name), own_words=not everything, total=everything, cells=made
+    )
 
 
 def _defects(reading: Reading) -> Table:
@@ -119,6 +124,6 @@ def _defects(reading: Reading) -> Table:
         number="3.3", caption="Special cases and how each was treated",
         basis=f"Par in {reading.money.unit} at the valuation date; at most {fixed(20)} securities are named.",
         row_head="Case", rows=tuple(rows),
-        columns=(Column(name="Securities", unit="count"), Column(name="Par"), Column(name="Which", words=True),
+        columns=(Column(name="Securities"), Column(name="Par"), Column(name="Which", words=True),
                  Column(name="Treatment", words=True)),
     )  # fmt: skip

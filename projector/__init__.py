@@ -1,0 +1,56 @@
+"""Year-end asset adequacy projection: callable bonds with issuer-optimal calls against liability streams.
+
+    import projector
+    results = projector.run("scenarios/harbour_ridge_2022")   # RunResults: pandas DataFrames with documented columns
+    results.measures, results.calls, results.balance, ...
+
+Columns and units: `projector.columns()`. Everything heavy is imported when first used.
+"""
+
+from __future__ import annotations
+
+from os import PathLike
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+if TYPE_CHECKING:
+    from projector.run.results import RunResults
+    from projector.run.runner import Staged
+
+__version__ = "0.1.0"
+__all__ = ["check", "columns", "new", "report", "run"]
+
+
+def new(folder: str | PathLike[str]) -> None:
+    """Writes a commented study folder to start from. Raises StudyRefused when the folder is there and not empty."""
+    from projector.study.folder import new_study
+
+    new_study(Path(folder))
+
+
+def check(folder: str | PathLike[str]) -> Staged:
+    """Reads and checks a study, calibrates spreads, projects nothing. Raises StudyRefused with every located error."""
+    from projector.run.runner import stage
+
+    return stage(Path(folder))
+
+
+def run(folder: str | PathLike[str], threads: int | None = None, block_paths: int | None = None) -> RunResults:
+    """The year-end run in memory. Raises StudyRefused, StudyTooLarge or IdentityFailed."""
+    from projector.run.runner import run_study
+
+    return run_study(Path(folder), threads, block_paths)
+
+
+def report(results: RunResults, run_command: str = "projector run FOLDER") -> str:
+    """The reserve-adequacy report as one HTML text."""
+    from projector.report.render import render_report
+
+    return render_report(results, run_command)
+
+
+def columns() -> dict[str, dict[str, tuple[str, str]]]:
+    """Result tables: table -> column -> (unit, meaning)."""
+    from projector.run.results import COLUMNS
+
+    return COLUMNS

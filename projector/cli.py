@@ -1,0 +1,165 @@
+"""Commands: they call the package's functions, print paths and figures, and turn refusals into exit codes.
+
+Exit codes: 0 done, 1 our own fault, 2 bad input or usage, 3 an identity failed, 4 refused as too large. Progress goes
+to the error stream and is silent when that is not a terminal.
+"""
+
+from __future__ import annotations
+
+import sys
+from collections.abc import Callable
+from pathlib import Path
+from typing import Annotated, Any
+
+import typer
+
+app = typer.Typer(
+    rich_markup_mode=None, pretty_exceptions_enable=False, add_completion=True, no_args_is_help=True,
+    help="Year-end asset adequacy: callable bonds against liability streams, under rate paths. Numbers, never an opinion.",
+)  # fmt: skip
+
+Folder = Annotated[Path, typer.Argument(help="study folder, with study.toml in it")]
+
+
+@app.command()
+def new(folder: Annotated[Path, typer.Argument(help="folder to make; must not exist or be empty")]) -> None:
+    """Write a study folder to start from: a commented study.toml and empty tables."""
+    import projector
+
+    projector.new(folder)
+    print(f"wrote {folder}: state every value in study.toml, fill the tables, then run: projector check {folder}")
+
+
+@app.command()
+def check(
+    folder: Annotated[Path | None, typer.Argument(help="study folder, with study.toml in it")] = None,
+    schemas: Annotated[
+        bool, typer.Option("--schemas", help="print the JSON Schema of study.toml and the Table Schemas, and stop")
+    ] = False,
+) -> None:
+    """Read and check everything, project nothing: choices in force, spreads, special cases, sizes."""
+    if schemas:
+        print_schemas()
+        return
+    if folder is None:
+        raise typer.BadParameter("name a study folder, or ask for --schemas")
+    from projector.run.check_text import check_text
+    from projector.run.runner import stage
+
+    print(check_text(stage(folder)))
+
+
+@app.command()
+def run(
+    folder: Folder,
+    out: Annotated[Path | None, typer.Option(help="folder for the results (default: reports/<study>-<digest>)")] = None,
+    threads: Annotated[int, typer.Option(min=0, max=256, help="threads, 0 = all processors; results do not depend on it")] = 0,
+    block: Annotated[int, typer.Option(min=0, help="paths a block, 0 = the study's; results do not depend on it")] = 0,
+    report: Annotated[bool, typer.Option(help="write the HTML report and the workbook")] = True,
+) -> None:
+    """Run the year-end test: results tables, workbook and the HTML report, whole or not at all."""
+    from projector.run.results_folder import folder_name, write_results
+    from projector.run.runner import run_study
+
+    with Bar() as bar:
+        results = run_study(folder, threads or None, block or None, bar.show)
+        target = out or Path("reports") / folder_name(folder, results.study.input_digest)
+        refuse_target(folder, target)
+        command = f"projector run {folder.resolve().name}"
+        bar.show("writing the report" if report else "writing the tables", 0, 1)
+        extras = report_writers(results, command) if report else {}
+        write_results(results, target, {"command": command, "report": report}, extras)
+    met = results.measures[results.measures["segment"] == "all"]["criterion_met"]
+    print(f"criterion met in {int(met.sum())} of {len(met)} scenarios")
+    print(f"results: {target}")
+    if report:
+        print(f"report: {target / 'report.html'}")
+
+
+def report_writers(results: Any, command: str) -> dict[str, Callable[[Path], None]]:
+    """The report's files by name."""
+    from projector.report.publish import published
+    from projector.run.publish import write_table
+
+    page = published(results, command)
+    return {
+        "report.html": lambda path: no_value(path.write_text(page.html, encoding="utf-8", newline="\n")),
+        "report.xlsx": lambda path: no_value(path.write_bytes(page.workbook)),
+        "tables/addresses.parquet": lambda path: write_table("addresses", page.addresses, {}, path),
+    }
+
+
+def no_value(_: object) -> None:
+    """Drops a count of bytes written."""
+
+
+def refuse_target(folder: Path, target: Path) -> None:
+    """Results never land in the study folder nor over a folder that is not a run's."""
+    inside, study = target.resolve(), folder.resolve()
+    if inside == study or study in inside.parents:
+        raise typer.BadParameter(f"--out {target} lies in the study folder; results never do, choose another place")
+    if inside.exists() and any(inside.iterdir()) and not (inside / "run_statement.json").is_file():
+        raise typer.BadParameter(f"--out {target} holds files that no run wrote; choose an empty or new folder")
+
+
+def print_schemas() -> None:
+    """The schemas as one JSON text."""
+    import json
+
+    from projector.study.schema import study_json_schema
+    from projector.study.tableschema import table_schemas
+
+    print(json.dumps({"study.toml": study_json_schema(), "tables": table_schemas()}, indent=2))
+
+
+class Bar:
+    """Progress on the error stream, silent when that is not a terminal."""
+
+    def __enter__(self) -> Bar:
+        self.bar: Any = None
+        return self
+
+    def __exit__(self, *_: object) -> None:
+        if self.bar is not None:
+            self.bar.close()
+
+    def show(self, stage: str, done: int, of: int) -> None:
+        if not sys.stderr.isatty():
+            return
+        from tqdm import tqdm
+
+        if self.bar is None:
+            self.bar = tqdm(total=of, file=sys.stderr, disable=None, leave=False, bar_format="{desc} {n}/{total}")
+        self.bar.total = of
+        self.bar.n = done
+        self.bar.set_description_str(stage)
+        self.bar.refresh()
+
+
+def main() -> None:
+    """Entry point: refusals become one sentence a line and their exit code; anything else is our own fault."""
+    from projector.study.errors import IdentityFailed, StudyRefused
+
+    try:
+        app()
+    except (StudyRefused, IdentityFailed) as refusal:
+        print(refusal, file=sys.stderr)
+        sys.exit(refusal.exit_code)
+    except KeyboardInterrupt:
+        print("stopped; nothing was written", file=sys.stderr)
+        sys.exit(130)
+    except OSError as fault:
+        print(f"E190 {fault.filename or 'output'}: {fault.strerror or fault}; nothing was left half-written.", file=sys.stderr)
+        sys.exit(2)
+    except Exception as fault:
+        import traceback
+
+        frame = traceback.extract_tb(fault.__traceback__)[-1]
+        place = f"{Path(frame.filename).name}, line {frame.lineno}"
+        print(f"E900 the program itself failed ({type(fault).__name__} at {place}: {fault}).", file=sys.stderr)
+        print("Please report this sentence with the version; it holds no policy data beyond what it says.", file=sys.stderr)
+        sys.exit(1)
+
+
+if __name__ == "__main__":
+    main()

@@ -1,0 +1,55 @@
+"""What mapping to month ends does to a spread (C1): promised payments on exact dates against mapped months."""
+
+from __future__ import annotations
+
+import math
+
+import numpy as np
+import numpy.typing as npt
+import pandas as pd
+from scipy.optimize import brentq
+
+from projector.bonds.mapped import dated, plain_records
+from projector.bonds.yields import accrued_interest
+from projector.run.prepare import Prepared, start_discount
+
+Array = npt.NDArray[np.float64]
+
+LISTED_OVER_BP = 5.0
+DAYS_A_YEAR = 365.25
+
+
+def spread_of(times: Array, amounts: Array, log_discount: Array, price: float) -> float:
+    """Continuously compounded spread at which payments are worth a dirty price. [1/year]; nan when none in -50..100 %"""
+    base = amounts * np.exp(log_discount)
+
+    def miss(spread: float) -> float:
+        return math.fsum((base * np.exp(-spread * times)).tolist()) - price
+
+    if miss(-0.5) < 0.0 or miss(1.0) > 0.0:
+        return float("nan")
+    return float(brentq(miss, -0.5, 1.0, xtol=1e-10))
+
+
+def mapping_differences(prepared: Prepared) -> pd.DataFrame:
+    """security_id, exact_bp, mapped_bp, difference_bp: spreads of the promised payments to maturity at the same price.
+
+    Rights are left out on both sides, so that only the mapping differs. The exact side discounts on days / 365.25 and
+    accrues by the bond's own day count; the mapped side on months / 12 with mapped accrued interest.
+    """
+    bonds, valuation = prepared.bonds, prepared.study.valuation_date
+    discount = np.log(start_discount(prepared.paths, bonds.last_month + 2)[:, 0])
+    months = np.arange(discount.size) / 12.0
+    rows = {r["security_id"]: r for r in plain_records(prepared.study.tables.securities)}
+    out = []
+    for u, name in enumerate(bonds.ids):
+        bond = dated(rows[name])
+        ahead = [(c.payment, c.amount) for c in bond.coupons if c.payment > valuation] + [(bond.maturity, 100.0)]
+        times = np.array([(day - valuation).days / DAYS_A_YEAR for day, _ in ahead])
+        amounts = np.array([amount for _, amount in ahead])
+        clean = float(prepared.calibrated.clean_price[u])
+        exact = spread_of(times, amounts, np.interp(times, months, discount), clean + accrued_interest(bond, valuation))
+        at = np.flatnonzero(bonds.flow[u])
+        mapped = spread_of(at / 12.0, bonds.flow[u, at], discount[at], clean + float(bonds.accrued[u, 0]))
+        out.append((name, 1e4 * exact, 1e4 * mapped, 1e4 * (mapped - exact)))
+    return pd.DataFrame(out, columns=["security_id", "exact_bp", "mapped_bp", "difference_bp"])

@@ -1,0 +1,93 @@
+"""Outputs appear whole or not at all: a folder built beside its place, synced, then renamed in."""
+
+from __future__ import annotations
+
+import hashlib
+import os
+import shutil
+import tempfile
+from collections.abc import Callable
+from pathlib import Path
+
+import pyarrow as pa
+import pyarrow.parquet as pq
+
+from projector.run.results import COLUMNS, RunResults
+
+STALE_PREFIX = ".unfinished-"
+
+
+def sync(path: Path) -> None:
+    """Asks the disk to keep what was written; a failure is fatal, since a retry may lie."""
+    handle = os.open(path, os.O_RDONLY)
+    try:
+        os.fsync(handle)
+    finally:
+        os.close(handle)
+
+
+def write_tables(results: RunResults, folder: Path) -> None:
+    """Every result table as Parquet, units and meanings in the schema."""
+    folder.mkdir()
+    for name, frame in results.tables().items():
+        write_table(name, frame, COLUMNS[name], folder / f"{name}.parquet")
+
+
+def write_table(name: str, frame: object, columns: dict[str, tuple[str, str]], path: Path) -> None:
+    """One table with its own schema: no library names or clocks in the metadata."""
+    table = pa.Table.from_pandas(frame, preserve_index=False).replace_schema_metadata({"table": name})
+    for i, field in enumerate(table.schema):
+        unit, meaning = columns.get(field.name, ("-", ""))
+        table = table.cast(table.schema.set(i, field.with_metadata({"unit": unit, "meaning": meaning})))
+    pq.write_table(table, path, compression="zstd", version="2.6", row_group_size=1_000_000)
+
+
+def file_digest(path: Path) -> str:
+    """SHA-256 of a file."""
+    return hashlib.sha256(path.read_bytes()).hexdigest()
+
+
+def remove_stale(parent: Path) -> None:
+    """Clears what a killed run left beside its place; a run still going keeps its own."""
+    for path in parent.glob(f"{STALE_PREFIX}*"):
+        owner = path.name.removeprefix(STALE_PREFIX).split("-")[0]
+        if not (owner.isdigit() and process_alive(int(owner))):
+            shutil.rmtree(path, ignore_errors=True)
+
+
+def process_alive(pid: int) -> bool:
+    """Whether a process of that number exists."""
+    if os.name != "posix":
+        return False
+    try:
+        os.kill(pid, 0)
+    except ProcessLookupError:
+        return False
+    except PermissionError:
+        return True
+    return True
+
+
+def publish(target: Path, build: Callable[[Path], None]) -> None:
+    """Builds a folder beside `target` and renames it in; an earlier folder of that name is replaced whole."""
+    parent = target.parent
+    parent.mkdir(parents=True, exist_ok=True)
+    remove_stale(parent)
+    fresh = Path(tempfile.mkdtemp(prefix=f"{STALE_PREFIX}{os.getpid()}-", dir=parent))
+    os.chmod(fresh, 0o755)
+    old = fresh.with_name(fresh.name + "-old")
+    try:
+        build(fresh)
+        for path in sorted(fresh.rglob("*")):
+            sync(path)
+        sync(fresh)
+        if target.exists():
+            os.rename(target, old)
+        os.rename(fresh, target)
+        sync(parent)
+    except BaseException:
+        shutil.rmtree(fresh, ignore_errors=True)
+        if old.exists() and not target.exists():
+            os.rename(old, target)
+        raise
+    shutil.rmtree(old, ignore_errors=True)

@@ -1,0 +1,121 @@
+"""Securities at the valuation date: price, spreads, rights, book yield and worst date."""
+
+from __future__ import annotations
+
+from datetime import date, timedelta
+from typing import Any
+
+import numpy as np
+import pandas as pd
+
+from projector.bonds.mapped import dated, plain_records
+from projector.bonds.worst import yield_to_worst
+from projector.bonds.yields import Redemption, bond_equivalent
+from projector.run.call_table import bond_equivalent_of_growth
+from projector.run.prepare import Prepared
+from projector.run.results import COLUMNS
+from projector.study.clock import month_end
+
+STATED = ("american", "bermudan", "european")
+
+
+def call_form(row: dict[str, Any], rights: list[dict[str, Any]]) -> str:
+    """Forms of right, joined; a make-whole security counts its par call with it."""
+    forms = [s for s in STATED if any(r["style"] == s for r in rights)]
+    if any(r["style"] == "make_whole" for r in rights):
+        forms.append("make_whole")
+    elif row["par_call_date"] is not None:
+        forms.append("american")
+    return "+".join(dict.fromkeys(forms)) or "none"
+
+
+def street_redemptions(row: dict[str, Any], rights: list[dict[str, Any]], settlement: date) -> list[Redemption]:
+    """First and last date of every price still ahead: with one price in between, one of the two is the worst."""
+    after = settlement + timedelta(days=1)
+    price: dict[date, float] = {}  # a row that starts on a day rules that day, so later rows overwrite
+    for r in rights:
+        if r["style"] != "make_whole" and r["last_date"] >= after:
+            price[max(r["first_date"], after)] = float(r["price"])
+            price[r["last_date"]] = float(r["price"])
+    if row["par_call_date"] is not None:
+        price[max(row["par_call_date"], after)] = 100.0
+        price[row["maturity_date"] - timedelta(days=1)] = 100.0
+    return [Redemption(day, k) for day, k in sorted(price.items()) if after <= day < row["maturity_date"]]
+
+
+def street_yield(row: dict[str, Any], rights: list[dict[str, Any]], settlement: date, price: float) -> float:
+    """Yield to worst at a clean price on exact dates, bond-equivalent. [1/year]; nan where no yield gives the price"""
+    bond = dated(row)
+    try:
+        found = yield_to_worst(bond, settlement, price, street_redemptions(row, rights, settlement), "street")
+    except ValueError:
+        return float("nan")
+    return bond_equivalent(found.annual_yield, bond.periods_a_year)
+
+
+def securities_frame(prepared: Prepared) -> pd.DataFrame:
+    """The securities table in the order of their identifiers."""
+    study, bonds, fitted = prepared.study, prepared.bonds, prepared.calibrated
+    rows = {r["security_id"]: r for r in plain_records(study.tables.securities)}
+    rights: dict[str, list[dict[str, Any]]] = {}
+    for r in plain_records(study.tables.call_rights):
+        rights.setdefault(r["security_id"], []).append(r)
+    sums = lot_sums(prepared)
+    out = []
+    for u, name in enumerate(bonds.ids):
+        row, mine = rows[name], rights.get(name, [])
+        live = np.flatnonzero(np.isfinite(bonds.clean_price[u]))
+        par = float(sums["par"][u])
+        clean = float(fitted.clean_price[u])
+        make_whole = [float(r["make_whole_spread_bp"]) for r in mine if r["style"] == "make_whole"]
+        out.append(
+            {
+                "security_id": name,
+                **{k: row[k] for k in ("issuer", "asset_class", "sector", "rating", "coupon_rate", "coupon_frequency")},
+                "maturity_date": row["maturity_date"].isoformat(),
+                "call_form": call_form(row, mine),
+                "first_call_date": first_date(row, mine, study.valuation_date) if live.size else "",
+                "next_call_price": float(bonds.clean_price[u, live[0]]) if live.size else np.nan,
+                "par": par,
+                "statement_value": float(sums["book"][u]),
+                "market_value": par * clean / 100.0,
+                "accrued": par * float(bonds.accrued[u, 0]) / 100.0,
+                "clean_price": clean,
+                "model_price": float(fitted.model_price[u]),
+                "valuation_spread_bp": float(fitted.spread[u]) * 1e4,
+                "class_spread_bp": float(prepared.solver.spreads.class_spread[u, 0]) * 1e4,
+                "refunding_spread_bp": float(prepared.solver.spreads.refunding[u, 0]) * 1e4,
+                "spread_from": fitted.origin[u],
+                "book_yield": float(sums["yield"][u]),
+                "worst_date": month_end(int(sums["worst"][u]), study.valuation_date).isoformat(),
+                "yield_to_worst": street_yield(row, mine, study.valuation_date, clean),
+                "make_whole_spread_bp": make_whole[0] if make_whole else np.nan,
+            }
+        )
+    frame = pd.DataFrame(out).sort_values("security_id").reset_index(drop=True)
+    return frame[list(COLUMNS["securities"])]
+
+
+def first_date(row: dict[str, Any], rights: list[dict[str, Any]], valuation: date) -> str:
+    """First date on which a right at a stated price can be used after the valuation date."""
+    starts = [
+        max(r["first_date"], valuation + timedelta(days=1))
+        for r in rights
+        if r["style"] != "make_whole" and r["last_date"] > valuation
+    ]
+    if row["par_call_date"] is not None:
+        starts.append(max(row["par_call_date"], valuation + timedelta(days=1)))
+    return min(starts).isoformat() if starts else ""
+
+
+def lot_sums(prepared: Prepared) -> dict[str, np.ndarray]:
+    """Par, statement value, and statement-weighted book yield and latest worst month over the lots of a security."""
+    lots, count = prepared.lots, len(prepared.bonds.ids)
+    par, book, weighted = np.zeros(count), np.zeros(count), np.zeros(count)
+    worst = np.zeros(count, dtype=np.int64)
+    np.add.at(par, lots.security, lots.par)
+    np.add.at(book, lots.security, lots.opening_book)
+    np.add.at(weighted, lots.security, lots.opening_book * bond_equivalent_of_growth(lots.growth_at_start))
+    np.maximum.at(worst, lots.security, lots.worst_at_start)
+    held = np.where(book > 0.0, book, 1.0)
+    return {"par": par, "book": book, "yield": weighted / held, "worst": worst}
