@@ -15,7 +15,7 @@ import typer
 
 app = typer.Typer(
     rich_markup_mode=None, pretty_exceptions_enable=False, add_completion=True, no_args_is_help=True,
-    help="Year-end asset adequacy: callable bonds against liability streams, under rate paths. Numbers, never an opinion.",
+    help="Year-end asset adequacy: callable bonds against liability streams, under rate paths. No opinion is given.",
 )  # fmt: skip
 
 Folder = Annotated[Path, typer.Argument(help="study folder, with study.toml in it")]
@@ -53,7 +53,7 @@ def check(
 def run(
     folder: Folder,
     out: Annotated[Path | None, typer.Option(help="folder for the results (default: reports/<study>-<digest>)")] = None,
-    threads: Annotated[int, typer.Option(min=0, max=256, help="threads, 0 = all processors; results do not depend on it")] = 0,
+    threads: Annotated[int, typer.Option(min=0, max=256, help="threads, 0 = all; results do not depend on it")] = 0,
     block: Annotated[int, typer.Option(min=0, help="paths a block, 0 = the study's; results do not depend on it")] = 0,
     report: Annotated[bool, typer.Option(help="write the HTML report and the workbook")] = True,
 ) -> None:
@@ -149,7 +149,8 @@ def main() -> None:
         print("stopped; nothing was written", file=sys.stderr)
         sys.exit(130)
     except OSError as fault:
-        print(f"E190 {fault.filename or 'output'}: {fault.strerror or fault}; nothing was left half-written.", file=sys.stderr)
+        named = f"E190 {fault.filename or 'output'}: {fault.strerror or fault}"
+        print(f"{named}; nothing was left half-written.", file=sys.stderr)
         sys.exit(2)
     except Exception as fault:
         import traceback
@@ -157,7 +158,7 @@ def main() -> None:
         frame = traceback.extract_tb(fault.__traceback__)[-1]
         place = f"{Path(frame.filename).name}, line {frame.lineno}"
         print(f"E900 the program itself failed ({type(fault).__name__} at {place}: {fault}).", file=sys.stderr)
-        print("Please report this sentence with the version; it holds no policy data beyond what it says.", file=sys.stderr)
+        print("Please report this sentence with the version; it holds no data beyond what it says.", file=sys.stderr)
         sys.exit(1)
 
 

@@ -8,7 +8,7 @@ from __future__ import annotations
 
 import bisect
 import random
-from dataclasses import dataclass, field, replace
+from dataclasses import dataclass, field
 from datetime import date, timedelta
 from typing import Any
 
@@ -70,9 +70,16 @@ SECTOR_WORDS = {
 }
 BUSINESS_SECTORS = tuple(name for name in SECTOR_WORDS if name not in ("government", "utilities"))
 IG_CORPORATE = {"AA": 10, "A+": 12, "A": 18, "A-": 18, "BBB+": 20, "BBB": 18, "BBB-": 6}
-EVEN_YEARS = {y: 6.0 for y in range(2008, 2023)} | {2012: 4.0, 2018: 10.0, 2019: 7.0, 2020: 3.0, 2021: 5.0, 2022: 12.0}
+EVEN_YEARS = dict.fromkeys(range(2008, 2023), 6.0) | {
+    2012: 4.0,
+    2018: 10.0,
+    2019: 7.0,
+    2020: 3.0,
+    2021: 5.0,
+    2022: 12.0,
+}
 AGENCY_YEARS = EVEN_YEARS | {2018: 9.0, 2020: 6.0, 2021: 7.0, 2022: 9.0}
-TIGHT_YEARS = {y: 6.0 for y in range(2012, 2023)} | {2018: 4.0, 2021: 8.0, 2022: 5.0}
+TIGHT_YEARS = dict.fromkeys(range(2012, 2023), 6.0) | {2018: 4.0, 2021: 8.0, 2022: 5.0}
 UTILITY_YEARS = EVEN_YEARS | {2008: 5.0, 2009: 5.0, 2012: 6.0, 2022: 7.0}
 
 
@@ -98,23 +105,37 @@ class Recipe:
 DA, PO, GI = "deferred_annuities", "payout", "guaranteed_interest"
 GOVERNMENT, UTILITIES = ("government",), ("utilities",)
 RECIPES = (
-    Recipe("AGY", "agency", 5, DA, {"AAA": 1}, "european", (2, 9), (5, 7, 10, 15), (4, 7), GOVERNMENT, AGENCY_YEARS, extra_bp=30),
-    Recipe("AGY", "agency", 5, DA, {"AAA": 1}, "bermudan", (2, 10), (7, 10, 15, 20), (4, 7), GOVERNMENT, AGENCY_YEARS, extra_bp=40),
-    Recipe("AGY", "agency", 4, DA, {"AAA": 1}, "american", (3, 10), (7, 10, 15, 20), (4, 7), GOVERNMENT, AGENCY_YEARS, extra_bp=45),
-    Recipe("AGY", "agency", 4, GI, {"AAA": 1}, "european", (1.4, 5), (5, 7), (3, 5), GOVERNMENT, AGENCY_YEARS, extra_bp=25),
+    Recipe("AGY", "agency", 5, DA, {"AAA": 1}, "european",
+           (2, 9), (5, 7, 10, 15), (4, 7), GOVERNMENT, AGENCY_YEARS, extra_bp=30),
+    Recipe("AGY", "agency", 5, DA, {"AAA": 1}, "bermudan",
+           (2, 10), (7, 10, 15, 20), (4, 7), GOVERNMENT, AGENCY_YEARS, extra_bp=40),
+    Recipe("AGY", "agency", 4, DA, {"AAA": 1}, "american",
+           (3, 10), (7, 10, 15, 20), (4, 7), GOVERNMENT, AGENCY_YEARS, extra_bp=45),
+    Recipe("AGY", "agency", 4, GI, {"AAA": 1}, "european",
+           (1.4, 5), (5, 7), (3, 5), GOVERNMENT, AGENCY_YEARS, extra_bp=25),
     Recipe("AGZ", "agency", 4, PO, {"AAA": 1}, "zero", (12, 26), (20, 25, 30), (9, 16), GOVERNMENT),
-    Recipe("MUN", "municipal", 5, DA, {"AA": 3, "A+": 2}, "american_late", (4, 14), (15, 20, 25), (3, 5), GOVERNMENT, UTILITY_YEARS, extra_bp=25),
-    Recipe("MUN", "municipal", 4, PO, {"AA": 3, "A+": 2}, "american_late", (6, 18), (15, 20, 25, 30), (3, 5), GOVERNMENT, UTILITY_YEARS, extra_bp=25),
-    Recipe("UTL", "utility", 10, DA, {"A": 2, "A-": 4, "BBB+": 4}, "declining", (3, 13), (15, 20, 25, 30), (4, 7), UTILITIES, UTILITY_YEARS, extra_bp=30),
-    Recipe("UTL", "utility", 6, PO, {"A": 2, "A-": 4, "BBB+": 4}, "declining", (8, 23), (20, 25, 30), (4, 7), UTILITIES, UTILITY_YEARS, extra_bp=30),
-    Recipe("UTL", "utility", 10, DA, {"A": 3, "A-": 4, "BBB+": 3}, "make_whole", (1.4, 11), (10, 15, 20), (3, 7), UTILITIES),
-    Recipe("UTL", "utility", 10, PO, {"A": 3, "A-": 4, "BBB+": 3}, "make_whole", (3, 23), (15, 20, 25, 30), (4, 8), UTILITIES, lean=1.2),
-    Recipe("PRV", "private", 11, DA, {"A-": 2, "BBB+": 4, "BBB": 5, "BBB-": 1}, "private", (2, 10), (7, 10, 12, 15), (4, 7), years=TIGHT_YEARS, extra_bp=25),
-    Recipe("PRV", "private", 8, PO, {"A-": 3, "BBB+": 4, "BBB": 3}, "make_whole_life", (2, 18), (10, 15, 20, 25), (4, 7), extra_bp=35),
+    Recipe("MUN", "municipal", 5, DA, {"AA": 3, "A+": 2}, "american_late",
+           (4, 14), (15, 20, 25), (3, 5), GOVERNMENT, UTILITY_YEARS, extra_bp=25),
+    Recipe("MUN", "municipal", 4, PO, {"AA": 3, "A+": 2}, "american_late",
+           (6, 18), (15, 20, 25, 30), (3, 5), GOVERNMENT, UTILITY_YEARS, extra_bp=25),
+    Recipe("UTL", "utility", 10, DA, {"A": 2, "A-": 4, "BBB+": 4}, "declining",
+           (3, 13), (15, 20, 25, 30), (4, 7), UTILITIES, UTILITY_YEARS, extra_bp=30),
+    Recipe("UTL", "utility", 6, PO, {"A": 2, "A-": 4, "BBB+": 4}, "declining",
+           (8, 23), (20, 25, 30), (4, 7), UTILITIES, UTILITY_YEARS, extra_bp=30),
+    Recipe("UTL", "utility", 10, DA, {"A": 3, "A-": 4, "BBB+": 3}, "make_whole",
+           (1.4, 11), (10, 15, 20), (3, 7), UTILITIES),
+    Recipe("UTL", "utility", 10, PO, {"A": 3, "A-": 4, "BBB+": 3}, "make_whole",
+           (3, 23), (15, 20, 25, 30), (4, 8), UTILITIES, lean=1.2),
+    Recipe("PRV", "private", 11, DA, {"A-": 2, "BBB+": 4, "BBB": 5, "BBB-": 1}, "private",
+           (2, 10), (7, 10, 12, 15), (4, 7), years=TIGHT_YEARS, extra_bp=25),
+    Recipe("PRV", "private", 8, PO, {"A-": 3, "BBB+": 4, "BBB": 3}, "make_whole_life",
+           (2, 18), (10, 15, 20, 25), (4, 7), extra_bp=35),
     Recipe("PRV", "private", 4, GI, {"A-": 3, "BBB+": 4}, "make_whole_life", (1, 6), (5, 7, 10), (3, 5), extra_bp=35),
-    Recipe("HYD", "high_yield", 15, DA, {"BB+": 6, "BB": 5}, "high_yield", (2.4, 8), (7, 8, 10), (2.2, 4), extra_bp=25,
+    Recipe("HYD", "high_yield", 15, DA, {"BB+": 6, "BB": 5}, "high_yield",
+           (2.4, 8), (7, 8, 10), (2.2, 4), extra_bp=25,
            years={2014: 4, 2015: 5, 2016: 6, 2017: 6, 2018: 7, 2019: 8, 2020: 4, 2021: 9, 2022: 8}),
-    Recipe("CRP", "corporate", 60, DA, IG_CORPORATE, "make_whole", (0.4, 10), (3, 5, 7, 10, 12, 15), (3, 8), lean=1.25),
+    Recipe("CRP", "corporate", 60, DA, IG_CORPORATE, "make_whole",
+           (0.4, 10), (3, 5, 7, 10, 12, 15), (3, 8), lean=1.25),
     Recipe("CRP", "corporate", 9, DA, IG_CORPORATE, "none", (0.4, 5), (3, 5, 7, 10), (3, 6)),
     Recipe("CRP", "corporate", 40, PO, IG_CORPORATE, "make_whole", (0.4, 22), (10, 15, 20, 25, 30), (3, 8), lean=1.3),
     Recipe("CRP", "corporate", 36, GI, IG_CORPORATE, "make_whole", (0.4, 6.5), (3, 5, 7, 10), (3, 8), lean=1.15),
@@ -229,7 +250,11 @@ def issue_and_maturity(rng: random.Random, recipe: Recipe, place: float) -> tupl
     month = first + int(rng.random() * ((12 if year == 2022 else 13) - first))
     month = 3 if month == 2 else month  # no 29th of February to explain
     month_end = rng.random() < 0.18
-    day = later(date(year, month, 1), 1, False) - timedelta(days=1) if month_end else date(year, month, pick(rng, {1: 3, 15: 6, 20: 1}))
+    day = (
+        later(date(year, month, 1), 1, False) - timedelta(days=1)
+        if month_end
+        else date(year, month, pick(rng, {1: 3, 15: 6, 20: 1}))
+    )
     return day, later(day, 12 * term, month_end), month_end
 
 
@@ -260,6 +285,7 @@ class Issuers:
 
     def __init__(self, rng: random.Random) -> None:
         self.rng, self.used = rng, 0
+        self.given: set[str] = set()
         self.known: dict[tuple[str, str, str], list[str]] = {}
 
     def name(self, asset_class: str, sector: str, rating: str) -> str:
@@ -269,7 +295,12 @@ class Issuers:
         words = SECTOR_WORDS[sector]
         if sector == "government":  # the first three are agencies, the others districts that tax or charge tolls
             words = words[:3] if asset_class == "agency" else words[3:]
-        first, turn = FIRST_WORDS[(self.used * 7) % len(FIRST_WORDS)], self.used // len(FIRST_WORDS)
-        self.used += 1
-        mine.append(f"{first} {words[turn % len(words)]}")
+        while True:
+            first, turn = FIRST_WORDS[(self.used * 7) % len(FIRST_WORDS)], self.used // len(FIRST_WORDS)
+            self.used += 1
+            found = f"{first} {words[turn % len(words)]}"
+            if found not in self.given:
+                break
+        self.given.add(found)
+        mine.append(found)
         return mine[-1]

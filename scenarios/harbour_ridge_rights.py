@@ -30,12 +30,12 @@ from harbour_ridge_assets import (
 DAY = timedelta(days=1)
 
 
-def staircase(
-    dates: list[date], prices: list[float], last: date, style: str
-) -> tuple[Right, ...]:
+def staircase(dates: list[date], prices: list[float], last: date, style: str) -> tuple[Right, ...]:
     """Rows that follow each other without a gap: price i from date i to the day before date i + 1."""
     ends = [d - DAY for d in dates[1:]] + [last]
-    return tuple(Right(first, end, style, round(price, 3)) for first, end, price in zip(dates, ends, prices) if first <= end)
+    return tuple(
+        Right(first, end, style, round(price, 3)) for first, end, price in zip(dates, ends, prices) if first <= end
+    )
 
 
 def yearly(start: date, first_price: float, step: float, last: date, style: str, month_end: bool) -> tuple[Right, ...]:
@@ -114,7 +114,7 @@ def with_make_whole(bond: Bond, term: int) -> Bond:
 
 def make_bond(rng: random.Random, issuers: Issuers, recipe: Recipe, name: str, place: float) -> Bond:
     """One security. Price noise is at most a tenth of the class spread."""
-    rating, sector = pick(rng, recipe.ratings), pick(rng, {s: 1.0 for s in recipe.sectors})
+    rating, sector = pick(rng, recipe.ratings), pick(rng, dict.fromkeys(recipe.sectors, 1.0))
     issue, maturity, month_end = issue_and_maturity(rng, recipe, place)
     frequency, day_count = frequency_and_count(rng, recipe)
     term = maturity.year - issue.year
@@ -142,7 +142,11 @@ def make_bond(rng: random.Random, issuers: Issuers, recipe: Recipe, name: str, p
 
 def odd_first_coupons(bonds: list[Bond]) -> list[Bond]:
     """The two latest half-yearly corporate issues get a first coupon that is still ahead: one long, one short."""
-    fit = [b for b in bonds if b.recipe.asset_class == "corporate" and b.frequency == 2 and not b.month_end and b.issue.year == 2022]
+    fit = [
+        b
+        for b in bonds
+        if b.recipe.asset_class == "corporate" and b.frequency == 2 and not b.month_end and b.issue.year == 2022
+    ]
     fit = sorted(fit, key=lambda b: (b.issue, b.name))[-2:]
     changed = {}
     for bond, days in zip(fit, (-24, 40)):  # issued before or after the regular date of a first coupon still ahead
@@ -157,8 +161,17 @@ def odd_first_coupons(bonds: list[Bond]) -> list[Bond]:
 
 def crisis_make_whole(bonds: list[Bond]) -> list[Bond]:
     """Three high-grade bonds keep a make-whole spread written in a crisis, above their spread of today."""
-    fit = [b for b in bonds if b.recipe.form == "make_whole" and b.rating in ("AA", "A+") and b.issue.year in (2008, 2009, 2020)]
-    names = {b.name for b in sorted(fit, key=lambda b: (class_spread_bp(b.rating, life_years(b.maturity)), b.name))[:BELOW_MAKE_WHOLE]}
+    fit = [
+        b
+        for b in bonds
+        if b.recipe.form == "make_whole" and b.rating in ("AA", "A+") and b.issue.year in (2008, 2009, 2020)
+    ]
+    names = {
+        b.name
+        for b in sorted(fit, key=lambda b: (class_spread_bp(b.rating, life_years(b.maturity)), b.name))[
+            :BELOW_MAKE_WHOLE
+        ]
+    }
     out = []
     for bond in bonds:
         if bond.name in names:
@@ -219,7 +232,7 @@ def carried(bond: Bond, bought: date, price: float) -> float:
         rate = yield_of(price, bond.coupon, redemption, years_between(bought, end))
         values.append(value_at(rate, bond.coupon, redemption, years_between(VALUATION, end)))
     in_force = [r.price for r in bond.rights if r.price is not None and r.first <= VALUATION <= r.last]
-    return min(values + [p for p in in_force])
+    return min(values + in_force)
 
 
 def purchase(rng: random.Random, bond: Bond) -> tuple[date, float]:

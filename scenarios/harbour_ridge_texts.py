@@ -8,7 +8,7 @@ SEGMENTS = {
     "guaranteed_interest": "Guaranteed interest contracts",
 }
 
-HEAD = '''# Demo study. The insurer, its people, its holdings and its business are invented; only the starting curve is published.
+HEAD = """# Demo study. Insurer, people, holdings and business are invented; only the starting curve is published.
 # Written by scenarios/make_harbour_ridge_2022.py: change the script, not this file.
 
 [study]
@@ -30,15 +30,16 @@ class_spreads = "class_spreads.csv"
 default_costs = "default_costs.csv"
 liability_streams = "liability_streams.parquet"
 control_totals = "control_totals.csv"
-'''
+"""
 
-MODEL = '''
+MODEL = """
 [call_model]
 rule = "optimal_with_cost"
 mean_reversion = 0.03
 normal_volatility = 0.0100
 issuer_cost_share_of_par = 0.005
-source = "Invented for the demo; the volatility is of the order of normal swaption volatilities at the end of 2022 (from memory)"
+source = "Invented for the demo; \
+the volatility is of the order of normal swaption volatilities at the end of 2022 (from memory)"
 as_of = 2022-12-30
 rationale = "One volatility for every issuer; the cost stands for fees and the effort of a refunding"
 
@@ -47,7 +48,8 @@ refunding = "class_plus_concession"
 concession_bp = 10
 residual_fade_years = 0
 no_root_fallback = "rating_spread"
-source = "Invented for the demo; class_spreads.csv is of the order of United States corporate spreads at the end of 2022 (from memory)"
+source = "Invented for the demo; \
+class_spreads.csv is of the order of United States corporate spreads at the end of 2022 (from memory)"
 as_of = 2022-12-30
 rationale = "An issuer refunds at what its class pays, plus a new-issue concession"
 
@@ -115,7 +117,8 @@ asset_valuation_reserve = 0
 rate = 0
 
 [criterion]
-sentence = "Statement surplus, all segments together, is not negative at any year end of the forty years in any of the seven scenarios."
+sentence = "Statement surplus, all segments together, \
+is not negative at any year end of the forty years in any of the seven scenarios."
 fixed_on = 2023-01-20
 measure = "statement_surplus"
 dates = "every_year_end"
@@ -128,7 +131,7 @@ asset_close_out = "market_value"
 liability_close_out = "statutory_reserve"
 source = "Choice of the invented actuary"
 as_of = 2022-12-31
-rationale = "After forty years less than one per cent of today's reserves is left"
+rationale = "After forty years one to three per cent of today's reserves is left, by scenario"
 
 [discounting]
 npv_constant_bp = 0
@@ -138,7 +141,8 @@ rationale = "Gaps are read at the path's own one-month rates"
 
 [rates]
 rate_basis = "par"
-source = "United States Department of the Treasury, Daily Treasury Par Yield Curve Rates, 2022-12-30; the seven deterministic paths of the asset adequacy regulations"
+source = "United States Department of the Treasury, Daily Treasury Par Yield Curve Rates, 2022-12-30; \
+the seven deterministic paths of the asset adequacy regulations"
 as_of = 2022-12-30
 rationale = "Last business day before the valuation date"
 [[rates.paths]]
@@ -161,11 +165,13 @@ reliances = [
     "Policy data and liability streams: Tamsin Orrery (invented), valuation systems.",
 ]
 notes = [
-    "The insurer, its people, its holdings and its liabilities are invented; figures must not be used for any other purpose.",
+    "The insurer, its people, its holdings and its liabilities are invented; \
+figures must not be used for any other purpose.",
     "The Treasury levels from which coupons were built are approximate year averages from memory.",
 ]
+law_and_manual = "11 NYCRR 95 and section 30 of the Valuation Manual (VM-30), as far as a demo needs them."
 materiality = "One million dollars, a little under 0.1 % of reserves (invented)."
-'''
+"""
 
 WITHOUT_DIGEST = 'scenario_set_digest = "{digest}"\n'
 

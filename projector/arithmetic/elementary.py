@@ -12,9 +12,8 @@ from __future__ import annotations
 import math
 
 import numpy as np
-import numpy.typing as npt
 
-from projector.arithmetic.kernels import kernel
+from projector.arithmetic.kernels import Floats, kernel
 
 LOG2_E = 1.4426950408889634
 LN2_HIGH = 6.93147180369123816490e-01  # its last 32 bits are zero, so n * LN2_HIGH is exact
@@ -87,13 +86,13 @@ def log_one(x: float) -> float:
 
 
 @kernel
-def exp_into(x, out):
+def exp_into(x: Floats, out: Floats) -> None:
     """e^x for every element of a flat array, into `out`."""
     for i in range(x.shape[0]):
         out[i] = exp_one(x[i])
 
 
-def exp_array(x: npt.NDArray[np.float64]) -> npt.NDArray[np.float64]:
+def exp_array(x: Floats) -> Floats:
     """e^x [-] for an array of any shape, with the bits of `exp_one`."""
     flat = np.ascontiguousarray(x, dtype=np.float64).ravel()
     out = np.empty_like(flat)

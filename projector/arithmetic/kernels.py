@@ -64,7 +64,7 @@ def choose_cache() -> bool:
         return usable(Path(os.environ["NUMBA_CACHE_DIR"]))
     if not usable(folder):
         return False
-    numba.config.CACHE_DIR = str(folder)
+    setattr(numba.config, "CACHE_DIR", str(folder))  # noqa: B010 (the attribute exists only at run time)
     return True
 
 

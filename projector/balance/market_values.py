@@ -57,7 +57,7 @@ class GroupValues:
         bonds = self.solver.bonds
         out = np.zeros((self.holdings.groups.count, discount.shape[1]))
         alive = bonds.maturity[self.holdings.security] > month
-        rows = np.flatnonzero(alive & wanted.any(axis=1)[self.holdings.segment])
+        rows = np.flatnonzero(alive & np.asarray(wanted.any(axis=1))[self.holdings.segment])
         if rows.size == 0:
             return out
         units, at = np.unique(self.holdings.security[rows], return_inverse=True)

@@ -104,9 +104,7 @@ def sale_share(need: Array, value: Array) -> Array:
     return np.where((need > 0.0) & (value > 0.0), np.minimum(ratio, 1.0), 0.0)
 
 
-def opening_state(
-    cash: Array, items: Array, segment: IntArray, mix: Mix, months: int, lag: int
-) -> State:
+def opening_state(cash: Array, items: Array, segment: IntArray, mix: Mix, months: int, lag: int) -> State:
     """Balances at the valuation date: the ledger's cash and statement values, nothing bought, nothing owed."""
     segments, paths = cash.size, items.shape[3]
     held = np.ones((items.shape[2], paths))
@@ -136,7 +134,7 @@ def month_step(
     market         short rate over the month; next_discount is P(tau) of month m itself
     liability      net liability flow into the company, all blocks of the segment [segment, path]
     """
-    segments, paths = state.cash.shape
+    segments = state.cash.shape[0]
 
     def of(which: int) -> Array:
         return segment_sum(items[which], state.held, segment, segments)
@@ -149,9 +147,7 @@ def month_step(
     state.due_start[m + strategy.recovery_lag] += start["recoverable"]
     state.due_bought[m + strategy.recovery_lag] += bought.recoverable
     recovered_start, recovered_bought = state.due_start[m], state.due_bought[m]
-    state.receivable = (
-        state.receivable + start["recoverable"] + bought.recoverable - recovered_start - recovered_bought
-    )
+    state.receivable = state.receivable + start["recoverable"] + bought.recoverable - recovered_start - recovered_bought
     expense = opening_book * strategy.expense
     rate = market.short_rate + strategy.borrowing_spread
     borrowing_interest, shortfall_interest = state.borrowing * rate, state.shortfall * rate
@@ -264,9 +260,7 @@ class Sale:
     bought: Array
 
 
-def sell(
-    state: State, m: int, need: Array, segment: IntArray, mix: Mix, discount: Array, values: GroupValues
-) -> Sale:
+def sell(state: State, m: int, need: Array, segment: IntArray, mix: Mix, discount: Array, values: GroupValues) -> Sale:
     """Sells one share of every unit of the segment at exact market value; paths without need keep their bits."""
     zero = np.zeros(need.shape)
     wanted = need > 0.0

@@ -52,7 +52,9 @@ def growth_to(start: int, end: int, redemption: float, flow: Floats, value: floa
 
 
 @kernel
-def worst_date(start: int, maturity: int, price: Floats, accrued: Floats, flow: Floats, value: float):  # type: ignore[no-untyped-def]
+def worst_date(
+    start: int, maturity: int, price: Floats, accrued: Floats, flow: Floats, value: float
+) -> tuple[int, float]:
     """Month with the lowest yield among rights after `start` and maturity, and its monthly growth factor.
 
     flow   coupons; price  clean call prices (inf = no right); value  dirty value at `start` [per 100]

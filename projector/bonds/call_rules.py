@@ -27,7 +27,9 @@ class Opportunity:
 class CallRule(Protocol):
     """One verb: the share called."""
 
-    name: str
+    @property
+    def name(self) -> str:
+        """The rule's name in the study."""
 
     def share_called(self, opportunity: Opportunity) -> Array:
         """Share of the par outstanding called, in [0, 1], shape of the opportunity."""

@@ -11,6 +11,7 @@ from __future__ import annotations
 import hashlib
 from collections.abc import Callable
 from dataclasses import dataclass, field
+from typing import Any
 
 import numpy as np
 import numpy.typing as npt
@@ -56,15 +57,21 @@ class CallEvents:
 class DecisionRows:
     """Rows of decisions of deterministic paths, gathered month by month; null continuation where a bound settled it."""
 
-    parts: list[tuple[Array, ...]] = field(default_factory=list)
+    parts: list[tuple[npt.NDArray[Any], ...]] = field(default_factory=list)
 
     def add(
-        self, month: int, units: IntArray, looked: BoolArray, bound: Array, cost: Array, bar: Array, by: Array, share: Array
+        self,
+        month: int,
+        units: IntArray,
+        looked: BoolArray,
+        bound: Array,
+        cost: Array,
+        bar: Array,
+        by: npt.NDArray[np.int8],
+        share: Array,
     ) -> None:
         n, p = np.nonzero(looked)
-        self.parts.append(
-            (units[n], p, np.full(n.size, month), bound[n, p], cost[n, p], bar[n], by[n, p], share[n, p])
-        )
+        self.parts.append((units[n], p, np.full(n.size, month), bound[n, p], cost[n, p], bar[n], by[n, p], share[n, p]))
 
     def frame(self) -> pd.DataFrame:
         """security index, path index, month, upper_bound, continuation, bar, decided_by, share"""
@@ -109,13 +116,14 @@ class DecisionPass:
         bar = bonds.dirty_price[units, month] + cost
         bound = self.solver.bounds(month, step, units, discount, alive)
         continuation = np.full(bound.shape, np.nan)
-        by = np.zeros(bound.shape, dtype=np.int8)
+        by: npt.NDArray[np.int8] = np.zeros(bound.shape, dtype=np.int8)
         n, p = np.nonzero(bound >= bar[:, None])
         if n.size:
             continuation[n, p], by[n, p] = self.continuations(month, step, units[n], p, bar[n], discount)
         # where the bound lies under the bar the cost of going on does too: the rule may be told the bound instead
         told = np.where(np.isnan(continuation), bound, continuation)
-        share = np.where(alive, self.rule.share_called(Opportunity(month, told, np.broadcast_to(bar[:, None], told.shape))), 0.0)
+        opportunity = Opportunity(month, told, np.broadcast_to(bar[:, None], told.shape))
+        share = np.where(alive, self.rule.share_called(opportunity), 0.0)
         if rows is not None:
             rows.add(month, units, alive, bound, continuation, bar, by, share)
         return share

@@ -50,7 +50,7 @@ class MappedBonds:
 
     def with_rights(self) -> npt.NDArray[np.bool_]:
         """Which securities have any right at a stated price after the valuation date."""
-        return np.isfinite(self.clean_price).any(axis=1)
+        return np.asarray(np.isfinite(self.clean_price).any(axis=1))
 
 
 def dated(row: dict[str, Any]) -> DatedBond:
@@ -71,7 +71,8 @@ def plain_records(table: pd.DataFrame) -> list[dict[str, Any]]:
     out = table.copy()
     for name in table.columns:
         if pd.api.types.is_datetime64_any_dtype(table[name]):
-            out[name] = pd.Series([None if pd.isna(d) else d.date() for d in table[name]], index=out.index, dtype=object)
+            days = [None if pd.isna(d) else d.date() for d in table[name]]
+            out[name] = pd.Series(days, index=out.index, dtype=object)
     return [{str(k): v for k, v in record.items()} for record in out.to_dict("records")]
 
 
@@ -116,13 +117,14 @@ def right_months(right: dict[str, Any], row: dict[str, Any], valuation: date) ->
             return []
         period = 12 // frequency
         months = range(maturity % period or period, stop + 1, period)
-        eom = bool(row["end_of_month"])
-        return [m for m in months if m >= start and first <= months_before(row["maturity_date"], maturity - m, month_end=eom) <= last]
+        eom, end = bool(row["end_of_month"]), row["maturity_date"]
+        dates = {m: months_before(end, maturity - m, month_end=eom) for m in months if m >= start}
+        return [m for m, day in dates.items() if first <= day <= last]
     return [start] if start <= stop and month_of(first, valuation) >= 1 else []
 
 
 def rights(row: dict[str, Any], schedule: list[dict[str, Any]], valuation: date, price: Array) -> None:
-    """Fills one security's clean call prices by month; of two rows on one month the later start, then the lower price."""
+    """Fills one security's clean call prices by month; of two rows in a month the later start, then the lower price."""
     begun: dict[int, date] = {}
     for right in schedule:
         if right["style"] == "make_whole":

@@ -72,9 +72,7 @@ class MonthSolver:
         if self.model.normal_volatility == 0.0:
             return self.deterministic(jobs, discount, refunding, held)
         steps = int((self.bonds.maturity[jobs.units].max() - month - jobs.offset) // jobs.step + 1)
-        op = operator_for(
-            self.model.mean_reversion, self.model.normal_volatility, jobs.step, jobs.offset, steps, grid
-        )
+        op = operator_for(self.model.mean_reversion, self.model.normal_volatility, jobs.step, jobs.offset, steps, grid)
         issuer, holder = np.empty(jobs.units.size), np.empty(jobs.units.size)
         run_jobs(
             *operator_arguments(op), month, jobs.offset, jobs.step, jobs.units, jobs.paths, self.bonds.maturity,
@@ -89,15 +87,15 @@ class MonthSolver:
             tau = np.arange(1, int(self.bonds.maturity[u]) - jobs.month + 1)
             months = jobs.month + tau
             flow, price = self.bonds.flow[u, months], self.bonds.dirty_price[u, months]
-            costs, values = [], []
+            stops: list[Array] = []
             for spread, bar in ((refunding[j], price + self.model.cost), (held[j], price)):
                 d = discount[tau, p] * exp_array(-spread * tau / 12.0)
                 paid = np.cumsum(flow * d)
                 stop = paid + bar * d
                 stop[-1] = paid[-1]
-                (costs if not costs else values).append(stop)
-            k = costs[0].size - 1 - int(np.argmin(costs[0][::-1]))
-            issuer[j], holder[j] = costs[0][k], values[0][k]
+                stops.append(stop)
+            k = stops[0].size - 1 - int(np.argmin(stops[0][::-1]))
+            issuer[j], holder[j] = stops[0][k], stops[1][k]
         return issuer, holder
 
     def bounds(self, month: int, step: int, units: IntArray, discount: Array, alive: BoolArray) -> Array:
@@ -116,7 +114,7 @@ class MonthSolver:
         Securities with a right left are solved on their own dates, the rest discounted.
         """
         out = np.zeros((units.size, discount.shape[1]))
-        later = np.isfinite(self.bonds.clean_price[:, month + 1 :]).any(axis=1)[units]
+        later = np.asarray(np.isfinite(self.bonds.clean_price[units, month + 1 :]).any(axis=1))
         self.add_straight(month, units, np.flatnonzero(~later), discount, wanted, out)
         step = self.bonds.step[units]
         offset = (self.bonds.maturity[units] - month - 1) % step + 1

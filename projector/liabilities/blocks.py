@@ -51,8 +51,11 @@ class MonthOutcome:
 class LiabilityBlock(Protocol):
     """One block of business in one segment."""
 
-    name: str
-    segment: str
+    @property
+    def name(self) -> str: ...
+
+    @property
+    def segment(self) -> str: ...
 
     def open(self, path_lo: int, path_hi: int) -> tuple[Any, MonthOutcome]:
         """State and balances at the valuation date, for some paths."""

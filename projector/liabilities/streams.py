@@ -56,7 +56,7 @@ class SuppliedStream:
 
 
 def build_streams(table: pd.DataFrame, scenario_ids: tuple[str, ...], months: int) -> tuple[SuppliedStream, ...]:
-    """Every block of the table, in the order (segment, block). The door has checked that nothing is missing or twice."""
+    """Every block of the table, in the order (segment, block). The door has checked that each is there once."""
     blocks = []
     for (segment, block), part in table.groupby(["segment", "block"], sort=True):
         insensitive = bool((part["scenario"] == EVERY_PATH).all())
@@ -80,9 +80,7 @@ def build_streams(table: pd.DataFrame, scenario_ids: tuple[str, ...], months: in
     return tuple(blocks)
 
 
-def digest_errors(
-    stated: str | None, actual: str, sensitive_blocks: tuple[str, ...], file: str
-) -> list[LocatedError]:
+def digest_errors(stated: str | None, actual: str, sensitive_blocks: tuple[str, ...], file: str) -> list[LocatedError]:
     """The streams must have been made on the very paths of this run."""
     if not sensitive_blocks or stated == actual:
         return []

@@ -5,11 +5,11 @@ from __future__ import annotations
 import numpy as np
 
 from projector.arithmetic.elementary import exp_one, log_one
-from projector.arithmetic.kernels import kernel
+from projector.arithmetic.kernels import Floats, Integers, kernel
 
 
 @kernel
-def monotone_slopes(x, y, slope):
+def monotone_slopes(x: Floats, y: Floats, slope: Floats) -> None:
     """Fritsch-Carlson slopes with harmonic means at interior knots and one-sided three-point ends.
 
     Source: Fritsch and Butland, A method for constructing local monotone piecewise cubic interpolants, SIAM J. Sci.
@@ -48,7 +48,7 @@ def monotone_slopes(x, y, slope):
 
 
 @kernel
-def half_year_yields(x, y, slope, linear, out):
+def half_year_yields(x: Floats, y: Floats, slope: Floats, linear: bool, out: Floats) -> None:
     """Yields at 0.5, 1.0, ... years from the knots (x in years); flat outside the knots."""
     n = x.shape[0]
     i = 0
@@ -77,7 +77,10 @@ def half_year_yields(x, y, slope, linear, out):
 
 
 @kernel
-def log_discounts(yields, short_from, knot_years, knot_from, par_basis, linear, quoted_half_years, out):
+def log_discounts(
+    yields: Floats, short_from: Integers, knot_years: Floats, knot_from: Integers, par_basis: bool, linear: bool,
+    quoted_half_years: int, out: Floats,
+) -> None:  # fmt: skip
     """ln P at the curve nodes 1, 3, 6, 12, 18, ..., 360 months for every month and path.
 
     yields             [month, tenor, path] quoted yields [1/year]
@@ -120,7 +123,7 @@ def log_discounts(yields, short_from, knot_years, knot_from, par_basis, linear, 
 
 
 @kernel
-def discounts_by_month(log_discount, node_months, out):
+def discounts_by_month(log_discount: Floats, node_months: Integers, out: Floats) -> None:
     """P(tau) for tau = 0..last month from one month's node values: an exponential per node and per node ratio,
     multiplications between, restarted at each node; flat forward beyond the last node.
 

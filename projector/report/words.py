@@ -69,9 +69,9 @@ def title_result(endings: Sequence[float], lows: Sequence[float], measure: str, 
     dipped = sum(money.is_negative(value) for value in lows)
     total = len(endings)
     if ended:
-        return f"{measure} ends below zero in {fixed(ended)} of {count_of(total, 'scenario')}"
+        return f"{measure} ends below zero in {_some(ended, total)}"
     if dipped:
-        return f"{measure} ends at or above zero; below on the way in {fixed(dipped)} of {fixed(total)}"
+        return f"{measure} ends at or above zero; below on the way in {_some(dipped, total)}"
     return f"{measure} stays at or above zero in {_every(total)}"
 
 
@@ -80,7 +80,11 @@ def title_surplus(lows: Sequence[float], measure: str, money: Money) -> str:
     dipped = sum(money.is_negative(value) for value in lows)
     if not dipped:
         return f"{measure} is never below zero at a year end in {_every(len(lows))}"
-    return f"{measure} is below zero at some year end in {fixed(dipped)} of {count_of(len(lows), 'scenario')}"
+    return f"{measure} is below zero at some year end in {_some(dipped, len(lows))}"
+
+
+def _some(part: int, total: int) -> str:
+    return _every(total) if total == 1 else f"{fixed(part)} of {count_of(total, 'scenario')}"
 
 
 def _every(total: int) -> str:

@@ -18,7 +18,16 @@ from projector.balance import holdings_kernels as item
 from projector.balance import purchases
 from projector.balance.holdings import group_items
 from projector.balance.market_values import GroupValues
-from projector.balance.month import MonthRecord, State, month_step, opening_state, segment_sum
+from projector.balance.month import (
+    ASSET_CATEGORIES,
+    BOUGHT_CATEGORIES,
+    SEGMENT_CATEGORIES,
+    MonthRecord,
+    State,
+    month_step,
+    opening_state,
+    segment_sum,
+)
 from projector.bonds.decisions import CallEvents, DecisionPass, DecisionRows
 from projector.liabilities.blocks import ITEM_NAMES, Market, MonthOutcome, signed
 from projector.rates.curve import log_discount_nodes, monthly_discounts
@@ -71,9 +80,7 @@ def project(prepared: Prepared, path_lo: int, path_hi: int, record: str = "detai
     discounts = discounts_of(prepared, path_lo, path_hi)
     rows = DecisionRows() if record == "detail" else None
     events = DecisionPass(prepared.solver, prepared.rule, prepared.months).run(discounts, paths, rows)
-    items = group_items(
-        prepared.holdings, prepared.bonds, prepared.terms, prepared.survival, events, prepared.months
-    )
+    items = group_items(prepared.holdings, prepared.bonds, prepared.terms, prepared.survival, events, prepared.months)
     values = GroupValues(prepared.holdings, prepared.solver, prepared.survival, events)
     result = roll_forward(prepared, path_lo, path_hi, items, values, discounts, events)
     if rows is not None:
@@ -100,9 +107,7 @@ def roll_forward(
     """Month after month for every segment: the loop is the table of contents of C2."""
     segment = prepared.holdings.groups.segment
     cash = np.array([s.cash for s in prepared.study.segments])
-    state = opening_state(
-        cash, items, segment, prepared.strategy.mix, prepared.months, prepared.strategy.recovery_lag
-    )
+    state = opening_state(cash, items, segment, prepared.strategy.mix, prepared.months, prepared.strategy.recovery_lag)
     result = empty_result(prepared, path_lo, path_hi, items, events)
     opened = [(block, *block.open(path_lo, path_hi)) for block in prepared.blocks]
     liability_states: list[Any] = [s for _, s, _ in opened]
@@ -167,8 +172,6 @@ def net_liability(prepared: Prepared, result: BlockResult, m: int) -> Array:
 
 def empty_result(prepared: Prepared, path_lo: int, path_hi: int, items: Array, events: CallEvents) -> BlockResult:
     """Room for every month."""
-    from projector.balance.month import ASSET_CATEGORIES, BOUGHT_CATEGORIES, SEGMENT_CATEGORIES
-
     segments, paths = len(prepared.study.segments), path_hi - path_lo
     shape = (prepared.months + 1, segments, paths)
     keys = (
@@ -236,18 +239,16 @@ def keep_year_end(
     segment = prepared.holdings.groups.segment
     everywhere = np.ones(state.cash.shape, dtype=np.bool_)
     group = values.at(m, discount, everywhere)
-    result.market_start[m] = segment_sum(group, state.held, segment, everywhere.shape[0])
+    result.market_start[m] = segment_sum(group, state.held, segment, len(prepared.study.segments))
     result.market_bought[m] = purchases.values(state.cohorts, prepared.strategy.mix, m, discount, everywhere)
     result.group_book[m] = items[item.BOOK, m] * state.held
     result.class_book[m] = state.cohorts.par.copy()
 
 
-def close_run_off(
-    prepared: Prepared, result: BlockResult, items: Array, values: GroupValues, discount: Array
-) -> None:
+def close_run_off(prepared: Prepared, result: BlockResult, items: Array, values: GroupValues, discount: Array) -> None:
     """Flows of the starting holdings as if nothing were ever sold, and what they leave at the horizon."""
     segment = prepared.holdings.groups.segment
-    segments, lag, last = result.runoff.shape[1], prepared.strategy.recovery_lag, prepared.months
+    segments, lag, last = len(prepared.study.segments), prepared.strategy.recovery_lag, prepared.months
     one = np.ones(items.shape[2:])
     due = np.zeros((last + lag + 1, *result.runoff.shape[1:]))
     for m in range(1, last + 1):

@@ -24,13 +24,13 @@ def spread_lines(staged: Staged) -> list[str]:
     prepared = staged.prepared
     fitted = prepared.calibrated
     by_origin = {o: fitted.origin.count(o) for o in ("price", "given", "rating_spread")}
-    spread = fitted.spread * 1e4
+    spread, gap = fitted.spread * 1e4, np.abs(fitted.model_price - fitted.clean_price).max()
     lines = [
         f"{by_origin['price']} calibrated to the clean price, {by_origin['given']} stated, {by_origin['rating_spread']}"
         " by the rating's spread (fallback)",
-        f"valuation spread in bp: lowest {spread.min():.1f}, median {np.median(spread):.1f}, highest {spread.max():.1f}",
-        f"largest difference between model and stated clean price: {np.abs(fitted.model_price - fitted.clean_price).max():.2e}"
-        " per 100",
+        f"valuation spread in bp: lowest {spread.min():.1f}, median {np.median(spread):.1f}, highest"
+        f" {spread.max():.1f}",
+        f"largest difference between model and stated clean price: {gap:.2e} per 100",
     ]
     differences = mapping_differences(prepared)
     size = differences["difference_bp"].abs()
@@ -67,8 +67,8 @@ def check_text(staged: Staged) -> str:
     lines += section(
         "Starting assets and reserves by segment",
         [
-            f"{r.segment}: statement value {money(r.statement_value)} + accrued {money(r.accrued)} + cash {money(r.cash)}"
-            f" = {money(r.assets)}; reserve {money(r.reserve)}"
+            f"{r.segment}: statement value {money(r.statement_value)} + accrued {money(r.accrued)} + cash"
+            f" {money(r.cash)} = {money(r.assets)}; reserve {money(r.reserve)}"
             for r in starting_assets(prepared).itertuples()
         ],
     )

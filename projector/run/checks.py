@@ -64,7 +64,7 @@ def starting_asset_stage(prepared: Prepared) -> None:
                         f" {row.statement_value:,.2f}, accrued {row.accrued:,.2f}, cash {row.cash:,.2f}), which is"
                         f" {excess:,.2f} above its statutory reserve of {row.reserve:,.2f}"
                     ),
-                    remedy="they may not exceed the reserves tested: move lots or cash of that amount out of the segment",
+                    remedy="they may not exceed the reserves tested: move that much in lots or cash out of the segment",
                 )
             )
     stop = prepared.study.spreads.no_root_fallback == "stop"
@@ -113,12 +113,13 @@ def special_cases(prepared: Prepared) -> pd.DataFrame:
     make_whole = np.array([float(whole.get(s, np.nan)) for s in bonds.ids]) * 1e-4
     origin = np.array(fitted.origin)
     stated = np.isfinite(bonds.clean_price).any(axis=1)
-    past = set(rights.loc[rights["last_date"].to_numpy() <= np.datetime64(prepared.study.valuation_date), "security_id"])
-    above = stated & (fitted.clean_price > np.where(stated, bonds.clean_price[:, 1], np.inf) + prepared.solver.model.cost)
+    lapsed = rights["last_date"].to_numpy() <= np.datetime64(prepared.study.valuation_date)
+    past = set(rights.loc[lapsed, "security_id"])
+    above = stated & (fitted.clean_price > bonds.clean_price[:, 1] + prepared.solver.model.cost)
     cases = [
-        ("spread calibrated to the stated price", origin == "price", "valuation spread meets the clean price at month 0"),
+        ("spread calibrated to the stated price", origin == "price", "the clean price is met at month 0"),
         ("spread stated, price modelled", origin == "given", "the study's spread is used as it stands"),
-        ("no usable spread: rating spread used", origin == "rating_spread", "class spread, no residual; model price differs"),
+        ("no usable spread: rating spread used", origin == "rating_spread", "no residual; model price differs"),
         (
             "refunding spread below the make-whole spread",
             spreads.refunding[:, 0] < make_whole,

@@ -95,7 +95,12 @@ def stated_choices(study: Study) -> list[tuple[str, str, str, Origin | None]]:
         ("Horizon", "Months", f"{horizon.months}", horizon.origin),
         ("Horizon", "Assets left at the horizon", horizon.asset_close_out.replace("_", " "), horizon.origin),
         ("Horizon", "Liability left at the horizon", horizon.liability_close_out.replace("_", " "), horizon.origin),
-        ("Discounting", "Constant added to one-month rates", bp(study.discounting.npv_constant_bp), study.discounting.origin),
+        (
+            "Discounting",
+            "Constant added to one-month rates",
+            bp(study.discounting.npv_constant_bp),
+            study.discounting.origin,
+        ),
         ("Rates", "Rate basis of quoted yields", f"{study.rates.rate_basis}, bond-equivalent", study.rates.origin),
     ]
     out += [("Rates", f"Paths {i + 1}", path_words(s), study.rates.origin) for i, s in enumerate(study.rates.paths)]

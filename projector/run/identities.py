@@ -32,11 +32,12 @@ class Sums:
 
     def add(self, terms: Iterable[Array], labels: tuple[tuple[str, ...], ...], first_month: int) -> None:
         """Compares at every cell; labels are the scenario and segment names of the last two axes reversed."""
-        residual, size = 0.0, 0.0
-        for term in terms:
+        parts = list(terms)
+        residual, size = np.zeros(parts[0].shape), np.zeros(parts[0].shape)
+        for term in parts:
             residual = residual + term
             size = size + np.abs(term)
-        gap, allowed = np.abs(np.asarray(residual)), RELATIVE * np.asarray(size) + ABSOLUTE
+        gap, allowed = np.abs(residual), RELATIVE * size + ABSOLUTE
         self.count += gap.size
         self.holds = self.holds and bool((gap <= allowed).all())  # nan is not <=, so it fails
         at = np.unravel_index(int(np.argmax(np.where(np.isnan(gap), np.inf, gap))), gap.shape)
@@ -54,11 +55,11 @@ class Sums:
 
 def flow_total(result: BlockResult, without: tuple[str, ...] = ()) -> Array:
     """All flows into cash but those named. [month, segment, path]"""
-    total = 0.0
+    total = np.zeros_like(result.runoff)
     for (_, category), amount in result.flows.items():
         if category not in without:
             total = total + amount
-    return np.asarray(total)
+    return total
 
 
 def cash_terms(r: BlockResult) -> list[Array]:

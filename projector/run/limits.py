@@ -44,10 +44,10 @@ class Sizes:
     def sentence(self) -> str:
         """The arithmetic in words."""
         return (
-            f"{self.securities:,} securities x {self.security_months:,} months x {TABLES_PER_SECURITY} tables x 8 bytes ="
-            f" {self.security_bytes / 1e6:,.0f} MB; {self.paths:,} paths x {self.months:,} months x ({self.segments} segments"
-            f" x {WORDS_PER_CELL} + {self.groups} sale groups x {2 * ITEMS}) x 8 bytes = {self.path_bytes / 1e6:,.0f} MB;"
-            f" together {self.total / 1e6:,.0f} MB"
+            f"{self.securities:,} securities x {self.security_months:,} months x {TABLES_PER_SECURITY} tables x 8"
+            f" bytes = {self.security_bytes / 1e6:,.0f} MB; {self.paths:,} paths x {self.months:,} months x"
+            f" ({self.segments} segments x {WORDS_PER_CELL} + {self.groups} sale groups x {2 * ITEMS}) x 8 bytes ="
+            f" {self.path_bytes / 1e6:,.0f} MB; together {self.total / 1e6:,.0f} MB"
         )
 
 
@@ -89,7 +89,7 @@ def refuse_too_large(study: Study, limit: int = MEMORY_LIMIT) -> None:
                 LocatedError(
                     code="E120",
                     file="study.toml",
-                    problem=f"the run would need more memory than the limit of {limit / 1e6:,.0f} MB: {size.sentence()}",
+                    problem=f"the run would pass the memory limit of {limit / 1e6:,.0f} MB: {size.sentence()}",
                     remedy="use fewer paths, a shorter horizon or fewer securities",
                 )
             ]

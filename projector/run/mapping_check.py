@@ -20,7 +20,7 @@ DAYS_A_YEAR = 365.25
 
 
 def spread_of(times: Array, amounts: Array, log_discount: Array, price: float) -> float:
-    """Continuously compounded spread at which payments are worth a dirty price. [1/year]; nan when none in -50..100 %"""
+    """Continuously compounded spread at which payments are worth a dirty price. [1/year]; nan: none in -50..100 %"""
     base = amounts * np.exp(log_discount)
 
     def miss(spread: float) -> float:

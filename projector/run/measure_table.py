@@ -2,12 +2,14 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 
 import numpy as np
 import numpy.typing as npt
 import pandas as pd
 
+from projector.liabilities.blocks import ITEM_NAMES
 from projector.measures.criterion import criterion_values, scenarios_met
 from projector.measures.surplus import (
     earned_rate_discount,
@@ -56,8 +58,6 @@ def rate_of(flows: Array) -> tuple[float, str]:
 
 def net_liability_flows(r: BlockResult) -> Array:
     """Liability flows into the company. [currency], [month, segment, path]"""
-    from projector.liabilities.blocks import ITEM_NAMES
-
     total = np.zeros_like(r.runoff)
     for name in ITEM_NAMES:
         total = total + r.flows[("segment", name)]
@@ -184,9 +184,7 @@ def segment_measures(r: BlockResult, pick: slice, p: int) -> dict[str, object]:
         return in_order(values[:, pick, p])
 
     borrowing, shortfall = series(r.balances["borrowing"]), series(r.balances["shortfall"])
-    gain = series(
-        r.flows[("start", "sale")] + r.flows[("bought", "sale")] - r.book["sold"] - r.book["sold_accrued"]
-    )
+    gain = series(r.flows[("start", "sale")] + r.flows[("bought", "sale")] - r.book["sold"] - r.book["sold_accrued"])
     short = np.flatnonzero(shortfall > 0.0)
     return {
         "peak_borrowing": float(borrowing.max()),
@@ -201,8 +199,6 @@ def segment_measures(r: BlockResult, pick: slice, p: int) -> dict[str, object]:
 
 def total(series: Array) -> float:
     """Sum over months, exactly rounded once."""
-    import math
-
     return math.fsum(series.tolist())
 
 

@@ -8,6 +8,7 @@ from concurrent.futures import ThreadPoolExecutor
 from dataclasses import dataclass
 from pathlib import Path
 
+from projector.rates.paths import build_paths
 from projector.run.block import BlockResult, project
 from projector.run.call_table import calls_frame
 from projector.run.checks import control_frame, special_cases, starting_asset_stage, stream_stage
@@ -27,7 +28,6 @@ from projector.run.measure_table import measures_frame, surplus_tables
 from projector.run.prepare import Prepared, prepare
 from projector.run.results import RunResults
 from projector.run.security_table import securities_frame
-from projector.rates.paths import build_paths
 from projector.study.reading import read_study
 
 Progress = Callable[[str, int, int], None]

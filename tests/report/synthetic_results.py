@@ -392,7 +392,15 @@ def _identities(opt: Options) -> pd.DataFrame:
     names = ("Cash in equals cash out", "Par opened, paid, called, sold and closed", "Book value rolls forward",
              "Surplus rolls forward", "Segments add to all")  # fmt: skip
     rows = [
-        (f"I{k + 1}", name, 10080 * (k + 1), "1e-9 x gross + 1e-6", 3.1e-7 * k, f"S{k % 7 + 1}, payout, month {k}", True)
+        (
+            f"I{k + 1}",
+            name,
+            10080 * (k + 1),
+            "1e-9 x gross + 1e-6",
+            3.1e-7 * k,
+            f"S{k % 7 + 1}, payout, month {k}",
+            True,
+        )
         for k, name in enumerate(names)
     ]
     return pd.DataFrame(rows, columns=list(COLUMNS["identities"]))

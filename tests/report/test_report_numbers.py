@@ -58,7 +58,12 @@ def test_known_money_in_words():
 
 def test_known_dates_and_months():
     assert numbers.date_words(date(2025, 12, 31)) == "December 31, 2025"
-    assert [numbers.month_label(date(2025, 12, 31), m) for m in (0, 1, 12, 14)] == ["2025-12", "2026-01", "2026-12", "2027-02"]
+    assert [numbers.month_label(date(2025, 12, 31), m) for m in (0, 1, 12, 14)] == [
+        "2025-12",
+        "2026-01",
+        "2026-12",
+        "2027-02",
+    ]
     assert numbers.years_between(date(2025, 12, 31), date(2027, 6, 30)) == 1.5
 
 

@@ -43,7 +43,7 @@ def test_known_verdict_measures_the_margin_from_the_studys_limit():
     [
         ([1e6, -2e6], [0, -2e6], "Surplus ends below zero in 1 of 2 scenarios"),
         ([-1e6, -2e6], [-1e6, -2e6], "Surplus ends below zero in 2 of 2 scenarios"),
-        ([1e6, 2e6], [-1e6, 0], "Surplus ends at or above zero; below on the way in 1 of 2"),
+        ([1e6, 2e6], [-1e6, 0], "Surplus ends at or above zero; below on the way in 1 of 2 scenarios"),
         ([1e6, 2e6], [0, 0], "Surplus stays at or above zero in all 2 scenarios"),
         ([1e6], [0], "Surplus stays at or above zero in the one scenario run"),
         ([-1.0, 1e6], [-1.0, 0], "Surplus stays at or above zero in all 2 scenarios"),  # rounds to 0.0
@@ -59,7 +59,7 @@ def test_known_titles_of_the_result(endings, lows, title):
         ([0, 1e6], "Surplus is never below zero at a year end in all 2 scenarios"),
         ([0], "Surplus is never below zero at a year end in the one scenario run"),
         ([-1e6, 0, -2e6], "Surplus is below zero at some year end in 2 of 3 scenarios"),
-        ([-1e6], "Surplus is below zero at some year end in 1 of 1 scenario"),
+        ([-1e6], "Surplus is below zero at some year end in the one scenario run"),
     ],
 )
 def test_known_titles_of_surplus_through_time(lows, title):

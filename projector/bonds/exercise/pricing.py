@@ -7,8 +7,8 @@ from dataclasses import dataclass
 import numpy as np
 import numpy.typing as npt
 
-from projector.bonds.exercise.step_operator import Grid, Operator, build_operator
 from projector.bonds.exercise.solver_kernels import LANES, solve_lanes
+from projector.bonds.exercise.step_operator import Grid, Operator, build_operator
 
 Array = npt.NDArray[np.float64]
 IntArray = npt.NDArray[np.int64]
@@ -63,6 +63,10 @@ def solve(op: Operator, problem: Problem, both: bool = True) -> tuple[Array, Arr
     arguments = operator_arguments(op)
     lanes = LANES if count > 1 else 1
     out_issuer, out_holder = np.empty(lanes), np.empty(lanes)
+    if count == lanes:  # already one full batch
+        given = (problem.ratio, problem.holder_ratio, problem.flow, problem.price, problem.bar)
+        solve_lanes(*arguments, problem.steps, first, last, *given, both, issuer, holder)
+        return issuer, holder
     for start in range(0, count, lanes):
         take = np.minimum(np.arange(start, start + lanes), count - 1)
         solve_lanes(
@@ -76,9 +80,7 @@ def solve(op: Operator, problem: Problem, both: bool = True) -> tuple[Array, Arr
     return issuer, holder
 
 
-def operator_for(
-    a: float, sigma: float, step_months: int, offset_months: int, steps: int, grid: Grid
-) -> Operator:
+def operator_for(a: float, sigma: float, step_months: int, offset_months: int, steps: int, grid: Grid) -> Operator:
     """The operator with room for `steps` steps, shared between calls; numbers do not depend on the room."""
     room = max(8, -(-steps // 40) * 40)
     return build_operator(a, sigma, step_months, offset_months, room, grid)

@@ -15,7 +15,7 @@ LANES = 16
 GHOSTS = 3
 
 
-def lagrange_monomials() -> np.ndarray:
+def lagrange_monomials() -> Floats:
     """Coefficients [node, power] of the six Lagrange polynomials on -2, -1, 0, 1, 2, 3."""
     nodes = np.arange(-2.0, 4.0)
     rows = []
@@ -35,7 +35,9 @@ _A = lagrange_monomials()
 
 
 @kernel
-def quintic(g0, g1, g2, g3, g4, g5):
+def quintic(
+    g0: float, g1: float, g2: float, g3: float, g4: float, g5: float
+) -> tuple[float, float, float, float, float, float]:  # fmt: skip
     """Monomial coefficients of the quintic through values at -2..3."""
     return (
         g2,
@@ -48,7 +50,7 @@ def quintic(g0, g1, g2, g3, g4, g5):
 
 
 @kernel
-def newton(t, c0, b1, b2, b3, b4, b5):
+def newton(t: float, c0: float, b1: float, b2: float, b3: float, b4: float, b5: float) -> float:
     """One Newton step towards the root of the quintic, kept between its nodes 0 and 1."""
     value = c0 + t * (b1 + t * (b2 + t * (b3 + t * (b4 + t * b5))))
     slope = b1 + t * (2.0 * b2 + t * (3.0 * b3 + t * (4.0 * b4 + t * 5.0 * b5)))
@@ -59,7 +61,7 @@ def newton(t, c0, b1, b2, b3, b4, b5):
 
 
 @kernel
-def crossing(b0, b1, b2, b3, b4, b5, target):
+def crossing(b0: float, b1: float, b2: float, b3: float, b4: float, b5: float, target: float) -> float:
     """Where the quintic meets the target between its nodes 0 and 1: secant start, two Newton steps, clamped."""
     c0 = b0 - target
     rise = b1 + b2 + b3 + b4 + b5
@@ -72,7 +74,10 @@ def crossing(b0, b1, b2, b3, b4, b5, target):
 
 
 @kernel
-def node_shares(theta, m0, m1, m2, m3, m4, a0, a1, a2, a3, a4, a5):
+def node_shares(
+    theta: float, m0: float, m1: float, m2: float, m3: float, m4: float, a0: float, a1: float, a2: float, a3: float,
+    a4: float, a5: float,
+) -> float:  # fmt: skip
     """Sum over r of M_r times the r-th derivative over r! of one Lagrange polynomial at theta."""
     t = theta
     l0 = a0 + t * (a1 + t * (a2 + t * (a3 + t * (a4 + t * a5))))
@@ -84,7 +89,9 @@ def node_shares(theta, m0, m1, m2, m3, m4, a0, a1, a2, a3, a4, a5):
 
 
 @kernel
-def kink_corrections(theta, b1, b2, b3, b4, b5, jump):
+def kink_corrections(
+    theta: float, b1: float, b2: float, b3: float, b4: float, b5: float, jump: float
+) -> tuple[float, float, float, float, float, float]:  # fmt: skip
     """What to add at the six nodes so that the trapezoid sum sees the kink (and the jump) at theta.
 
     From the Euler-Maclaurin sums on both sides of theta: with u = 1 - theta, jumps J_p = (right - left) of the p-th
@@ -211,25 +218,23 @@ def exercise(
     kink[lane] is the last exercised node, or lo - 1 when none is. Ties call. flat_* are 1 where the edge is exercised.
     """
     n = np.uint64(lanes)
+    for lane in range(n):
+        flat_low[lane] = 0.0
     for i in range(np.uint64(lo - base), np.uint64(hi + 1 - base)):
         for lane in range(n):
             x = c[i * n + lane]
-            v[i * n + lane] = bar[lane] if x >= bar[lane] else x
+            called = x >= bar[lane]
+            v[i * n + lane] = bar[lane] if called else x
+            flat_low[lane] += 1.0 if called else 0.0
     if both:
         for i in range(np.uint64(lo - base), np.uint64(hi + 1 - base)):
             for lane in range(n):
                 w[i * n + lane] = price[lane] if c[i * n + lane] >= bar[lane] else h[i * n + lane]
-    for lane in range(lanes):
-        below, above = lo - 1, hi + 1  # C decreases in x: exercised below, kept above
-        while above - below > 1:
-            middle = (below + above) // 2
-            if c[(middle - base) * lanes + lane] >= bar[lane]:
-                below = middle
-            else:
-                above = middle
-        kink[lane] = below
-        flat_low[lane] = 1.0 if below >= lo else 0.0
-        flat_high[lane] = 1.0 if below >= hi else 0.0
+    for lane in range(n):
+        count = flat_low[lane]  # C decreases in x: exercised below the kink, kept above
+        kink[lane] = lo - 1 + int(count)
+        flat_low[lane] = 1.0 if count > 0.0 else 0.0
+        flat_high[lane] = 1.0 if count > hi - lo else 0.0
 
 
 @kernel

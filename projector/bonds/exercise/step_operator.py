@@ -118,7 +118,8 @@ def build_operator(a: float, sigma: float, step_months: int, offset_months: int,
     conv = np.array([1.0] + [model.convexity(t, step) for t in times[1:]])
     ahead = np.array([model.g(j * step) for j in range(steps + 1)])
     growth = exp_array(-ahead[None, :] * (rows * h)[:, None])
-    straight = exp_array(-0.5 * np.outer(variances(model, times), ahead**2) - 0.5 * np.outer(drifts(model, times), ahead))
+    spread_out = np.outer(variances(model, times), ahead**2) + np.outer(drifts(model, times), ahead)
+    straight = exp_array(-0.5 * spread_out)
     return Operator(
         model, step, offset, h, b, lo, hi, conv, int(rows[0]), start, weights, growth, straight,
         *first_sums(model, times, h, lo, hi),
@@ -128,7 +129,7 @@ def build_operator(a: float, sigma: float, step_months: int, offset_months: int,
 def first_sums(
     model: ShortRateModel, times: Array, h: float, lo: IntArray, hi: IntArray
 ) -> tuple[Array, npt.NDArray[np.bool_], Array, Array]:
-    """Weights of the one exact jump from time 0 to step k, on the grid or, where that is too coarse, on a local grid."""
+    """Weights of the one exact jump from time 0 to step k, on the grid or, where it is too coarse, on a local one."""
     steps = times.size - 1
     width = int((hi - lo).max()) + 1
     weights = np.zeros((steps + 1, width))

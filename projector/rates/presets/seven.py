@@ -63,9 +63,12 @@ def floored_shift(path: int, years: float, limit: float, recovery: str) -> float
     return floored(shift_at(path, years), limit)
 
 
-def seven_paths(
-    start: Array, five_year: float, months: int, floor: str, within_year: str, recovery: str
-) -> Array:
+def tenor_shift(path: int, years: float, limit: float, recovery: str) -> float:
+    """Shift of one tenor kept at half its own start; a tenor that starts at or below zero has no floor. [1/year]"""
+    return floored_shift(path, years, limit, recovery) if limit < 0.0 else shift_at(path, years)
+
+
+def seven_paths(start: Array, five_year: float, months: int, floor: str, within_year: str, recovery: str) -> Array:
     """Yields on the seven paths. [1/year], shape (month 0..months, tenor, 7)
 
     start      starting yields by tenor [1/year]
@@ -77,8 +80,7 @@ def seven_paths(
         for k in range(1, 8):
             years = read_years(m, within_year, k)
             if floor == "every_tenor":
-                half = -0.5 * start
-                shifts = np.array([floored_shift(k, years, h, recovery) if h < 0.0 else shift_at(k, years) for h in half])
+                shifts = np.array([tenor_shift(k, years, -0.5 * y, recovery) for y in start])
             elif floor == "shift" and five_year > 0.0:
                 shifts = np.full(start.size, floored_shift(k, years, -0.5 * five_year, recovery))
             else:
