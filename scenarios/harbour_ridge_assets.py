@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import bisect
 import random
+from collections.abc import Mapping
 from dataclasses import dataclass, field
 from datetime import date, timedelta
 from typing import Any
@@ -91,13 +92,13 @@ class Recipe:
     asset_class: str
     count: int
     segment: str
-    ratings: dict[str, float]
+    ratings: Mapping[str, float]
     form: str  # which rights, see `rights_of`
     life: tuple[float, float]  # remaining years at the valuation date, from and to
     terms: tuple[int, ...]  # years from issue to maturity
     par: tuple[float, float]  # relative size of the first lot, from and to
     sectors: tuple[str, ...] = BUSINESS_SECTORS
-    years: dict[int, float] = field(default_factory=lambda: EVEN_YEARS)
+    years: Mapping[int, float] = field(default_factory=lambda: EVEN_YEARS)
     lean: float = 1.0  # above 1 the remaining lives lean to the short end
     extra_bp: float = 0.0  # coupon above that of a bullet, for the issuer's right to call or for scarce trading
 
@@ -191,7 +192,7 @@ class Lot:
     tax: float
 
 
-def pick(rng: random.Random, weights: dict[Any, float]) -> Any:
+def pick(rng: random.Random, weights: Mapping[Any, float]) -> Any:
     """One key, drawn with its weight."""
     keys = list(weights)
     edges, total = [], 0.0

@@ -267,7 +267,7 @@ def make_demo() -> Demo:
     demo = first_draft()
     with tempfile.TemporaryDirectory() as scratch:
         demo.write(Path(scratch))
-        paths = build_paths(read_study(scratch)[0])
+        paths = build_paths(read_study(Path(scratch))[0])
         five_year = paths.yields[:, FIVE_YEARS, :]
         deferred = [
             Block("deferred_annuities", "deferred_older", deferred_stream(OLDER, five_year)),
@@ -275,7 +275,7 @@ def make_demo() -> Demo:
         ]
         demo = replace(demo, blocks=[*deferred, *demo.blocks], ids=paths.ids, digest=paths.digest())
         demo.write(Path(scratch))
-        prepared = prepare(read_study(scratch)[0])
+        prepared = prepare(read_study(Path(scratch))[0])
     clean = prepared.calibrated.clean_price
     prices = {name: round(float(price), 3) for name, price in zip(prepared.bonds.ids, clean)}
     accrued, reserves = accrued_of(prepared), reserves_at_start(demo.blocks)

@@ -14,7 +14,7 @@ BoolArray = npt.NDArray[np.bool_]
 def criterion_values(criterion: Criterion, statement: Array, market: Array) -> Array:
     """The measure at its worst date (or at the end), by scenario. [currency], shape (path,)
 
-    statement, market  surplus at month 0 and the year ends, all segments together [year end, path]
+    statement, market  surplus at the year ends 1, 2, ..., all segments together [year end, path]
     """
     measured = statement if criterion.measure == "statement_surplus" else market
     return measured[-1] if criterion.dates == "end" else measured.min(axis=0)

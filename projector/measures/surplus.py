@@ -43,7 +43,7 @@ def lowest(at_year_ends: Array) -> tuple[Array, IntArray]:
 
 
 def years_negative(at_year_ends: Array) -> IntArray:
-    """Number of year ends (month 0 included) below zero."""
+    """Number of year ends below zero."""
     return (at_year_ends < 0.0).sum(axis=0)
 
 

@@ -87,6 +87,10 @@ def _some(part: int, total: int) -> str:
     return _every(total) if total == 1 else f"{fixed(part)} of {count_of(total, 'scenario')}"
 
 
+def _any(total: int) -> str:
+    return "the one scenario run" if total == 1 else "any scenario"
+
+
 def _every(total: int) -> str:
     return "the one scenario run" if total == 1 else f"all {count_of(total, 'scenario')}"
 
@@ -139,7 +143,7 @@ def title_call_map(called: Sequence[tuple[str, int]], callable_count: int) -> st
     of = f"of {count_of(callable_count, 'callable security', 'callable securities')}"
     are = "is" if most[1] == 1 else "are"
     if not most[1]:
-        return f"None {of} is called in {_every(len(called))}"
+        return f"No callable security is called in {_any(len(called))}"
     if most[1] == least[1]:
         return f"{fixed(most[1])} {of} {are} called in {_every(len(called))}"
     return f"{fixed(most[1])} {of} {are} called in {most[0]}, {fixed(least[1])} in {least[0]}"
@@ -151,7 +155,7 @@ def title_par_called(called: Sequence[tuple[str, float]], callable_par: float) -
         return "No par can be called at a stated price"
     most = max(called, key=lambda c: c[1])
     if not most[1]:
-        return f"No par is called in {_every(len(called))}"
+        return f"No par is called in {_any(len(called))}"
     if sum(value == most[1] for _, value in called) > 1:
         return "Par called by year"
     return f"Most par is called in {most[0]}: {percent(most[1] / callable_par, 0)} of callable par"

@@ -97,18 +97,18 @@ def in_order(values: Array) -> Array:
 
 def surplus_measures(prepared: Prepared, statement: Array, market: Array, months: list[int]) -> dict[str, object]:
     """Ends, lows, years below zero and the criterion. statement [month], market [year end]"""
-    at_years = statement[months]
+    at_years, market_years = statement[months[1:]], market[1:]  # month 0 is what the ledger says
     low, where = lowest(at_years)
-    market_low, market_where = lowest(market)
+    market_low, market_where = lowest(market_years)
     criterion = prepared.study.criterion
-    value = criterion_values(criterion, at_years[:, None], market[:, None])
+    value = criterion_values(criterion, at_years[:, None], market_years[:, None])
     return {
         "ending_statement_surplus": float(statement[-1]),
         "ending_market_surplus": float(market[-1]),
         "lowest_statement_surplus": float(low),
-        "lowest_statement_year": int(where),
+        "lowest_statement_year": int(where) + 1,
         "lowest_market_surplus": float(market_low),
-        "lowest_market_year": int(market_where),
+        "lowest_market_year": int(market_where) + 1,
         "years_negative": int(years_negative(at_years)),
         "criterion_value": float(value[0]),
         "criterion_met": bool(scenarios_met(criterion, value)[0]),

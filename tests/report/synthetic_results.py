@@ -113,7 +113,9 @@ def _origin(opt: Options, source: str) -> Origin:
 
 
 def _study(opt: Options) -> Study:
-    of = lambda source: _origin(opt, source)  # noqa: E731 - a one-line shorthand used fifteen times below
+    def of(source: str) -> Origin:
+        return _origin(opt, source)
+
     segments = tuple(
         Segment(name=name, title=_text(opt, title), cash=0.02 * reserve) for name, title, reserve in _segments(opt)
     )
@@ -148,7 +150,7 @@ def _study(opt: Options) -> Study:
         horizon=Horizon(
             months=opt.months, asset_close_out="market_value", liability_close_out="statutory_reserve",
             origin=of("Run-off study")),
-        discounting=Discounting(npv_constant_bp=0.0, origin=of("None")),
+        discounting=Discounting(npv_constant_bp=0.0, origin=of("House rule")),
         rates=Rates(
             rate_basis="par",
             paths=(PathSource(kind="seven_deterministic", floor="shift", within_year="linear", recovery="cut"),),
@@ -228,7 +230,8 @@ def _securities(opt: Options) -> pd.DataFrame:
         worst = first if first is not None and price > 101 else date(2025 + life, 12, 31)
         rows.append((
             _text(opt, f"B-{k + 1:04d}"), _text(opt, f"Issuer {k + 1}"), CLASSES[k % 6], "industrial", RATINGS[k % 6],
-            coupon, 2, date(2025 + life, 12, 31), form, first, 102.0 if first else np.nan, par, par * (1 + 0.001 * (k % 9)),
+            coupon, 2, date(2025 + life, 12, 31), form, first,
+            102.0 if first else np.nan, par, par * (1 + 0.001 * (k % 9)),
             par * price / 100, par * coupon / 24, price, price + 1e-7, 60.0 + 2 * k, 55.0 + 2 * k, 70.0 + 2 * k,
             "rating_spread" if k == 4 else ("given" if k % 10 == 9 else "price"), coupon - 0.0003 * (k % 5), worst,
             coupon - 0.001, 25.0 if "make_whole" in form else np.nan))  # fmt: skip
@@ -268,8 +271,9 @@ def _surplus_share(k: int, years: float) -> float:
     """Surplus as a share of the opening reserve: a shape for each scenario."""
     grow = 0.03 * (1 - exp(-years / 12))
     dip = 0.014 * sin(pi * min(years / 8, 1.0))
-    return (grow, grow * 0.9 - dip * 0.2, grow * 0.6 - dip, grow * 0.8 - 1.2 * dip, grow * 0.1, grow * 0.5 + 0.002 * min(
-        years, 1), -0.4 * grow)[k % 7]  # fmt: skip
+    early = 0.002 * min(years, 1)
+    shapes = (grow, grow * 0.9 - dip * 0.2, grow * 0.6 - dip, grow * 0.8 - 1.2 * dip, grow * 0.1, grow * 0.5 + early)
+    return (*shapes, -0.4 * grow)[k % 7]
 
 
 def _balance(opt: Options, names: list[str]) -> pd.DataFrame:
@@ -347,7 +351,7 @@ def _mix(opt: Options, names: list[str], balance: pd.DataFrame) -> pd.DataFrame:
 def _measures(opt: Options, balance: pd.DataFrame, calls: pd.DataFrame, securities: pd.DataFrame, names: list[str]):
     callable_par = float(securities.loc[securities["first_call_date"].notna(), "par"].sum())
     rows = []
-    column = opt.criterion_measure
+    column, parts = opt.criterion_measure, opt.segments
     for (scenario, segment), b in balance.groupby(["scenario", "segment"], sort=False):
         ends = b[b["month"] % 12 == 0]
         end = ends.iloc[-1]
@@ -370,7 +374,7 @@ def _measures(opt: Options, balance: pd.DataFrame, calls: pd.DataFrame, securiti
             "npv_close_out_liabilities": 1.5e6 * opt.scale, "irr_assets": np.nan if several else 0.051 - 0.001 * k,
             "irr_assets_status": "several" if several else "one", "irr_assets_on_statement_value": 0.0495,
             "cost_rate": 0.043, "cost_rate_status": "one", "irr_gap": np.nan if several else 0.008 - 0.001 * k,
-            "horizon_return": 0.047 - 0.0007 * k, "callable_par": callable_par / (1 if segment == "all" else opt.segments),
+            "horizon_return": 0.047 - 0.0007 * k, "callable_par": callable_par / (1 if segment == "all" else parts),
             "par_called": float(own["par_called"].sum()), "call_premium": float(own["premium"].sum()),
             "yield_given_up": float(own["yield_given_up"].sum()), "peak_borrowing": b["borrowing"].max(),
             "par_sold": 12e6 * opt.scale if k == 3 else 0.0, "sale_gain": -0.4e6 * opt.scale if k == 3 else 0.0,

@@ -14,7 +14,10 @@ pytestmark = [
     pytest.mark.skipif(CHROMIUM is None, reason="no chromium on this machine"),
 ]
 PAPERS = {"Letter": (702, 924), "A4": (680, 990)}  # printable width and height in CSS pixels within the page margins
-SPACING = "* { line-height: 1.5 !important; letter-spacing: .12em !important; word-spacing: .16em !important } p { margin-bottom: 2em !important }"  # noqa: E501 - WCAG 1.4.12 in one line
+SPACING = (  # WCAG 1.4.12
+    "* { line-height: 1.5 !important; letter-spacing: .12em !important; word-spacing: .16em !important } "
+    "p { margin-bottom: 2em !important }"
+)
 
 
 @pytest.fixture(scope="module")
@@ -85,8 +88,8 @@ def test_limit_closed_tables_print_open(browser, address):
 @pytest.mark.parametrize("paper", PAPERS)
 @pytest.mark.parametrize(
     "options",
-    [Options(scenarios=1, months=60), Options(months=60), Options(scenarios=8, months=60), Options(scenarios=16, months=60),
-     Options(lift=0.05, months=60), Options(lift=-0.06, months=60)],
+    [Options(scenarios=1, months=60), Options(months=60), Options(scenarios=8, months=60),
+     Options(scenarios=16, months=60),     Options(lift=0.05, months=60), Options(lift=-0.06, months=60)],
     ids=["one", "seven", "eight", "sixteen", "all met", "none met"],
 )  # fmt: skip
 def test_limit_page_one_prints_on_one_page(browser, tmp_path, options, paper):

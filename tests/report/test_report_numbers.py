@@ -11,8 +11,8 @@ from projector.report.numbers import Money
 
 @pytest.mark.parametrize(
     ("value", "decimals", "shown"),
-    [(2733.5, 1, "2,733.5"), (-13.684, 1, "−13.7"), (-0.04, 1, "0.0"), (-0.0, 0, "0"), (0.25, 1, "0.2"), (0.35, 2, "0.35"),
-     (-1234.5, 0, "−1,234"), (1e9, 0, "1,000,000,000")],
+    [(2733.5, 1, "2,733.5"), (-13.684, 1, "−13.7"), (-0.04, 1, "0.0"), (-0.0, 0, "0"), (0.25, 1, "0.2"),
+     (0.35, 2, "0.35"),      (-1234.5, 0, "−1,234"), (1e9, 0, "1,000,000,000")],
 )  # fmt: skip
 def test_known_figures_print_with_the_true_minus_and_never_minus_zero(value, decimals, shown):
     assert numbers.fixed(value, decimals) == shown

@@ -7,6 +7,8 @@ from projector.report.numbers import Money
 from projector.report.words import Outcome
 
 MONEY = Money("$", 1e6, "million")
+NEAR = "Smallest margin: $0.0 million in S2 Name, close to the limit."
+ONE = "1 may be below the limit."
 
 
 def outcomes(*values, limit=0.0):
@@ -17,16 +19,15 @@ def outcomes(*values, limit=0.0):
     ("values", "allowed", "sentence"),
     [
         ((3, 1.5, 2), 0, "Criterion met in 3 of 3 scenarios. Smallest margin: $1.5 million in S2 Name."),
-        ((3, 0.01), 0, "Criterion met in 2 of 2 scenarios. Smallest margin: $0.0 million in S2 Name, close to the limit."),
+        ((3, 0.01), 0, f"Criterion met in 2 of 2 scenarios. {NEAR}"),
         ((3,), 0, "Criterion met in the one scenario run. Smallest margin: $3.0 million in S1 Name."),
         ((-3,), 0, "Criterion not met in the one scenario run."),
         ((-3, -1), 0, "Criterion not met in any of 2 scenarios."),
         ((3, -1, 2), 0, "Criterion met in 2 of 3 scenarios; not met in S2 Name."),
         ((3, -1, -2), 0, "Criterion met in 1 of 3 scenarios; not met in S3 Name and S2 Name."),
         ((3, -1, -2, -3, -4), 0, "Criterion met in 1 of 5 scenarios; not met in S5 Name, S4 Name, S3 Name and 1 more."),
-        ((3, -1, 2), 1, "Criterion met: 2 of 3 scenarios at or above the limit, 1 below (S2 Name); 1 may be below the limit."),
-        ((3, -1, -2), 1, "Criterion not met: 1 of 3 scenarios at or above the limit, 2 below (S3 Name and S2 Name); 1 may be "
-                         "below the limit."),
+        ((3, -1, 2), 1, f"Criterion met: 2 of 3 scenarios at or above the limit, 1 below (S2 Name); {ONE}"),
+        ((3, -1, -2), 1, f"Criterion not met: 1 of 3 scenarios at or above the limit, 2 below (S3 Name and S2 Name); {ONE}"),
     ],
 )  # fmt: skip
 def test_known_verdicts(values, allowed, sentence):
@@ -126,7 +127,7 @@ def test_known_titles_of_the_mix(opening, later, title):
         ([("S1", 1), ("S2", 0)], 5, "1 of 5 callable securities is called in S1, 0 in S2"),
         ([("S1", 3), ("S2", 3)], 5, "3 of 5 callable securities are called in all 2 scenarios"),
         ([("S1", 3)], 5, "3 of 5 callable securities are called in the one scenario run"),
-        ([("S1", 0), ("S2", 0)], 5, "None of 5 callable securities is called in all 2 scenarios"),
+        ([("S1", 0), ("S2", 0)], 5, "No callable security is called in any scenario"),
         ([("S1", 0)], 0, "No security can be called at a stated price"),
     ],
 )
@@ -139,7 +140,7 @@ def test_known_titles_of_the_call_map(called, count, title):
     [
         ([("S1", 30.0), ("S2", 5.0)], 100, "Most par is called in S1: 30% of callable par"),
         ([("S1", 30.0), ("S2", 30.0)], 100, "Par called by year"),
-        ([("S1", 0.0), ("S2", 0.0)], 100, "No par is called in all 2 scenarios"),
+        ([("S1", 0.0), ("S2", 0.0)], 100, "No par is called in any scenario"),
         ([], 100, "No par can be called at a stated price"),
         ([("S1", 0.0)], 0, "No par can be called at a stated price"),
     ],

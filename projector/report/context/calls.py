@@ -100,7 +100,10 @@ def call_table(found: CallReading, number: str, caption: str, at_most: int | Non
         *(Column(name=scenario, words=True) for scenario in reading.scenarios),
     )  # fmt: skip
     rows = rows or [
-        Row(name="None held", cells=tuple(cells.quiet("none", f"securities/none/{k}") for k in range(len(columns))))
+        Row(
+            name="No callable security held",
+            cells=tuple(cells.quiet("none", f"securities/none/{k}") for k in range(len(columns))),
+        )
     ]
     rest = ""
     if len(rows) > LONG_TABLE:
@@ -190,7 +193,7 @@ def _explained(reading: Reading, chosen: list[Chosen]) -> Table:
         basis="Per 100 of par, with accrued interest. Upper bound: cost of the best policy fixed in advance. The "
               "largest solved call, the kept decision nearest to its bar, and the largest security never called, by "
               "rule.",
-        row_head="Security", rows=tuple(rows) or (Row(name="None taken", cells=none),),
+        row_head="Security", rows=tuple(rows) or (Row(name="No decision to explain", cells=none),),
         why_missing="the bound settled the decision",
         columns=(Column(name="Scenario", words=True), Column(name="Month", words=True),
                  Column(name="Upper bound", unit="per 100"), Column(name="Continuation", unit="per 100"),

@@ -118,7 +118,7 @@ def _defects(reading: Reading) -> Table:
         )))  # fmt: skip
     if not rows:
         none = "special_cases/none"
-        rows = [Row(name="None found", cells=(cells.count(0, none), reading.cell(0.0, none), cells.quiet("none", none),
+        rows = [Row(name="No case found", cells=(cells.count(0, none), reading.cell(0.0, none), cells.quiet("none", none),
                                               cells.quiet("none", none)))]  # fmt: skip
     return Table(
         number="3.3", caption="Special cases and how each was treated",
