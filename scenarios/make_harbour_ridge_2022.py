@@ -3,12 +3,13 @@
     python scenarios/make_harbour_ridge_2022.py [FOLDER]
 
 One fixed seed; two runs write the same files. Prices are the model's own clean prices at an invented spread, rounded
-to a thousandth; the segment's cash is what makes starting assets equal to its reserves to the cent.
+to a thousandth; the segment's cash is what makes starting assets equal to its reserves, at most half a cent above.
 """
 
 from __future__ import annotations
 
 import csv
+import math
 import random
 import sys
 import tempfile
@@ -238,16 +239,33 @@ def accrued_of(prepared: Prepared) -> dict[str, float]:
     return {name: float(a) for name, a in zip(prepared.bonds.ids, prepared.bonds.accrued[:, 0])}
 
 
-def balancing_cash(lots: list[Lot], reserves: dict[str, float], accrued: dict[str, float]) -> dict[str, float]:
-    """Cash that makes starting assets equal to the reserve, to the cent. [currency]"""
-    out = {}
+def other_assets(lots: Iterable[Lot], accrued: dict[str, float]) -> float:
+    """Statement value and accrued interest. [currency]"""
+    return math.fsum(book_value(lot) + lot.size * accrued[lot.bond.name] / 100.0 for lot in lots)
+
+
+def balanced(
+    lots: list[Lot], reserves: dict[str, float], accrued: dict[str, float]
+) -> tuple[list[Lot], dict[str, float]]:
+    """Cash in whole cents that makes starting assets the reserve, at most half a cent above it and never below.
+
+    Accrued interest has fractions of a cent: the segment's first lot grows by a thousand of par until they fit, so that
+    surplus at the valuation date is nothing and not a fraction of a cent below.
+    """
+    out: list[Lot] = []
+    cash = {}
     for name in SEGMENTS:
         mine = [lot for lot in lots if lot.segment == name]
-        other = sum(book_value(lot) + lot.size * accrued[lot.bond.name] / 100.0 for lot in mine)
-        out[name] = round(reserves[name] - other, 2)
-        if abs(other + out[name] - reserves[name]) >= 0.005 or not 0.002 <= out[name] / reserves[name] <= 0.01:
-            raise ValueError(f"cash of {name} does not balance: {out[name]:.2f}")
-    return out
+        while True:
+            gap = reserves[name] - other_assets(mine, accrued)
+            cash[name] = math.ceil(gap * 100.0) / 100.0
+            if 0.0005 <= cash[name] - gap <= 0.0045:
+                break
+            mine[0] = replace(mine[0], size=mine[0].size + 1000.0)
+        if not 0.002 <= cash[name] / reserves[name] <= 0.01:
+            raise ValueError(f"cash of {name} is not a small part of its reserve: {cash[name]:.2f}")
+        out += mine
+    return sorted(out, key=lambda lot: lot.name), cash
 
 
 def first_draft() -> Demo:
@@ -280,8 +298,8 @@ def make_demo() -> Demo:
     prices = {name: round(float(price), 3) for name, price in zip(prepared.bonds.ids, clean)}
     accrued, reserves = accrued_of(prepared), reserves_at_start(demo.blocks)
     target = {name: reserve * (1.0 - CASH_SHARE) for name, reserve in reserves.items()}
-    lots = scaled(demo.lots, target, accrued)
-    return replace(demo, lots=lots, prices=prices, cash=balancing_cash(lots, reserves, accrued))
+    lots, cash = balanced(scaled(demo.lots, target, accrued), reserves, accrued)
+    return replace(demo, lots=lots, prices=prices, cash=cash)
 
 
 def main(folder: Path) -> None:

@@ -21,6 +21,8 @@ BoolArray = npt.NDArray[np.bool_]
 LOWEST, HIGHEST = -0.02, 0.20
 PRICE_TOLERANCE = 1e-9  # per 100
 LEAST_SLOPE = 0.2  # per 100 of price for 100 bp
+USUAL_SLOPE = 0.0025  # spread for one point of price, for the first step only [1/year]
+MOST_TURNS = 80
 
 
 @dataclass(frozen=True)
@@ -88,13 +90,11 @@ def spread_roots(
     The second result says where a root lies between -200 and 2,000 bp; elsewhere the spread is nan.
     """
     low, high = np.full(units.size, LOWEST), np.full(units.size, HIGHEST)
-    miss_low, miss_high = price(units, low) - target, price(units, high) - target
-    found = (miss_low >= 0.0) & (miss_high <= 0.0)
     x = np.clip(start, LOWEST, HIGHEST)
-    before, miss_before = low.copy(), miss_low.copy()
+    before, miss_before = x + USUAL_SLOPE, np.zeros(units.size)  # the first step is replaced below
     root = np.full(units.size, np.nan)
-    open_ = np.flatnonzero(found)
-    for _ in range(60):
+    open_ = np.arange(units.size)
+    for turn in range(MOST_TURNS):
         if open_.size == 0:
             break
         miss = price(units[open_], x[open_]) - target[open_]
@@ -104,16 +104,14 @@ def spread_roots(
         low[open_[above]] = x[open_[above]]
         high[open_[~above]] = x[open_[~above]]
         rise = miss - miss_before[open_]
-        rise = np.where(rise == 0.0, 1.0, rise)
-        step = x[open_] - miss * (x[open_] - before[open_]) / rise
+        secant = miss * (x[open_] - before[open_]) / np.where(rise == 0.0, 1.0, rise)
+        step = x[open_] + miss * USUAL_SLOPE if turn == 0 else x[open_] - secant
         inside = (step > low[open_]) & (step < high[open_])
         before[open_], miss_before[open_] = x[open_], miss
-        closed = high[open_] - low[open_] < 1e-14
-        root[open_[closed & ~done]] = x[open_[closed & ~done]]
+        shut = high[open_] - low[open_] < 1e-14  # the bracket closed on an end: no root in the range
         x[open_] = np.where(inside, step, 0.5 * (low[open_] + high[open_]))
-        open_ = open_[~(done | closed)]
-    root[open_] = x[open_]
-    return root, found
+        open_ = open_[~(done | shut)]
+    return root, ~np.isnan(root)
 
 
 def calibrate(price: PriceToday, clean_price: Array, given_spread: Array, class_spread: Array) -> Calibrated:

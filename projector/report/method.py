@@ -115,7 +115,7 @@ FORMULAS = (
             "The issuer decides with the class spread of new debt plus concession (or with the valuation spread, "
             "when the study says so); purchases earn the class spread.", "s' = class + concession", OWN),
     Formula("M-25", "Market value",
-            "A second backward pass with the valuation spread on the issuer's exercise set: what the holder owns "
+            "A second backward recursion with the valuation spread on the issuer's exercise set: what the holder owns "
             "while the issuer decides.", "V(k) = E[d × (coupon + (called ? K + I : V(k+1)))]", OWN),
     Formula("M-26", "Make-whole price",
             "The larger of 100 and the present value of remaining payments to the par-call date at the path's par "

@@ -33,7 +33,8 @@ TEMPLATES = Path(projector.report.__file__).parent / "templates"
 RECORDS = (
     Caution, Cell, Chart, Formula, Limit, Term, Heading, Placed, glance.Glance, glance.Fact, scope.Scope, assets.Assets,
     liabilities.Liabilities, scenarios.Scenarios, page.Method, page.Guide, page.Masthead, page.Page,
-    assumptions.Assumptions,    results.Results, calls.Calls, closing.Checks, closing.Reproduce, closing.Cautions, closing.Appendix,
+    assumptions.Assumptions, results.Results, calls.Calls, closing.Checks, closing.Reproduce,
+    closing.Cautions, closing.Appendix,
 )  # fmt: skip
 USED = {  # template -> name in it -> record
     "s01_glance": {"g": glance.Glance, "fact": glance.Fact},

@@ -10,9 +10,9 @@ from projector.report.sections import HEADINGS, REQUIREMENTS
 
 NOT_SAID = (
     r"pass(es|ed)?", r"fail(s|ed|ing|ure)?", "adequate", "sufficient", "safe", "green", "red", "deficien(t|cy)",
-    "required",    "recommended", "needed", "chance", "exact(ly)?", "perfect(ly)?", "true value", "conservative", "prudent",
-    "impossible",    "probable", "worst case", "in my opinion", "make good", "moderately adverse", "the model thinks", "issuer will",
-    "expected",
+    "required", "recommended", "needed", "chance", "exact(ly)?", "perfect(ly)?", "true value", "conservative",
+    "prudent", "impossible", "probable", "worst case", "in my opinion", "make good", "moderately adverse",
+    "the model thinks", "issuer will", "expected",
 )  # fmt: skip
 
 
@@ -66,7 +66,8 @@ def test_known_language_title_and_opening(tree, context):
     assert title == "Reserve adequacy report, Meridian Example Life, December 31, 2025"
     first = tree.all("section")[0].text()
     for said in ("Criterion (study file, fixed on 2026-01-20 before the results)",
-                 "the opinion is the appointed actuary's", context.glance.verdict, "Not calculated in this version"):  # fmt: skip
+                 "the opinion is the appointed actuary's", context.glance.verdict,
+                 "Not calculated in this version"):  # fmt: skip
         assert said in first
     assert "INVENTED DATA" in tree.all("header")[0].text()
     assert "$ million" in tree.all("header")[0].text()

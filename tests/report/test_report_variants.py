@@ -1,31 +1,43 @@
 """Other studies: one scenario, many, no callables, nothing called, small, short, hostile."""
 
 import re
+from functools import cache
 from pathlib import Path
 
 import page_reading
 import pytest
 from synthetic_results import HOSTILE, Options, build, without_rows
 
-from projector.report.context.page import page
+from projector.report.context.page import Page, page
 from projector.report.render import css_text, render_report, rendered
 
+
+@cache
+def made(options: Options) -> Page:
+    """The context of a study, built once for all tests that ask for it."""
+    return page(build(options), "projector run x")
+
+
+MANY = Options(securities=700, months=120)
+SIXTEEN = Options(scenarios=16, months=60)
+NONE_MET = Options(lift=-0.06, shortfall=True, months=360)
+NO_CALLABLE = Options(callable=False, calls=False, months=60)
 VARIANTS = {
     "one scenario and segment": Options(scenarios=1, segments=1),
-    "sixteen scenarios": Options(scenarios=16, months=120),
-    "nothing called": Options(calls=False, months=120),
-    "nothing callable": Options(callable=False, calls=False, months=120),
-    "many securities": Options(securities=700, months=240),
+    "sixteen scenarios": SIXTEEN,
+    "nothing called": Options(calls=False, months=60),
+    "nothing callable": NO_CALLABLE,
+    "many securities": MANY,
     "short": Options(months=12),
-    "none met": Options(lift=-0.06, shortfall=True),
-    "market": Options(criterion_measure="market_surplus", months=120),
+    "none met": NONE_MET,
+    "market": Options(criterion_measure="market_surplus", months=60),
     "no prior": Options(prior="", months=60),
 }
 
 
 @pytest.mark.parametrize("name", VARIANTS)
 def test_limit_other_studies_give_sound_pages(name):
-    tree = page_reading.parse(render_report(build(VARIANTS[name]), "projector run x"))
+    tree = page_reading.parse(rendered(made(VARIANTS[name])))
     ids = [node.attrs["id"] for node in tree.walk() if "id" in node.attrs]
     assert len(ids) == len(set(ids))
     seen = tree.text()
@@ -44,20 +56,20 @@ def test_known_small_study_is_in_thousands():
 
 
 def test_known_none_met_says_so_and_names_the_shortfall():
-    glance = page(build(Options(lift=-0.06, shortfall=True)), "x").glance
+    glance = made(NONE_MET).glance
     assert glance.verdict == "Criterion not met in any of 7 scenarios."
     assert glance.shortfall == "Assets and borrowing ran out in S7 Pop down from month 291 (2050-03) (table 9.6)."
 
 
 def test_known_all_met_names_the_smallest_margin():
-    glance = page(build(Options(lift=0.02)), "x").glance
+    glance = made(Options(lift=0.02, months=60)).glance
     assert glance.verdict.startswith("Criterion met in 7 of 7 scenarios. Smallest margin: $0.0 million in ")
     assert glance.verdict.endswith("close to the limit.")
     assert glance.segments == ""
 
 
 def test_limit_many_scenarios_name_seven_on_page_one_and_hold_all_in_the_table():
-    context = page(build(Options(scenarios=16, months=120)), "x")
+    context = made(SIXTEEN)
     assert len(context.glance.table.rows) == 7
     assert context.glance.shown_of.endswith("all 16 are in table 9.1.")
     assert len({row.name for row in context.results.surplus.rows}) == 16
@@ -65,28 +77,27 @@ def test_limit_many_scenarios_name_seven_on_page_one_and_hold_all_in_the_table()
 
 
 def test_limit_over_three_hundred_callables_are_drawn_by_year():
-    context = page(build(Options(securities=700, months=240)), "x")
+    context = made(MANY)
     assert "one row for each year of first call date" in context.calls.map.text
     assert len(context.calls.map.svg) < 150_000
 
 
 def test_limit_three_hundred_callables_stay_under_the_size():
-    results = build(Options(securities=360))
-    context = page(results, "x")
+    context = made(Options(securities=360))
     assert "one row a security" in context.calls.map.text
     assert len(context.calls.map.svg) < 150_000
     assert len(rendered(context).encode()) < 2_000_000
 
 
 def test_limit_a_long_list_of_securities_points_to_the_workbook():
-    context = page(build(Options(securities=700, months=240)), "x")
+    context = made(MANY)
     (table,) = [table for table in context.tables() if table.number == "A.2"]
     assert len(table.printed_rows) == 25
     assert table.rest.startswith("All 700 lines are in the workbook, sheet A.2; their par is $2,6")
 
 
 def test_limit_nothing_callable_is_said():
-    html = render_report(build(Options(callable=False, calls=False, months=120)), "x")
+    html = rendered(made(NO_CALLABLE))
     assert "Not applicable, because no callable security is held." in html
 
 
@@ -99,7 +110,7 @@ def test_limit_decisions_all_settled_by_bounds_are_said():
 
 def test_limit_empty_special_cases_identities_and_decisions_are_printed():
     html = render_report(without_rows(build(Options(months=60)), "special_cases", "decisions"), "x")
-    assert "None found" in html
+    assert "No case found" in html
 
 
 def test_limit_hostile_text_is_escaped_and_the_tree_stays_sound(hostile):

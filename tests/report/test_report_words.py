@@ -8,6 +8,7 @@ from projector.report.words import Outcome
 
 MONEY = Money("$", 1e6, "million")
 NEAR = "Smallest margin: $0.0 million in S2 Name, close to the limit."
+TWO = "S3 Name and S2 Name"
 ONE = "1 may be below the limit."
 
 
@@ -27,7 +28,7 @@ def outcomes(*values, limit=0.0):
         ((3, -1, -2), 0, "Criterion met in 1 of 3 scenarios; not met in S3 Name and S2 Name."),
         ((3, -1, -2, -3, -4), 0, "Criterion met in 1 of 5 scenarios; not met in S5 Name, S4 Name, S3 Name and 1 more."),
         ((3, -1, 2), 1, f"Criterion met: 2 of 3 scenarios at or above the limit, 1 below (S2 Name); {ONE}"),
-        ((3, -1, -2), 1, f"Criterion not met: 1 of 3 scenarios at or above the limit, 2 below (S3 Name and S2 Name); {ONE}"),
+        ((3, -1, -2), 1, f"Criterion not met: 1 of 3 scenarios at or above the limit, 2 below ({TWO}); {ONE}"),
     ],
 )  # fmt: skip
 def test_known_verdicts(values, allowed, sentence):

@@ -72,6 +72,58 @@ def straight_values(
 
 
 @kernel
+def first_and_last(
+    month: int, offset: int, step: int, steps: int, maturity: int, price: Floats
+) -> tuple[int, int]:  # fmt: skip
+    """First and last step with a right before maturity, 0 and 0 where there is none."""
+    first = 0
+    last = 0
+    for k in range(1, steps):
+        t = month + offset + (k - 1) * step
+        if t < maturity and price[t] < np.inf:
+            if first == 0:
+                first = k
+            last = k
+    return first, last
+
+
+@kernel
+def fill_lane(
+    lane: int, month: int, offset: int, step: int, begin: int, steps: int, maturity: int, path: int, flow: Floats,
+    price: Floats, cost: float, issuer_spread: float, holder_spread: float, discount: Floats, ratio: Floats,
+    holder_ratio: Floats, flows: Floats, prices: Floats, bars: Floats, lead: Floats,
+) -> None:  # fmt: skip
+    """Lays one job out in its lane; what comes up to step `begin` is collapsed into the lead, by the same operations
+    in the same order as if it stood in the tables, so that a lane's bits do not depend on its neighbours' rights.
+    """
+    decay_first, decay = exp_one(-issuer_spread * offset / 12.0), exp_one(-issuer_spread * step / 12.0)
+    held_first, held = exp_one(-holder_spread * offset / 12.0), exp_one(-holder_spread * step / 12.0)
+    before = 1.0
+    d, paid, e, held_paid = 1.0, 0.0, 1.0, 0.0
+    for k in range(1, steps + 1):
+        t = month + offset + (k - 1) * step
+        here = discount[t - month, path]
+        forward = here / before
+        before = here
+        a = forward * (decay_first if k == 1 else decay)
+        b = forward * (held_first if k == 1 else held)
+        if k <= begin:
+            d = d * a
+            paid += flow[t] * d
+            e = e * b
+            held_paid += flow[t] * e
+            continue
+        n = k - begin
+        ratio[n - 1, lane] = a
+        holder_ratio[n - 1, lane] = b
+        flows[n, lane] = flow[t]
+        if t < maturity and price[t] < np.inf:
+            prices[n, lane] = price[t]
+            bars[n, lane] = price[t] + cost
+    lead[0, lane], lead[1, lane], lead[2, lane], lead[3, lane] = d, paid, e, held_paid
+
+
+@kernel
 def run_jobs(
     half_band: int, lo: Integers, hi: Integers, conv: Floats, row: int, band_start: Integers, weights: Floats,
     growth: Floats, straight_conv: Floats, first_weights: Floats, first_local: Flags, local_x: Floats,
@@ -87,47 +139,34 @@ def run_jobs(
     jobs = job_unit.shape[0]
     for start in range(0, jobs, LANES):
         count = min(LANES, jobs - start)
-        top = 0
-        for lane in range(count):
-            u = job_unit[start + lane]
-            top = max(top, (maturity[u] - month - offset) // step + 1)
         steps = np.empty(LANES, dtype=np.int64)
         first = np.zeros(LANES, dtype=np.int64)
         last = np.zeros(LANES, dtype=np.int64)
-        ratio = np.ones((top + 1, LANES))
-        holder_ratio = np.ones((top + 1, LANES))
-        flows = np.zeros((top + 1, LANES))
-        prices = np.full((top + 1, LANES), np.inf)
-        bars = np.full((top + 1, LANES), np.inf)
+        top = 0
+        begin = 1 << 30
         for lane in range(LANES):
-            job = start + min(lane, count - 1)  # a short batch is filled with copies of its last job
-            u, p = job_unit[job], job_path[job]
+            u = job_unit[start + min(lane, count - 1)]  # a short batch is filled with copies of its last job
             steps[lane] = (maturity[u] - month - offset) // step + 1
-            decay_first = exp_one(-issuer_spread[job] * offset / 12.0)
-            decay = exp_one(-issuer_spread[job] * step / 12.0)
-            held_first = exp_one(-holder_spread[job] * offset / 12.0)
-            held = exp_one(-holder_spread[job] * step / 12.0)
-            before = 1.0
-            for k in range(1, steps[lane] + 1):
-                t = month + offset + (k - 1) * step
-                here = discount[t - month, p]
-                forward = here / before
-                before = here
-                ratio[k - 1, lane] = forward * (decay_first if k == 1 else decay)
-                holder_ratio[k - 1, lane] = forward * (held_first if k == 1 else held)
-                flows[k, lane] = flow[u, t]
-                if t < maturity[u] and price[u, t] < np.inf:
-                    prices[k, lane] = price[u, t]
-                    bars[k, lane] = price[u, t] + cost
-                    if first[lane] == 0:
-                        first[lane] = k
-                    last[lane] = k
+            first[lane], last[lane] = first_and_last(month, offset, step, steps[lane], maturity[u], price[u])
+            top = max(top, steps[lane])
+            begin = min(begin, max(first[lane] if first[lane] > 0 else steps[lane], 1) - 1)
+        rows = top - begin + 1
+        ratio, holder_ratio = np.ones((rows, LANES)), np.ones((rows, LANES))
+        flows, lead = np.zeros((rows, LANES)), np.empty((4, LANES))
+        prices, bars = np.full((rows, LANES), np.inf), np.full((rows, LANES), np.inf)
+        for lane in range(LANES):
+            job = start + min(lane, count - 1)
+            fill_lane(
+                lane, month, offset, step, begin, steps[lane], maturity[job_unit[job]], job_path[job],
+                flow[job_unit[job]], price[job_unit[job]], cost, issuer_spread[job], holder_spread[job], discount,
+                ratio, holder_ratio, flows, prices, bars, lead,
+            )  # fmt: skip
         cost_out = np.empty(LANES)
         value_out = np.empty(LANES)
         solve_lanes(
             half_band, lo, hi, conv, row, band_start, weights, growth, straight_conv, first_weights, first_local,
-            local_x, local_weights, steps, first, last, ratio, holder_ratio, flows, prices, bars, both, cost_out,
-            value_out,
+            local_x, local_weights, begin, lead, steps, first, last, ratio, holder_ratio, flows, prices, bars, both,
+            cost_out, value_out,
         )  # fmt: skip
         for lane in range(count):
             issuer_cost[start + lane] = cost_out[lane]

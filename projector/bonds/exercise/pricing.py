@@ -52,6 +52,11 @@ def operator_arguments(op: Operator) -> tuple[object, ...]:
     )  # fmt: skip
 
 
+def no_lead(lanes: int) -> Array:
+    """Nothing collapsed before the first row: discount one, nothing paid, for issuer and holder."""
+    return np.repeat(np.array([[1.0], [0.0], [1.0], [0.0]]), lanes, axis=1)
+
+
 def solve(op: Operator, problem: Problem, both: bool = True) -> tuple[Array, Array]:
     """Issuer's cost and holder's value today, ex coupon. [per 100], shape (solve,)
 
@@ -65,12 +70,12 @@ def solve(op: Operator, problem: Problem, both: bool = True) -> tuple[Array, Arr
     out_issuer, out_holder = np.empty(lanes), np.empty(lanes)
     if count == lanes:  # already one full batch
         given = (problem.ratio, problem.holder_ratio, problem.flow, problem.price, problem.bar)
-        solve_lanes(*arguments, problem.steps, first, last, *given, both, issuer, holder)
+        solve_lanes(*arguments, 0, no_lead(lanes), problem.steps, first, last, *given, both, issuer, holder)
         return issuer, holder
     for start in range(0, count, lanes):
         take = np.minimum(np.arange(start, start + lanes), count - 1)
         solve_lanes(
-            *arguments, problem.steps[take], first[take], last[take],
+            *arguments, 0, no_lead(lanes), problem.steps[take], first[take], last[take],
             problem.ratio[:, take], problem.holder_ratio[:, take], problem.flow[:, take], problem.price[:, take],
             problem.bar[:, take], both, out_issuer, out_holder,
         )  # fmt: skip

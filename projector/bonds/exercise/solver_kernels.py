@@ -133,16 +133,16 @@ def kink_corrections(
 
 @kernel
 def straight_columns(
-    k: int, lane: int, lanes: int, steps: int, flow: Floats, ratio: Floats, straight_conv: Floats, growth: Floats,
-    row: int, lo: int, hi: int, base: int, column: Floats,
+    k: int, begin: int, lane: int, lanes: int, steps: int, flow: Floats, ratio: Floats, straight_conv: Floats,
+    growth: Floats, row: int, lo: int, hi: int, base: int, column: Floats,
 ) -> None:  # fmt: skip
     """Value at step k of the payments after it, on every node of one lane: closed form, no right is left."""
     for i in range(lo, hi + 1):
         column[(i - base) * lanes + lane] = 0.0
     forward = 1.0
     for j in range(k + 1, steps + 1):
-        forward = forward * ratio[j - 1, lane]
-        weight = flow[j, lane] * forward * straight_conv[k, j - k]
+        forward = forward * ratio[j - 1 - begin, lane]
+        weight = flow[j - begin, lane] * forward * straight_conv[k, j - k]
         if weight != 0.0:
             for i in range(lo, hi + 1):
                 column[(i - base) * lanes + lane] += weight * growth[i - row, j - k]
@@ -359,15 +359,16 @@ def first_sum_local(local_weights: Floats, bar: float, price: float, local: Floa
 
 @kernel
 def finish(
-    lane: int, steps: Integers, first: Integers, ratio: Floats, flow: Floats, touched: bool, value: Floats
+    lane: int, begin: int, lead_discount: float, lead_paid: float, steps: Integers, first: Integers, ratio: Floats,
+    flow: Floats, touched: bool, value: Floats,
 ) -> None:  # fmt: skip
     """Discounts the first sum to today and adds the payments up to it; the plain bond where no right was ever used."""
-    discount = 1.0
-    total = 0.0
+    discount = lead_discount
+    total = lead_paid
     stop = first[lane] if touched else steps[lane]
-    for k in range(1, stop + 1):
-        discount = discount * ratio[k - 1, lane]
-        total += flow[k, lane] * discount
+    for k in range(begin + 1, stop + 1):
+        discount = discount * ratio[k - 1 - begin, lane]
+        total += flow[k - begin, lane] * discount
     value[lane] = total + discount * value[lane] if touched else total
 
 
@@ -375,16 +376,19 @@ def finish(
 def solve_lanes(
     half_band: int, lo: Integers, hi: Integers, conv: Floats, row: int, band_start: Integers, weights: Floats,
     growth: Floats, straight_conv: Floats, first_weights: Floats, first_local: Flags, local_x: Floats,
-    local_weights: Floats, steps: Integers, first: Integers, last: Integers, ratio: Floats, holder_ratio: Floats,
-    flow: Floats, price: Floats, bar: Floats, both: bool, issuer_cost: Floats, holder_value: Floats,
+    local_weights: Floats, begin: int, lead: Floats, steps: Integers, first: Integers, last: Integers, ratio: Floats,
+    holder_ratio: Floats, flow: Floats, price: Floats, bar: Floats, both: bool, issuer_cost: Floats,
+    holder_value: Floats,
 ) -> None:  # fmt: skip
     """Issuer's cost and holder's value today of up to sixteen securities per 100 of par (C4).
 
     steps, first, last  [lane] last payment, first and last step with a right (first = 0: no right)
-    ratio               [k, lane] P0(t_(k+1)) / P0(t_k) on the issuer's curve, k = 0 .. steps - 1
+    begin, lead         rows of the tables below start at step `begin`, before every lane's first right; lead [4, lane]:
+                        the issuer's discount to it and value of payments up to it, then the holder's (1, 0, 1, 0 at 0)
+    ratio               [k - begin, lane] P0(t_(k+1)) / P0(t_k) on the issuer's curve
     holder_ratio        the same on the curve with the valuation spread
-    flow                [k, lane] promised payment at step k, redemption included
-    price, bar          [k, lane] dirty price paid at a call, and with the issuer's cost; inf where no right is live
+    flow                [k - begin, lane] promised payment at step k, redemption included
+    price, bar          [k - begin, lane] dirty price paid at a call, and with the issuer's cost; inf: no right is live
     both                also run the holder's recursion (else holder_value is the issuer's cost)
     """
     lanes = steps.shape[0]
@@ -416,24 +420,26 @@ def solve_lanes(
         if k < top:
             for lane in range(lanes):
                 live = first[lane] > 0 and k >= first[lane] and k < last[lane]
-                factor[lane] = ratio[k, lane] * conv[k] if live else 1.0
-                factor_h[lane] = holder_ratio[k, lane] * conv[k] if live else 1.0
+                factor[lane] = ratio[k - begin, lane] * conv[k] if live else 1.0
+                factor_h[lane] = holder_ratio[k - begin, lane] * conv[k] if live else 1.0
             step_back(a, b, base, row, lanes, band, band_start, weights, v, factor, c)
             if both:
                 step_back(a, b, base, row, lanes, band, band_start, weights, w, factor_h, h)
         for lane in range(lanes):
             live = first[lane] > 0 and k >= first[lane] and k <= last[lane]
-            bars[lane] = bar[k, lane] if live else np.inf
-            prices[lane] = price[k, lane] if live else np.inf
+            bars[lane] = bar[k - begin, lane] if live else np.inf
+            prices[lane] = price[k - begin, lane] if live else np.inf
             if not live:
                 for i in range(a - base, b - base + 1):
                     c[i * lanes + lane] = 1.0
                     h[i * lanes + lane] = 1.0
             elif k == last[lane]:
                 n = steps[lane]
-                straight_columns(k, lane, lanes, n, flow, ratio, straight_conv, growth, row, a, b, base, c)
+                straight_columns(k, begin, lane, lanes, n, flow, ratio, straight_conv, growth, row, a, b, base, c)
                 if both:
-                    straight_columns(k, lane, lanes, n, flow, holder_ratio, straight_conv, growth, row, a, b, base, h)
+                    straight_columns(
+                        k, begin, lane, lanes, n, flow, holder_ratio, straight_conv, growth, row, a, b, base, h
+                    )
         exercise(a, b, base, lanes, bars, prices, both, c, h, v, w, kink, flat_low, flat_high)
         for lane in range(lanes):
             touched[lane] = touched[lane] or kink[lane] >= a
@@ -456,14 +462,16 @@ def solve_lanes(
         if k > bottom:
             for i in range(np.uint64(a - reach - base), np.uint64(b + reach + 1 - base)):
                 for lane in range(np.uint64(lanes)):
-                    v[i * np.uint64(lanes) + lane] += flow[k, lane]
+                    v[i * np.uint64(lanes) + lane] += flow[k - begin, lane]
             if both:
                 for i in range(np.uint64(a - reach - base), np.uint64(b + reach + 1 - base)):
                     for lane in range(np.uint64(lanes)):
-                        w[i * np.uint64(lanes) + lane] += flow[k, lane]
+                        w[i * np.uint64(lanes) + lane] += flow[k - begin, lane]
     for lane in range(lanes):
-        finish(lane, steps, first, ratio, flow, touched[lane], issuer_cost)
+        finish(lane, begin, lead[0, lane], lead[1, lane], steps, first, ratio, flow, touched[lane], issuer_cost)
         if both:
-            finish(lane, steps, first, holder_ratio, flow, touched[lane], holder_value)
+            finish(
+                lane, begin, lead[2, lane], lead[3, lane], steps, first, holder_ratio, flow, touched[lane], holder_value
+            )
         else:
             holder_value[lane] = issuer_cost[lane]

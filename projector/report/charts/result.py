@@ -11,7 +11,7 @@ from projector.report.charts import canvas
 from projector.report.charts.canvas import BLUE, DEEP_VERMILLION, INK, MARK_GREY, VERMILLION
 from projector.report.numbers import MINUS, fixed
 
-ROW = 0.17
+ROW = 0.16
 
 
 def draw(names: Sequence[str], left: Sequence[float], right: Sequence[float], heads: tuple[str, str]) -> str:

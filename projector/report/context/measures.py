@@ -78,7 +78,7 @@ def _three(reading: Reading, numbers: tuple[str, str, str], pairs: list[tuple[st
         _table(reading, numbers[1], "Gaps and returns by scenario and segment", GAPS, pairs,
                f"{unit}; rates annual effective in %, IRR gap in percentage points. Run-off of the starting holdings, "
                "no sale and no purchase, except the horizon return.",
-               "without exactly one root on each side there is no gap", 8),
+               "there is a gap only where each side has one root", 8),
         _table(reading, numbers[2], "Cash, sales and shortfall by scenario and segment", CASH, pairs,
                f"{unit}; a gain is proceeds less statement value, positive = gain. Largest = at a month end.", "", 8),
     )  # fmt: skip

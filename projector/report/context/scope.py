@@ -117,9 +117,9 @@ def _defects(reading: Reading) -> Table:
             cells.said(str(row["names"]), f"{key}/names"), cells.word(str(row["treatment"]), f"{key}/treatment"),
         )))  # fmt: skip
     if not rows:
-        none = "special_cases/none"
-        rows = [Row(name="No case found", cells=(cells.count(0, none), reading.cell(0.0, none), cells.quiet("none", none),
-                                              cells.quiet("none", none)))]  # fmt: skip
+        quiet = cells.quiet("none", "special_cases/none")
+        zero = cells.count(0, "special_cases/none/count"), reading.cell(0.0, "special_cases/none/par")
+        rows = [Row(name="No case found", cells=(*zero, quiet, quiet))]
     return Table(
         number="3.3", caption="Special cases and how each was treated",
         basis=f"Par in {reading.money.unit} at the valuation date; at most {fixed(20)} securities are named.",
