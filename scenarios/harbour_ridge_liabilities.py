@@ -43,7 +43,7 @@ WITHDRAWAL = 0.025
 EXPENSE_PER_CONTRACT, INFLATION, COMMISSION = 95.0, 0.02, 0.0010
 
 PAYOUT_RESERVE, PAYOUT_RATE, PAYOUT_DEATH, PAYOUT_AGEING = 400e6, 0.0385, 0.018, 0.0067
-GUARANTEED_RATE, GUARANTEED_CONTRACTS = 0.0310, 28  # contracts mature at quarter ends over seven years
+GUARANTEED_RATE, GUARANTEED_CONTRACTS = 0.0290, 28  # contracts mature at quarter ends over seven years
 
 
 def lapse_rate(gap: float) -> float:

@@ -249,19 +249,21 @@ def balanced(
 ) -> tuple[list[Lot], dict[str, float]]:
     """Cash in whole cents that makes starting assets the reserve, at most half a cent above it and never below.
 
-    Accrued interest has fractions of a cent: the segment's first lot grows by a thousand of par until they fit, so that
-    surplus at the valuation date is nothing and not a fraction of a cent below.
+    Accrued interest has fractions of a cent: lots of the segment grow by a thousand of par, one after the other, until
+    they fit, so that surplus at the valuation date is nothing and not a fraction of a cent below.
     """
     out: list[Lot] = []
     cash = {}
     for name in SEGMENTS:
         mine = [lot for lot in lots if lot.segment == name]
-        while True:
+        for i in range(len(mine)):
             gap = reserves[name] - other_assets(mine, accrued)
             cash[name] = math.ceil(gap * 100.0) / 100.0
             if 0.0005 <= cash[name] - gap <= 0.0045:
                 break
-            mine[0] = replace(mine[0], size=mine[0].size + 1000.0)
+            mine[i] = replace(mine[i], size=mine[i].size + 1000.0)
+        else:
+            raise ValueError(f"no cash in whole cents balances {name}")
         if not 0.002 <= cash[name] / reserves[name] <= 0.01:
             raise ValueError(f"cash of {name} is not a small part of its reserve: {cash[name]:.2f}")
         out += mine

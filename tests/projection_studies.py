@@ -132,7 +132,9 @@ def busy_study(folder: Path) -> SmallStudy:
     """
     s = SmallStudy(folder)
     s.replace("cash = 1_000.5\n", 'cash = 60000.0\n[[segments]]\nname = "life"\ntitle = "Life"\ncash = 25000.0\n')
-    s.replace('form = "net_annual_cost"\nrecovery_lag_months = 0', 'form = "rate_recovery_lag"\nrecovery_lag_months = 5')
+    s.replace(
+        'form = "net_annual_cost"\nrecovery_lag_months = 0', 'form = "rate_recovery_lag"\nrecovery_lag_months = 5'
+    )
     s.tables["default_costs"] = [
         {"rating": "A", "annual_rate": "0.004", "recovery": "0.45"},
         {"rating": "BBB", "annual_rate": "0.012", "recovery": "0.3"},
@@ -165,13 +167,22 @@ def busy_study(folder: Path) -> SmallStudy:
     ]
     months, shapes = range(1, MONTHS + 1), range(MONTHS + 1)
     rows = stream_rows("annuities", "payout", "all", "annuity_payment", dict.fromkeys(months, 90_000.125))
-    rows += stream_rows("annuities", "payout", "all", "reserve_statutory", {m: 2_450_000.0 - 75_000.0 * m for m in shapes})
+    rows += stream_rows(
+        "annuities", "payout", "all", "reserve_statutory", {m: 2_450_000.0 - 75_000.0 * m for m in shapes}
+    )
     for i, scenario in enumerate(SCENARIOS):
-        rows += stream_rows("life", "term", scenario, "premium", {m: 9_000.0 + 100.0 * i for m in months})
-        rows += stream_rows("life", "term", scenario, "death_benefit", {m: 24_000.0 + 350.0 * i + 55.5 * m for m in months})
-        rows += stream_rows("life", "term", scenario, "reserve_statutory", {m: 710_000.0 - (9_000.0 + 90 * i) * m for m in shapes})
+        rows += stream_rows("life", "term", scenario, "premium", dict.fromkeys(months, 9_000.0 + 100.0 * i))
+        rows += stream_rows(
+            "life", "term", scenario, "death_benefit", {m: 24_000.0 + 350.0 * i + 55.5 * m for m in months}
+        )
+        rows += stream_rows(
+            "life", "term", scenario, "reserve_statutory", {m: 710_000.0 - (9_000.0 + 90 * i) * m for m in shapes}
+        )
     s.tables["liability_streams"] = rows
     s.tables["control_totals"] = totals(s.tables, BUSY_SEGMENTS)
-    s.replace('rate_insensitive_blocks = ["payout"]', f'scenario_set_digest = "{"0" * 64}"\nrate_insensitive_blocks = ["payout"]')
+    s.replace(
+        'rate_insensitive_blocks = ["payout"]',
+        f'scenario_set_digest = "{"0" * 64}"\nrate_insensitive_blocks = ["payout"]',
+    )
     digest = build_paths(read_study(s.write())[0]).digest()
     return s.replace("0" * 64, digest)

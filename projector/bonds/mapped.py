@@ -8,6 +8,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from datetime import date
+from functools import cached_property
 from typing import Any
 
 import numpy as np
@@ -48,6 +49,19 @@ class MappedBonds:
     def last_month(self) -> int:
         return self.coupon.shape[1] - 1
 
+    @cached_property
+    def right_ends(self) -> tuple[IntArray, IntArray]:
+        """First and last month with a right, 0 and 0 where there is none. shape (security,) each"""
+        live = np.isfinite(self.clean_price)
+        has = live.any(axis=1)
+        last = live.shape[1] - 1 - live[:, ::-1].argmax(axis=1)
+        return np.where(has, live.argmax(axis=1), 0), np.where(has, last, 0)
+
+    def rights_left(self, month: int) -> IntArray:
+        """Months from the next right to the last, at least 0: the length of a solve. shape (security,)"""
+        first, last = self.right_ends
+        return np.maximum(last - np.maximum(first, month + 1), 0)
+
     def with_rights(self) -> npt.NDArray[np.bool_]:
         """Which securities have any right at a stated price after the valuation date."""
         return np.asarray(np.isfinite(self.clean_price).any(axis=1))
@@ -85,23 +99,23 @@ def payments(row: dict[str, Any], valuation: date, coupon: Array, accrued: Array
     maturity = month_of(row["maturity_date"], valuation)
     if frequency == 0:
         return 12
-    period = 12 // frequency
-    first_date = row["first_coupon_date"]
-    first = month_of(first_date, valuation) if isinstance(first_date, date) else None
-    pay = maturity
-    while pay > 0:
-        begins = pay - period
-        amount = 100.0 * rate / frequency
-        if first is not None and pay == first:
-            amount = dated(row).coupons[0].amount
-            begins = month_of(row["issue_date"], valuation)
-        coupon[pay] = amount
-        for m in range(max(begins, 0), pay):
-            accrued[m] = amount * (m - begins) / (pay - begins)
-        if first is not None and pay <= first:
-            break
-        pay -= period
+    period, amount = 12 // frequency, 100.0 * rate / frequency
+    coupon[np.arange(maturity, 0, -period)] = amount
+    months = np.arange(maturity)
+    accrued[:maturity] = amount * ((months - maturity) % period) / period
+    first = row["first_coupon_date"]
+    if first is not None and month_of(first, valuation) > 0:
+        first_payment(row, valuation, month_of(first, valuation), coupon, accrued)
     return period
+
+
+def first_payment(row: dict[str, Any], valuation: date, pay: int, coupon: Array, accrued: Array) -> None:
+    """Puts an odd first coupon still ahead in place of the regular ones up to its month."""
+    amount, begins = dated(row).coupons[0].amount, month_of(row["issue_date"], valuation)
+    coupon[:pay] = 0.0
+    coupon[pay] = amount
+    for m in range(max(begins, 0), pay):
+        accrued[m] = amount * (m - begins) / (pay - begins)
 
 
 def right_months(right: dict[str, Any], row: dict[str, Any], valuation: date) -> list[int]:

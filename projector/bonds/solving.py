@@ -73,12 +73,17 @@ class MonthSolver:
             return self.deterministic(jobs, discount, refunding, held)
         steps = int((self.bonds.maturity[jobs.units].max() - month - jobs.offset) // jobs.step + 1)
         op = operator_for(self.model.mean_reversion, self.model.normal_volatility, jobs.step, jobs.offset, steps, grid)
-        issuer, holder = np.empty(jobs.units.size), np.empty(jobs.units.size)
+        # lanes of one batch work as long as its longest: jobs with like spans of rights go together
+        order = np.argsort(self.bonds.rights_left(month)[jobs.units], kind="stable")
+        units, paths = jobs.units[order], jobs.paths[order]
+        issuer, holder = np.empty(units.size), np.empty(units.size)
         run_jobs(
-            *operator_arguments(op), month, jobs.offset, jobs.step, jobs.units, jobs.paths, self.bonds.maturity,
-            self.bonds.flow, self.bonds.dirty_price, self.model.cost, refunding, held, discount, both, issuer, holder,
+            *operator_arguments(op), month, jobs.offset, jobs.step, units, paths, self.bonds.maturity, self.bonds.flow,
+            self.bonds.dirty_price, self.model.cost, refunding[order], held[order], discount, both, issuer, holder,
         )  # fmt: skip
-        return issuer, holder
+        back = np.empty_like(order)
+        back[order] = np.arange(order.size)
+        return issuer[back], holder[back]
 
     def deterministic(self, jobs: Jobs, discount: Array, refunding: Array, held: Array) -> tuple[Array, Array]:
         """The zero-volatility limit: the issuer takes the cheapest date on the forward curve, the later of equals."""

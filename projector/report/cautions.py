@@ -18,7 +18,7 @@ class Caution:
     said: str = field(metadata=told("the study's own words, printed as such"))
 
 
-def cautions(study: Study, valued_on: str, informed_on: str, defects: str) -> tuple[Caution, ...]:
+def cautions(study: Study, valued_on: str, informed_on: str, defects: str, segment_table: str) -> tuple[Caution, ...]:
     """All twenty, in a fixed order; what the study does not state is said to be missing."""
     texts = study.texts
     items = (
@@ -54,8 +54,9 @@ def cautions(study: Study, valued_on: str, informed_on: str, defects: str) -> tu
                         "assumed; the actuary must say so.", ""),
         ("Tax", "Tax is not modelled: all results are before tax. The actuary must judge the effect of tax law as "
                 "enacted.", ""),
-        ("Aggregation", "Results of all segments together can hide a segment below zero. Table 9.1 lists every "
-                        "segment by scenario; offsets between segments need their own ground.", ""),
+        ("Aggregation", "Results of all segments together can hide a segment below zero. Table "
+                        f"{segment_table} lists every segment by scenario; offsets between segments need their own "
+                        "ground.", ""),
         ("Responsibility", "The responsible actuary is named by the study. The program gives numbers, never an "
                            "opinion; the wording, the category and the signature of the opinion are the "
                            "actuary's.", study.responsible_actuary),

@@ -70,12 +70,14 @@ class Money:
         return f"{self.symbol.strip()} {self.word}"
 
     def text(self, amount: float) -> str:
-        """An amount in the report's unit, without the unit."""
-        return fixed(amount / self.scale, 1)
+        """An amount in the report's unit, without the unit; [n/a] where the results hold none."""
+        return fixed(amount / self.scale, 1) if math.isfinite(amount) else NOT_AVAILABLE
 
     def phrase(self, amount: float) -> str:
         """An amount as running text writes it: $13.9 million, −$13.9 million."""
         text = self.text(amount)
+        if text == NOT_AVAILABLE:
+            return text
         sign, bare = (MINUS, text[1:]) if text.startswith(MINUS) else ("", text)
         return f"{sign}{self.symbol}{bare} {self.word}"
 
@@ -85,7 +87,7 @@ class Money:
 
     def is_zero(self, amount: float) -> bool:
         """Whether the amount prints as 0.0."""
-        return as_number(self.text(amount)) == 0
+        return math.isfinite(amount) and as_number(self.text(amount)) == 0
 
 
 def money_for(currency: str, reserves: float) -> Money:

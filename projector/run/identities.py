@@ -12,7 +12,6 @@ import numpy as np
 import numpy.typing as npt
 import pandas as pd
 
-from projector.bonds.mapped import dated, plain_records
 from projector.run.block import BlockResult
 from projector.run.prepare import Prepared
 from projector.study.errors import IdentityFailed
@@ -121,9 +120,7 @@ def coupon_sums(prepared: Prepared) -> Sums:
     """I5: what each security pays on mapped months is what its dated schedule promises after the valuation date."""
     check = Sums("I5", "coupons over life: mapped months = dated schedule, per 100 of par")
     valuation = prepared.study.valuation_date
-    rows = {r["security_id"]: r for r in plain_records(prepared.study.tables.securities)}
-    dates = [dated(rows[s]).coupons for s in prepared.bonds.ids]
-    promised = np.array([sum(c.amount for c in coupons if c.payment > valuation) for coupons in dates])
+    promised = np.array([sum(c.amount for c in b.coupons if c.payment > valuation) for b in prepared.dated_bonds])
     check.add([prepared.bonds.coupon.sum(axis=1)[None, :], -promised[None, :]], (prepared.bonds.ids,), 0)
     return check
 

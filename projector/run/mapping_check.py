@@ -9,7 +9,6 @@ import numpy.typing as npt
 import pandas as pd
 from scipy.optimize import brentq
 
-from projector.bonds.mapped import dated, plain_records
 from projector.bonds.yields import accrued_interest
 from projector.run.prepare import Prepared, start_discount
 
@@ -40,10 +39,8 @@ def mapping_differences(prepared: Prepared) -> pd.DataFrame:
     bonds, valuation = prepared.bonds, prepared.study.valuation_date
     discount = np.log(start_discount(prepared.paths, bonds.last_month + 2)[:, 0])
     months = np.arange(discount.size) / 12.0
-    rows = {r["security_id"]: r for r in plain_records(prepared.study.tables.securities)}
     out = []
-    for u, name in enumerate(bonds.ids):
-        bond = dated(rows[name])
+    for u, (name, bond) in enumerate(zip(bonds.ids, prepared.dated_bonds)):
         ahead = [(c.payment, c.amount) for c in bond.coupons if c.payment > valuation] + [(bond.maturity, 100.0)]
         times = np.array([(day - valuation).days / DAYS_A_YEAR for day, _ in ahead])
         amounts = np.array([amount for _, amount in ahead])

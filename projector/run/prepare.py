@@ -3,6 +3,8 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cached_property
+from typing import Any
 
 import numpy as np
 import numpy.typing as npt
@@ -18,7 +20,8 @@ from projector.balance.month import Strategy
 from projector.balance.purchases import Mix
 from projector.bonds.calibration import Calibrated, PriceToday, calibrate
 from projector.bonds.call_rules import CallRule, OptimalWithCost
-from projector.bonds.mapped import MappedBonds, map_bonds
+from projector.bonds.mapped import MappedBonds, dated, map_bonds, plain_records
+from projector.bonds.schedule import DatedBond
 from projector.bonds.solving import ExerciseModel, MonthSolver
 from projector.bonds.spreads import BP, ClassSpreads, SpreadPath, class_spread_table, residual_fade
 from projector.liabilities.blocks import LiabilityBlock
@@ -49,6 +52,16 @@ class Prepared:
     terms: DefaultTerms
     strategy: Strategy
     blocks: tuple[LiabilityBlock, ...]
+
+    @cached_property
+    def security_rows(self) -> dict[str, dict[str, Any]]:
+        """Rows of the securities table by identifier, dates as `datetime.date`."""
+        return {r["security_id"]: r for r in plain_records(self.study.tables.securities)}
+
+    @cached_property
+    def dated_bonds(self) -> tuple[DatedBond, ...]:
+        """Every security on its exact dates, in the order of the mapped ones."""
+        return tuple(dated(self.security_rows[name]) for name in self.bonds.ids)
 
     @property
     def months(self) -> int:

@@ -8,7 +8,8 @@ from typing import Any
 import numpy as np
 import pandas as pd
 
-from projector.bonds.mapped import dated, plain_records
+from projector.bonds.mapped import plain_records
+from projector.bonds.schedule import DatedBond
 from projector.bonds.worst import yield_to_worst
 from projector.bonds.yields import Redemption, bond_equivalent
 from projector.run.call_table import bond_equivalent_of_growth
@@ -43,11 +44,10 @@ def street_redemptions(row: dict[str, Any], rights: list[dict[str, Any]], settle
     return [Redemption(day, k) for day, k in sorted(price.items()) if after <= day < row["maturity_date"]]
 
 
-def street_yield(row: dict[str, Any], rights: list[dict[str, Any]], settlement: date, price: float) -> float:
+def street_yield(bond: DatedBond, redemptions: list[Redemption], settlement: date, price: float) -> float:
     """Yield to worst at a clean price on exact dates, bond-equivalent. [1/year]; nan where no yield gives the price"""
-    bond = dated(row)
     try:
-        found = yield_to_worst(bond, settlement, price, street_redemptions(row, rights, settlement), "street")
+        found = yield_to_worst(bond, settlement, price, redemptions, "street")
     except ValueError:
         return float("nan")
     return bond_equivalent(found.annual_yield, bond.periods_a_year)
@@ -56,7 +56,7 @@ def street_yield(row: dict[str, Any], rights: list[dict[str, Any]], settlement: 
 def securities_frame(prepared: Prepared) -> pd.DataFrame:
     """The securities table in the order of their identifiers."""
     study, bonds, fitted = prepared.study, prepared.bonds, prepared.calibrated
-    rows = {r["security_id"]: r for r in plain_records(study.tables.securities)}
+    rows = prepared.security_rows
     rights: dict[str, list[dict[str, Any]]] = {}
     for r in plain_records(study.tables.call_rights):
         rights.setdefault(r["security_id"], []).append(r)
@@ -88,7 +88,12 @@ def securities_frame(prepared: Prepared) -> pd.DataFrame:
                 "spread_from": fitted.origin[u],
                 "book_yield": float(sums["yield"][u]),
                 "worst_date": month_end(int(sums["worst"][u]), study.valuation_date).isoformat(),
-                "yield_to_worst": street_yield(row, mine, study.valuation_date, clean),
+                "yield_to_worst": street_yield(
+                    prepared.dated_bonds[u],
+                    street_redemptions(row, mine, study.valuation_date),
+                    study.valuation_date,
+                    clean,
+                ),
                 "make_whole_spread_bp": make_whole[0] if make_whole else np.nan,
             }
         )

@@ -74,6 +74,8 @@ def test_limit_many_scenarios_name_seven_on_page_one_and_hold_all_in_the_table()
     assert context.glance.shown_of.endswith("all 16 are in table 9.1.")
     assert len({row.name for row in context.results.surplus.rows}) == 16
     assert "A.4" in {table.number for table in context.tables()}  # segments follow in the appendix
+    assert context.glance.segments.endswith("(table A.4).")
+    assert "Table A.4 lists every segment" in context.cautions.items[15].text
 
 
 def test_limit_over_three_hundred_callables_are_drawn_by_year():
@@ -157,3 +159,13 @@ def test_order_no_file_of_the_report_reads_the_clock_or_the_machine():
             "__version__",
         ):
             assert word not in text, path.name
+
+
+def test_limit_a_measure_the_results_do_not_hold_is_printed_as_not_available_with_its_reason():
+    results = build(Options(months=60))
+    results.measures.loc[results.measures["scenario"] == "S2", ["pv_ending_earned_rate", "yield_given_up"]] = float(
+        "nan"
+    )
+    seen = page_reading.parse(render_report(results, "x")).text()
+    assert "[n/a]: the results hold no such figure for the scenario." in seen
+    assert re.findall(r"\bnan\b", seen) == []

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import io
+import math
 import warnings
 from collections.abc import Iterator, Sequence
 from contextlib import contextmanager
@@ -87,7 +88,8 @@ def _tick(value: float, decimals: int) -> str:
 
 def bounds(values: Sequence[float], *, zero: bool = True, room: float = 0.08) -> tuple[float, float]:
     """A common scale that holds every value, with a little room; never of no width."""
-    low, high = min(values, default=0.0), max(values, default=0.0)
+    known = [value for value in values if math.isfinite(value)]
+    low, high = min(known, default=0.0), max(known, default=0.0)
     if zero:
         low, high = min(low, 0.0), max(high, 0.0)
     gap = (high - low) * room or 1.0

@@ -3,13 +3,14 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from math import isfinite
 
 from matplotlib.axes import Axes
 from matplotlib.figure import Figure
 
 from projector.report.charts import canvas
 from projector.report.charts.canvas import BLUE, DEEP_VERMILLION, INK, MARK_GREY, VERMILLION
-from projector.report.numbers import MINUS, fixed
+from projector.report.numbers import MINUS, NOT_AVAILABLE, fixed
 
 ROW = 0.16
 
@@ -37,11 +38,11 @@ def _panel(axes: Axes, values: Sequence[float], limits: tuple[float, float]) -> 
     axes.set_ylim(len(values) - 0.5, -0.5)
     axes.axvline(0.0, color=INK, linewidth=0.9)
     for k, value in enumerate(values):
-        text = fixed(value, 1)
+        text = fixed(value, 1) if isfinite(value) else NOT_AVAILABLE
         below = text.startswith(MINUS)
         axes.plot([0.0, value], [k, k], color=VERMILLION if below else BLUE, linewidth=1.1, solid_capstyle="butt")
         axes.plot([value], [k], "v" if below else "o", color=VERMILLION if below else BLUE, markersize=4.6)
-        _value(axes, value, k, text, below)
+        _value(axes, value if isfinite(value) else 0.0, k, text, below)
     axes.yaxis.set_visible(False)
     axes.spines["left"].set_visible(False)
     axes.spines["bottom"].set_color(MARK_GREY)

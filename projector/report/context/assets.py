@@ -67,7 +67,7 @@ def _kind(form: str, first: date | None) -> str:
 
 
 def _by_class(reading: Reading, frame: pd.DataFrame) -> Table:
-    groups = [(str(name), part) for name, part in frame.groupby("asset_class", sort=True)]
+    groups = [(str(name), part) for name, part in frame.groupby("asset_class", sort=True, observed=True)]
     rows = [
         Row(name=name, own_words=True, cells=_class_cells(reading, part, f"asset_class={name}"))
         for name, part in groups

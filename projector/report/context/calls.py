@@ -136,7 +136,7 @@ def _given_up(found: CallReading) -> Table:
         number="10.1", caption="Par called and yield given up by scenario",
         basis=f"{reading.money.unit} over the horizon, undiscounted, all segments; callable par {callable_par}. "
               "Premium: paid to the holder above par. Yield given up (M-12): positive = income lost.",
-        row_head="Scenario", rows=tuple(rows),
+        row_head="Scenario", rows=tuple(rows), why_missing="the results hold no such figure for the scenario",
         columns=(Column(name="Securities called"), Column(name="Par called"),
                  Column(name="Of callable par", unit="%"), Column(name="Premium"), Column(name="Yield given up"),
                  Column(name="Later calls would", words=True)),
@@ -151,7 +151,9 @@ def _chosen(reading: Reading, found: CallReading) -> list[Chosen]:
     frame = reading.results.decisions
     par = dict(zip(reading.results.securities["security_id"], reading.results.securities["par"], strict=True))
     solved = frame[frame["continuation"].notna()]
-    solved = solved.assign(par=solved["security_id"].map(par).fillna(0.0), gap=solved["bar"] - solved["continuation"])
+    solved = solved.assign(
+        par=solved["security_id"].map(par).fillna(0.0), gap=solved["bar"] - solved["continuation"].astype(float)
+    )
     called, kept = solved[solved["called"].astype(bool)], solved[~solved["called"].astype(bool)]
     never = kept[
         [(str(i), str(s)) not in found.months for i, s in zip(kept["security_id"], kept["scenario"], strict=True)]

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from dataclasses import dataclass, field
 
 from projector.report import cells
@@ -13,6 +14,8 @@ from projector.report.context.results import by_year
 from projector.report.context.scope import defects
 from projector.report.numbers import count_of, date_words, fixed
 from projector.report.parts import Column, Row, Table, told
+
+EXPONENT = re.compile(r"(?<=e)-(?=\d)")
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -54,7 +57,7 @@ def checks(reading: Reading) -> Checks:
     rows = tuple(
         Row(name=f"{row['identity']} {row['name']}", cells=(
             cells.count(row["checked"], f"identities.checked/{row['identity']}"),
-            cells.word(str(row["tolerance"]).replace("-", "\u2212"), f"identities.tolerance/{row['identity']}"),
+            cells.word(EXPONENT.sub("\u2212", str(row["tolerance"])), f"identities.tolerance/{row['identity']}"),
             cells.small(float(row["worst_difference"]), f"identities.worst_difference/{row['identity']}"),
             cells.word(str(row["where"]) or "none", f"identities.where/{row['identity']}"),
             cells.word("holds" if row["holds"] else "does not hold", f"identities.holds/{row['identity']}"),
@@ -100,7 +103,8 @@ def reproduce(reading: Reading, run_command: str) -> Reproduce:
 def caution_section(reading: Reading) -> Cautions:
     """Section 17 from the study."""
     study = reading.study
-    items = cautions(study, date_words(study.valuation_date), date_words(study.information_date), defects(reading))
+    valued, informed = date_words(study.valuation_date), date_words(study.information_date)
+    items = cautions(study, valued, informed, defects(reading), reading.segment_table)
     said = [text for text in study.texts.reliances if text.strip()]
     rows = tuple(
         Row(name=f"Reliance {fixed(k)}", cells=(cells.said(text, f"texts.reliances/{k}"),))

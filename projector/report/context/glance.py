@@ -75,7 +75,7 @@ def _segments(reading: Reading) -> str:
         below = [s for s in reading.scenarios if not reading.measures(s, segment)["criterion_met"]]
         if below:
             parts.append(f"{reading.segment(segment)} in {listed(below, 8)}")
-    return f"Alone, not meeting the same measure: {'; '.join(parts)} (table 9.1)." if parts else ""
+    return f"Alone, not meeting the same measure: {'; '.join(parts)} (table {reading.segment_table})." if parts else ""
 
 
 def _shortfall(reading: Reading) -> str:
@@ -113,7 +113,7 @@ def _table(reading: Reading) -> Table:
         number="1.1", caption="Result by scenario, all segments together",
         basis=f"{reading.money.unit}, before tax. PV: statement surplus discounted at net earned rates (M-3). Ending "
               f"and lowest: {measure}, undiscounted.",
-        row_head="Scenario", columns=columns,
+        row_head="Scenario", why_missing="the results hold no such figure for the scenario", columns=columns,
         rows=tuple(Row(name=reading.scenario(s), own_words=True, cells=_cells(reading, s)) for s in reading.shown),
     )  # fmt: skip
 

@@ -44,7 +44,7 @@ def _blocks(reading: Reading) -> Table:
     streams = reading.study.tables.liability_streams
     own = streams[streams["scenario"].isin([first, EVERY_PATH])]
     sums: dict[tuple[str, str], dict[str, float]] = {}
-    for (segment, block, item), part in own.groupby(["segment", "block", "item"], sort=True):
+    for (segment, block, item), part in own.groupby(["segment", "block", "item"], sort=True, observed=True):
         amounts = part["amount"] if item != "reserve_statutory" else part.loc[part["month"] == 0, "amount"]
         sums.setdefault((str(segment), str(block)), {})[str(item)] = total(amounts)
     order = [key for name in reading.segments for key in sums if key[0] == name]

@@ -11,8 +11,6 @@ from projector.report.context.reading import Reading
 from projector.report.parts import Cell, Column, Row, Table
 from projector.run.results import ALL_SEGMENTS
 
-LONGEST_IN_TEXT = 40  # rows; longer tables print the aggregate and leave the segments to the appendix
-
 
 @dataclass(frozen=True)
 class Measure:
@@ -62,7 +60,7 @@ def tables(reading: Reading) -> tuple[tuple[Table, Table, Table], tuple[Table, .
     """Tables 9.1, 9.5, 9.6, and those of the segments that are too long for the text, for the appendix."""
     pairs = [(scenario, segment) for segment in reading.segment_order for scenario in reading.scenarios]
     whole = [(scenario, ALL_SEGMENTS) for scenario in reading.scenarios]
-    if len(pairs) <= LONGEST_IN_TEXT:
+    if not reading.segments_apart:
         return _three(reading, ("9.1", "9.5", "9.6"), pairs), ()
     of_segments = _three(reading, ("A.4", "A.5", "A.6"), pairs[len(whole) :])
     return _three(reading, ("9.1", "9.5", "9.6"), whole), of_segments
@@ -80,7 +78,8 @@ def _three(reading: Reading, numbers: tuple[str, str, str], pairs: list[tuple[st
                "no sale and no purchase, except the horizon return.",
                "there is a gap only where each side has one root", 8),
         _table(reading, numbers[2], "Cash, sales and shortfall by scenario and segment", CASH, pairs,
-               f"{unit}; a gain is proceeds less statement value, positive = gain. Largest = at a month end.", "", 8),
+               f"{unit}; a gain is proceeds less statement value, positive = gain. Largest = at a month end.",
+               "the results hold no such figure for the line", 8),
     )  # fmt: skip
 
 

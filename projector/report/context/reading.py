@@ -18,6 +18,7 @@ from projector.study.records import Study
 
 MOST_SCENARIOS = 8  # shown by name on page 1 and in the charts; all of them stand in the tables
 SHOWN_OF_MANY = 7
+LONGEST_IN_TEXT = 40  # rows of measures; longer tables leave the segments to the appendix
 MIX_YEARS = (0, 5, 10, 20, 30, 40)
 
 
@@ -87,6 +88,16 @@ class Reading:
         """The row of measures of one scenario and segment."""
         return self._measures[scenario, segment]
 
+    @property
+    def segments_apart(self) -> bool:
+        """Whether the lines of the segments are too many for the text and stand in the appendix."""
+        return len(self.segment_order) * len(self.scenarios) > LONGEST_IN_TEXT
+
+    @property
+    def segment_table(self) -> str:
+        """The table that lists surplus by scenario and segment."""
+        return "A.4" if self.segments_apart else "9.1"
+
     @cached_property
     def on_market(self) -> bool:
         """Whether the criterion reads market surplus; tables of page 1 and the surplus charts follow it."""
@@ -151,7 +162,7 @@ class Reading:
 
     @cached_property
     def _ends(self) -> dict[tuple[str, str], pd.DataFrame]:
-        groups = self.year_ends.sort_values("month").groupby(["scenario", "segment"], sort=False)
+        groups = self.year_ends.sort_values("month").groupby(["scenario", "segment"], sort=False, observed=True)
         return {(str(a), str(b)): frame for (a, b), frame in groups}
 
     @property
