@@ -221,13 +221,13 @@ class Pencil:
     def market_assets(self, month: int) -> float:
         """Bonds on the path's curve and their spreads, coupon of the month end just paid; B1's right is gone."""
         rate, par, half = CURVE[self.path], par_left(month, self.path), 100.0 * PURCHASE_COUPON[self.path] / 2
-        b1 = {t: 4.0 for t in range(6, 120 - month, 6)} | {120 - month: 104.0}
-        b3 = {t: 3.0 for t in range(6, 60 - month, 6)} | {60 - month: 103.0}
+        b1 = dict.fromkeys(range(6, 120 - month, 6), 4.0) | {120 - month: 104.0}
+        b3 = dict.fromkeys(range(6, 60 - month, 6), 3.0) | {60 - month: 103.0}
         total = par["B1"] / 100.0 * value_of(b1, rate, 1.045 / 1.03)
         total += par["B3"] / 100.0 * value_of(b3, rate, 1.045 / 1.03)
         for q, bought in self.bought.items():
             last = 60 - (month - q)
-            flows = {t: half for t in range((last - 1) % 6 + 1, last, 6)} | {last: 100.0 + half}
+            flows = dict.fromkeys(range((last - 1) % 6 + 1, last, 6), half) | {last: 100.0 + half}
             total += bought / 100.0 * value_of(flows, rate, 1.035 / 1.03)
         return total
 
