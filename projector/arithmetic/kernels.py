@@ -71,6 +71,14 @@ def choose_cache() -> bool:
 CACHED = choose_cache()
 
 
+def inlined(function: Callable[..., Any]) -> Callable[..., Any]:
+    """As `kernel`, for small formulas inside lane loops: put in place by the compiler, so lanes run side by side."""
+    compiled: Callable[..., Any] = numba.njit(
+        cache=CACHED, nogil=True, fastmath=False, error_model="numpy", forceinline=True
+    )(function)
+    return compiled
+
+
 def kernel(function: Callable[..., Any]) -> Callable[..., Any]:
     """Compiles a hot loop: no fastmath, no parallel reductions, the interpreter lock released (C15)."""
     compiled: Callable[..., Any] = numba.njit(

@@ -7,6 +7,7 @@ import pandas as pd
 
 from projector.bonds.calibration import HIGHEST, LEAST_SLOPE, LOWEST
 from projector.liabilities.streams import digest_errors
+from projector.rates.curve import CurveError, log_discount_nodes
 from projector.rates.paths import PathSet
 from projector.run.prepare import Prepared
 from projector.study.errors import LocatedError, StudyRefused
@@ -16,6 +17,21 @@ from projector.study.streamchecks import check_stream_scenarios
 
 CENT = 0.005
 NAMED_AT_MOST = 20
+
+
+def curve_stage(study: Study, paths: PathSet) -> None:
+    """Every curve of every path must give positive discounts."""
+    try:
+        log_discount_nodes(paths.yields, paths.reading)
+    except CurveError as fault:
+        error = LocatedError(
+            code="E450",
+            file=str(study.tables.yield_curve.attrs.get("file", "yield_curve")),
+            column="rate",
+            problem=f"a rate path cannot be discounted: {fault}",
+            remedy="look for a yield in the wrong unit or with too steep a step between tenors, or change the path",
+        )
+        raise StudyRefused([error]) from fault
 
 
 def stream_stage(study: Study, paths: PathSet) -> None:

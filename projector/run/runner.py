@@ -11,7 +11,7 @@ from pathlib import Path
 from projector.rates.paths import build_paths
 from projector.run.block import BlockResult, project
 from projector.run.call_table import calls_frame
-from projector.run.checks import control_frame, special_cases, starting_asset_stage, stream_stage
+from projector.run.checks import control_frame, curve_stage, special_cases, starting_asset_stage, stream_stage
 from projector.run.choices import choices_frame
 from projector.run.frames import (
     balance_frame,
@@ -49,7 +49,9 @@ def stage(folder: Path) -> Staged:
     """Reads and checks a study folder; every fault of a stage is raised at once."""
     study, warnings = read_study(folder)
     refuse_too_large(study)
-    stream_stage(study, build_paths(study))
+    paths = build_paths(study)
+    curve_stage(study, paths)
+    stream_stage(study, paths)
     prepared = prepare(study)
     starting_asset_stage(prepared)
     return Staged(prepared, (*warnings, *run_warnings(prepared)))

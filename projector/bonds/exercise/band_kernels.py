@@ -9,15 +9,16 @@ from projector.arithmetic.kernels import Floats, Integers, kernel
 
 @kernel
 def step_back_9(
-    lo: int, hi: int, base: int, row: int, lanes: int, band_start: Integers, weights: Floats, value: Floats,
-    factor: Floats, out: Floats,
+    lo: int, hi: int, base: int, row: int, lanes: int, band_start: Integers, weights: Floats, growth: Floats,
+    value: Floats, flow: Floats, factor: Floats, out: Floats,
 ) -> None:  # fmt: skip
-    """One step of the recursion with a band of 9 nodes: out = factor x sum of W V, every node and lane."""
+    """One step of the recursion, band of 9 nodes: out = factor x sum of W (V + flow), all nodes and lanes."""
     n = np.uint64(lanes)
     for i in range(lo, hi + 1):
         r = np.uint64(i - row)
         s = np.uint64(band_start[r] - base) * n
         o = np.uint64(i - base) * n
+        total = growth[r, np.uint64(1)]  # the row's weights add up to it
         w0 = weights[r, np.uint64(0)]
         w1 = weights[r, np.uint64(1)]
         w2 = weights[r, np.uint64(2)]
@@ -38,20 +39,22 @@ def step_back_9(
                 + w6 * value[s + lane + np.uint64(6) * n]
                 + w7 * value[s + lane + np.uint64(7) * n]
                 + w8 * value[s + lane + np.uint64(8) * n]
+                + total * flow[lane]
             )
 
 
 @kernel
 def step_back_13(
-    lo: int, hi: int, base: int, row: int, lanes: int, band_start: Integers, weights: Floats, value: Floats,
-    factor: Floats, out: Floats,
+    lo: int, hi: int, base: int, row: int, lanes: int, band_start: Integers, weights: Floats, growth: Floats,
+    value: Floats, flow: Floats, factor: Floats, out: Floats,
 ) -> None:  # fmt: skip
-    """One step of the recursion with a band of 13 nodes: out = factor x sum of W V, every node and lane."""
+    """One step of the recursion, band of 13 nodes: out = factor x sum of W (V + flow), all nodes and lanes."""
     n = np.uint64(lanes)
     for i in range(lo, hi + 1):
         r = np.uint64(i - row)
         s = np.uint64(band_start[r] - base) * n
         o = np.uint64(i - base) * n
+        total = growth[r, np.uint64(1)]  # the row's weights add up to it
         w0 = weights[r, np.uint64(0)]
         w1 = weights[r, np.uint64(1)]
         w2 = weights[r, np.uint64(2)]
@@ -80,20 +83,22 @@ def step_back_13(
                 + w10 * value[s + lane + np.uint64(10) * n]
                 + w11 * value[s + lane + np.uint64(11) * n]
                 + w12 * value[s + lane + np.uint64(12) * n]
+                + total * flow[lane]
             )
 
 
 @kernel
 def step_back_21(
-    lo: int, hi: int, base: int, row: int, lanes: int, band_start: Integers, weights: Floats, value: Floats,
-    factor: Floats, out: Floats,
+    lo: int, hi: int, base: int, row: int, lanes: int, band_start: Integers, weights: Floats, growth: Floats,
+    value: Floats, flow: Floats, factor: Floats, out: Floats,
 ) -> None:  # fmt: skip
-    """One step of the recursion with a band of 21 nodes: out = factor x sum of W V, every node and lane."""
+    """One step of the recursion, band of 21 nodes: out = factor x sum of W (V + flow), all nodes and lanes."""
     n = np.uint64(lanes)
     for i in range(lo, hi + 1):
         r = np.uint64(i - row)
         s = np.uint64(band_start[r] - base) * n
         o = np.uint64(i - base) * n
+        total = growth[r, np.uint64(1)]  # the row's weights add up to it
         w0 = weights[r, np.uint64(0)]
         w1 = weights[r, np.uint64(1)]
         w2 = weights[r, np.uint64(2)]
@@ -138,4 +143,5 @@ def step_back_21(
                 + w18 * value[s + lane + np.uint64(18) * n]
                 + w19 * value[s + lane + np.uint64(19) * n]
                 + w20 * value[s + lane + np.uint64(20) * n]
+                + total * flow[lane]
             )

@@ -23,19 +23,21 @@ FUNCTION = '''
 
 @kernel
 def step_back_{band}(
-    lo: int, hi: int, base: int, row: int, lanes: int, band_start: Integers, weights: Floats, value: Floats,
-    factor: Floats, out: Floats,
+    lo: int, hi: int, base: int, row: int, lanes: int, band_start: Integers, weights: Floats, growth: Floats,
+    value: Floats, flow: Floats, factor: Floats, out: Floats,
 ) -> None:  # fmt: skip
-    """One step of the recursion with a band of {band} nodes: out = factor x sum of W V, every node and lane."""
+    """One step of the recursion, band of {band} nodes: out = factor x sum of W (V + flow), all nodes and lanes."""
     n = np.uint64(lanes)
     for i in range(lo, hi + 1):
         r = np.uint64(i - row)
         s = np.uint64(band_start[r] - base) * n
         o = np.uint64(i - base) * n
+        total = growth[r, np.uint64(1)]  # the row's weights add up to it
 {loads}
         for lane in range(n):
             out[o + lane] = factor[lane] * (
 {terms}
+                + total * flow[lane]
             )
 '''
 

@@ -8,7 +8,7 @@ from __future__ import annotations
 
 import numpy as np
 
-from projector.arithmetic.kernels import Flags, Floats, Integers, kernel
+from projector.arithmetic.kernels import Flags, Floats, Integers, inlined, kernel
 from projector.bonds.exercise.band_kernels import step_back_9, step_back_13, step_back_21
 
 LANES = 16
@@ -34,7 +34,7 @@ _A = lagrange_monomials()
 (A50, A51, A52, A53, A54, A55) = (float(v) for v in _A[5])
 
 
-@kernel
+@inlined
 def quintic(
     g0: float, g1: float, g2: float, g3: float, g4: float, g5: float
 ) -> tuple[float, float, float, float, float, float]:  # fmt: skip
@@ -49,7 +49,7 @@ def quintic(
     )
 
 
-@kernel
+@inlined
 def newton(t: float, c0: float, b1: float, b2: float, b3: float, b4: float, b5: float) -> float:
     """One Newton step towards the root of the quintic, kept between its nodes 0 and 1."""
     value = c0 + t * (b1 + t * (b2 + t * (b3 + t * (b4 + t * b5))))
@@ -60,7 +60,7 @@ def newton(t: float, c0: float, b1: float, b2: float, b3: float, b4: float, b5: 
     return t if t < 1.0 else 1.0
 
 
-@kernel
+@inlined
 def crossing(b0: float, b1: float, b2: float, b3: float, b4: float, b5: float, target: float) -> float:
     """Where the quintic meets the target between its nodes 0 and 1: secant start, two Newton steps, clamped."""
     c0 = b0 - target
@@ -73,7 +73,7 @@ def crossing(b0: float, b1: float, b2: float, b3: float, b4: float, b5: float, t
     return newton(t, c0, b1, b2, b3, b4, b5)
 
 
-@kernel
+@inlined
 def node_shares(
     theta: float, m0: float, m1: float, m2: float, m3: float, m4: float, a0: float, a1: float, a2: float, a3: float,
     a4: float, a5: float,
@@ -88,7 +88,7 @@ def node_shares(
     return m0 * l0 + m1 * l1 + m2 * l2 + m3 * l3 + m4 * l4
 
 
-@kernel
+@inlined
 def kink_corrections(
     theta: float, b1: float, b2: float, b3: float, b4: float, b5: float, jump: float
 ) -> tuple[float, float, float, float, float, float]:  # fmt: skip
@@ -150,8 +150,8 @@ def straight_columns(
 
 @kernel
 def step_back_any(
-    lo: int, hi: int, base: int, row: int, lanes: int, band: int, band_start: Integers, weights: Floats, value: Floats,
-    factor: Floats, out: Floats,
+    lo: int, hi: int, base: int, row: int, lanes: int, band: int, band_start: Integers, weights: Floats,
+    growth: Floats, value: Floats, flow: Floats, factor: Floats, out: Floats,
 ) -> None:  # fmt: skip
     """One step of the recursion with any band: the same sum in the same order as the unrolled forms."""
     n = np.uint64(lanes)
@@ -163,23 +163,23 @@ def step_back_any(
             total = weights[r, np.uint64(0)] * value[s + lane]
             for j in range(np.uint64(1), np.uint64(band)):
                 total += weights[r, j] * value[s + lane + j * n]
-            out[o + lane] = factor[lane] * total
+            out[o + lane] = factor[lane] * (total + growth[r, np.uint64(1)] * flow[lane])
 
 
 @kernel
 def step_back(
-    lo: int, hi: int, base: int, row: int, lanes: int, band: int, band_start: Integers, weights: Floats, value: Floats,
-    factor: Floats, out: Floats,
+    lo: int, hi: int, base: int, row: int, lanes: int, band: int, band_start: Integers, weights: Floats,
+    growth: Floats, value: Floats, flow: Floats, factor: Floats, out: Floats,
 ) -> None:  # fmt: skip
-    """One step of the recursion by the form for its band width."""
+    """One step of the recursion by the form for its band width; flow [lane] is paid at the step come from."""
     if band == 9:
-        step_back_9(lo, hi, base, row, lanes, band_start, weights, value, factor, out)
+        step_back_9(lo, hi, base, row, lanes, band_start, weights, growth, value, flow, factor, out)
     elif band == 13:
-        step_back_13(lo, hi, base, row, lanes, band_start, weights, value, factor, out)
+        step_back_13(lo, hi, base, row, lanes, band_start, weights, growth, value, flow, factor, out)
     elif band == 21:
-        step_back_21(lo, hi, base, row, lanes, band_start, weights, value, factor, out)
+        step_back_21(lo, hi, base, row, lanes, band_start, weights, growth, value, flow, factor, out)
     else:
-        step_back_any(lo, hi, base, row, lanes, band, band_start, weights, value, factor, out)
+        step_back_any(lo, hi, base, row, lanes, band, band_start, weights, growth, value, flow, factor, out)
 
 
 @kernel
@@ -403,9 +403,10 @@ def solve_lanes(
     base = row - reach - 2
     width = band_start.shape[0] + 2 * reach + 4
     c = np.ones(width * lanes)
-    h = np.ones(width * lanes)
     v = np.ones(width * lanes)
-    w = np.ones(width * lanes)
+    # the holder's arrays are not touched unless both recursions run
+    h = np.ones(width * lanes if both else 0)
+    w = np.ones(width * lanes if both else 0)
     work = np.zeros(20 * 16)
     local = np.zeros((2, local_weights.shape[0]))
     kink = np.zeros(lanes, dtype=np.int64)
@@ -422,9 +423,10 @@ def solve_lanes(
                 live = first[lane] > 0 and k >= first[lane] and k < last[lane]
                 factor[lane] = ratio[k - begin, lane] * conv[k] if live else 1.0
                 factor_h[lane] = holder_ratio[k - begin, lane] * conv[k] if live else 1.0
-            step_back(a, b, base, row, lanes, band, band_start, weights, v, factor, c)
+            paid = flow[k + 1 - begin]
+            step_back(a, b, base, row, lanes, band, band_start, weights, growth, v, paid, factor, c)
             if both:
-                step_back(a, b, base, row, lanes, band, band_start, weights, w, factor_h, h)
+                step_back(a, b, base, row, lanes, band, band_start, weights, growth, w, paid, factor_h, h)
         for lane in range(lanes):
             live = first[lane] > 0 and k >= first[lane] and k <= last[lane]
             bars[lane] = bar[k - begin, lane] if live else np.inf
@@ -432,7 +434,8 @@ def solve_lanes(
             if not live:
                 for i in range(a - base, b - base + 1):
                     c[i * lanes + lane] = 1.0
-                    h[i * lanes + lane] = 1.0
+                    if both:
+                        h[i * lanes + lane] = 1.0
             elif k == last[lane]:
                 n = steps[lane]
                 straight_columns(k, begin, lane, lanes, n, flow, ratio, straight_conv, growth, row, a, b, base, c)
@@ -458,15 +461,8 @@ def solve_lanes(
             if first[lane] == k and not first_local[k]:
                 for i in range(b - a + 1):
                     issuer_cost[lane] += first_weights[k, i] * v[(a + i - base) * lanes + lane]
-                    holder_value[lane] += first_weights[k, i] * w[(a + i - base) * lanes + lane]
-        if k > bottom:
-            for i in range(np.uint64(a - reach - base), np.uint64(b + reach + 1 - base)):
-                for lane in range(np.uint64(lanes)):
-                    v[i * np.uint64(lanes) + lane] += flow[k - begin, lane]
-            if both:
-                for i in range(np.uint64(a - reach - base), np.uint64(b + reach + 1 - base)):
-                    for lane in range(np.uint64(lanes)):
-                        w[i * np.uint64(lanes) + lane] += flow[k - begin, lane]
+                    if both:
+                        holder_value[lane] += first_weights[k, i] * w[(a + i - base) * lanes + lane]
     for lane in range(lanes):
         finish(lane, begin, lead[0, lane], lead[1, lane], steps, first, ratio, flow, touched[lane], issuer_cost)
         if both:
