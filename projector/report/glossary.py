@@ -46,7 +46,7 @@ TERMS = (
     _term("IRR gap", "IRR of assets less cost rate, percentage points; printed only where both have one root (M-10)."),
     _term("Issuer's cost", "Cost of refunding as a share of par, borne by the issuer and paid to others."),
     _term("Key rate", "A point of the yield curve moved alone; not used by this version."),
-    _term("Lowest surplus", "The smallest surplus at month 0 and the year ends, undiscounted; money (M-5)."),
+    _term("Lowest surplus", "The smallest surplus at a year end, year 1 and later, undiscounted; money (M-5)."),
     _term("Make-whole", "A right to repay at a price that gives the holder the value of the payments lost (M-26)."),
     _term("Market surplus", "Market value of assets less liabilities at the close-out value; money (M-2)."),
     _term("Month called", "The month in which the holder is paid, as YYYY-MM."),

@@ -35,22 +35,25 @@ FORMULAS = (
             "the liability at the close-out value the study names.",
             "S* = MV + C + V − L − F − R*", OWN),
     Formula("M-3", "Present value of ending surplus, by net earned rate",
-            "Statement surplus at the horizon, discounted month by month at the scenario's own net earned rate.",
-            "PV = S(T) × Π 1 / (1 + e(t))^(1/12)",
+            "Statement surplus at the horizon, discounted year by year at the net earned rates (M-13) of the same "
+            "scenario and segment; all segments: the sum of the segments' values.",
+            "PV = S(T) × Π 1 / (1 + e(y))",
             f"American Academy of Actuaries, Asset Adequacy Analysis practice note, 2017 ({MEMORY})"),
     Formula("M-4", "Present value of ending surplus, by one-month Treasury",
             "The same surplus discounted at the path's one-month rates.", "PV = S(T) × Π d(m)", OWN),
     Formula("M-5", "Lowest surplus",
-            "The smallest surplus at month 0 and the year ends, undiscounted, and the year end at which it stands.",
-            "min over y of S(12 y)", OWN),
+            "The smallest surplus at a year end, year 1 and later, undiscounted, and the first year end at "
+            "which it stands.",
+            "min over y ≥ 1 of S(12 y)", OWN),
     Formula("M-6", "Criterion value",
             "The criterion's measure at the worst of the dates the study names; met when it is not below the limit.",
             "min over dates of S, against the limit", "The study's own criterion, quoted on page 1"),
     Formula("M-7", "NPV gap",
             "Present value of the run-off flows of the starting holdings and of opening cash, less that of net "
             "liability outgo, at the path's one-month rates plus the constant of the study. No sale and no purchase "
-            "enters. What remains at the horizon is shown apart.",
-            "Σ D(m) × (A(m) − N(m)) + C(0)", OWN),
+            "enters. Holdings and liability left at the horizon enter at their close-out values, each also shown "
+            "apart.",
+            "Σ D(m) × (A(m) − N(m)) + C(0) + D(T) × (A* − R*)", OWN),
     Formula("M-8", "IRR of assets",
             "The annual effective rate at which the run-off flows and opening cash are worth the outlay: market "
             "value with accrued interest, or statement value where so named. Several sign changes can give no root "
@@ -115,8 +118,8 @@ FORMULAS = (
             "The issuer decides with the class spread of new debt plus concession (or with the valuation spread, "
             "when the study says so); purchases earn the class spread.", "s' = class + concession", OWN),
     Formula("M-25", "Market value",
-            "A second backward recursion with the valuation spread on the issuer's exercise set: what the holder owns "
-            "while the issuer decides.", "V(k) = E[d × (coupon + (called ? K + I : V(k+1)))]", OWN),
+            "A second backward recursion with the valuation spread on the issuer's exercise set: what the holder "
+            "owns while the issuer decides.", "V(k) = E[d × (coupon + (called ? K + I : V(k+1)))]", OWN),
     Formula("M-26", "Make-whole price",
             "The larger of 100 and the present value of remaining payments to the par-call date at the path's par "
             "yield for that life plus the make-whole spread, semiannual 30/360, without accrued.",

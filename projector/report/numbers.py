@@ -158,6 +158,11 @@ def listed(names: list[str], at_most: int = 3) -> str:
     return shown[0] if len(shown) == 1 else f"{', '.join(shown[:-1])} and {shown[-1]}" if shown else "none"
 
 
+def closed(text: str) -> str:
+    """A text of the study as the end of a sentence: with one full stop."""
+    return text if text.endswith((".", "!", "?")) else f"{text}."
+
+
 TURNING = "\u202a\u202b\u202c\u202d\u202e\u2066\u2067\u2068\u2069"  # letters that turn the direction of what follows
 
 

@@ -12,7 +12,7 @@ from jinja2 import Environment, PackageLoader, StrictUndefined
 from markupsafe import Markup
 
 from projector.report.context.page import Page, page
-from projector.report.numbers import clean
+from projector.report.numbers import clean, closed
 from projector.run.results import RunResults
 
 ADDRESS_COLUMNS = ("address", "table", "line", "column", "row_name", "column_name", "shown", "value", "word", "unit",
@@ -58,6 +58,7 @@ def _environment() -> Environment:
         trim_blocks=True, lstrip_blocks=True, keep_trailing_newline=True, finalize=_printable,
     )  # fmt: skip
     environment.filters["css_text"] = css_text
+    environment.filters["closed"] = closed
     return environment
 
 

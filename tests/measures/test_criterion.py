@@ -20,7 +20,7 @@ def criterion(**terms: object) -> Criterion:
         "sentence": "words", "fixed_on": date(2023, 1, 20), "measure": "statement_surplus", "dates": "every_year_end",
         "scenarios_allowed_below": 0, "limit": 0.0,
     }  # fmt: skip
-    return Criterion(**(usual | terms))  # type: ignore[arg-type]
+    return Criterion(**(usual | terms))
 
 
 @pytest.mark.parametrize(

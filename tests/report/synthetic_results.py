@@ -353,7 +353,7 @@ def _measures(opt: Options, balance: pd.DataFrame, calls: pd.DataFrame, securiti
     rows = []
     column, parts = opt.criterion_measure, opt.segments
     for (scenario, segment), b in balance.groupby(["scenario", "segment"], sort=False):
-        ends = b[b["month"] % 12 == 0]
+        ends = b[(b["month"] % 12 == 0) & (b["month"] > 0)]  # month 0 is what the ledger says
         end = ends.iloc[-1]
         low_s, low_m = ends.loc[ends["statement_surplus"].idxmin()], ends.loc[ends["market_surplus"].idxmin()]
         own = calls[calls["scenario"] == scenario]

@@ -1,5 +1,6 @@
 """Charts: what is drawn reaches the page cleaned, in colours that can be told apart from the paper."""
 
+import itertools
 import re
 from pathlib import Path
 
@@ -109,13 +110,25 @@ def test_limit_flows_of_one_year_are_drawn():
     assert "<svg" in flows.draw([1.0], [2.0])
 
 
-def test_order_the_call_map_puts_early_groups_first_and_high_coupons_first():
-    rows = [CallRow(2030, 0.04, 5, 9, (None,)), CallRow(2028, 0.05, 3, 9, (3.0,)), CallRow(2030, 0.06, 5, 9, (5.0,))]
-    ordered = sorted(rows, key=lambda row: (row.group, -row.coupon))
-    heights, labels = calls._heights(ordered)
-    assert heights == [0.0, 2.6, 3.6]
-    assert [text for _, text in labels] == ["2028 (1)", "2030 (2)"]
+def test_order_the_call_map_leaves_a_gap_between_years_and_labels_each_in_its_middle():
+    rows = [CallRow(2028, 0.05, 3, 9, (3.0,)), CallRow(2030, 0.06, 5, 9, (5.0,)), CallRow(2030, 0.04, 5, 9, (None,))]
+    groups = calls.merged(rows)
+    assert groups == [("2028 (1)", 1), ("2030 (2)", 2)]
+    assert calls._heights(groups) == ([0.0, 2.6, 3.6], [(0.0, "2028 (1)"), (3.1, "2030 (2)")])
     assert "2028 (1)" in calls.draw_map(["S1 Level"], ["2 of 3"], rows, 10.0)
+
+
+def test_limit_years_with_few_securities_share_a_label_so_that_none_leaves_the_chart():
+    crowded = [CallRow(2025, 0.05, 1, 9, (None,))] * 200 + [CallRow(y, 0.05, 9, 9, (None,)) for y in range(2026, 2056)]
+    groups = calls.merged(crowded)
+    assert sum(count for _, count in groups) == 230
+    assert groups[0] == ("2025 (200)", 200)
+    assert groups[-1][0].startswith("20")
+    assert "–55" in groups[-1][0]
+    heights, labels = calls._heights(groups)
+    step = calls.TALLEST / (heights[-1] + 2.0)
+    tops = [middle * step for middle, _ in labels]
+    assert min(b - a for a, b in itertools.pairwise(tops)) >= calls.LABEL * 0.95
 
 
 def test_limit_tick_labels_are_whole_where_they_are_whole():

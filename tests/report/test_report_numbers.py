@@ -84,6 +84,10 @@ def test_known_plurals_and_lists():
         "none", "A", "A and B", "A, B and C", "A, B, C and 1 more", "A, B, C and 2 more"]  # fmt: skip
 
 
+def test_known_a_text_of_the_study_ends_a_sentence_with_one_full_stop():
+    assert [numbers.closed(text) for text in ("None", "None.", "None!")] == ["None.", "None.", "None!"]
+
+
 def test_limit_control_letters_and_direction_marks_of_a_study_are_replaced():
     assert numbers.clean("a\x00b\u202ec") == "a\ufffdb\ufffdc"
     assert numbers.clean("שלום, Zoë\u00a0& Söhne\n") == "שלום, Zoë\u00a0& Söhne\n"

@@ -14,6 +14,7 @@ from projector.report.charts.canvas import BLUE, GREY, INK, MARK_GREY, RULE
 
 MOST_ROWS = 300  # securities drawn one a row; more are drawn by year of first call date
 LEFT, RIGHT, HEAD = 0.86, 0.1, 0.5
+ROW, GAP, LABEL, TALLEST = 0.055, 1.6, 0.13, 6.2  # inches, but the gap between groups in rows
 
 
 @dataclass(frozen=True)
@@ -43,9 +44,9 @@ def draw_map(names: Sequence[str], heads: Sequence[str], rows: Sequence[CallRow]
     Rows are grouped by year of first call date, earliest on top, highest coupon first in a group.
     """
     ordered = sorted(rows, key=lambda row: (row.group, -row.coupon, row.first, row.maturity))
-    heights, labels = _heights(ordered)
+    heights, labels = _heights(merged(ordered))
     with canvas.settings():
-        tall = min(6.2, max(1.0, 0.055 * (heights[-1] + 1.0)))
+        tall = min(TALLEST, max(1.0, ROW * (heights[-1] + 1.0)))
         figure = canvas.sheet(HEAD + tall + 0.38)
         panel = (canvas.WIDTH - LEFT - RIGHT) / len(names)
         for k, name in enumerate(names):
@@ -58,19 +59,34 @@ def draw_map(names: Sequence[str], heads: Sequence[str], rows: Sequence[CallRow]
         return canvas.raw_svg(figure)
 
 
-def _heights(rows: Sequence[CallRow]) -> tuple[list[float], list[tuple[float, str]]]:
+def merged(rows: Sequence[CallRow]) -> list[tuple[str, int]]:
+    """Labels and row counts of the groups, years with few securities joined to the next so that labels never meet."""
+    counts: dict[int, int] = {}
+    for row in rows:
+        counts[row.group] = counts.get(row.group, 0) + 1
+    row_height = min(ROW, TALLEST / (len(rows) + GAP * len(counts)))
+    fewest = LABEL / row_height - GAP
+    groups: list[list[int]] = []  # first year, last year, count
+    for year, count in counts.items():
+        if groups and groups[-1][2] < fewest:
+            groups[-1] = [groups[-1][0], year, groups[-1][2] + count]
+        else:
+            groups.append([year, year, count])
+    if len(groups) > 1 and groups[-1][2] < fewest:
+        (first, *_), (_, last, count) = groups[-2], groups.pop()
+        groups[-1] = [first, last, groups[-1][2] + count]
+    return [(f"{a} ({n})" if a == b else f"{a}–{b % 100:02d} ({n})", n) for a, b, n in groups]
+
+
+def _heights(groups: Sequence[tuple[str, int]]) -> tuple[list[float], list[tuple[float, str]]]:
     """The row of each security, with a gap between groups, and the label of each group at its middle."""
     heights: list[float] = []
     labels: list[tuple[float, str]] = []
-    at, start = 0.0, 0.0
-    for k, row in enumerate(rows):
-        if k and row.group != rows[k - 1].group:
-            at += 1.6
-            start = at
-        heights.append(at)
-        if k + 1 == len(rows) or rows[k + 1].group != row.group:
-            labels.append(((start + at) / 2, f"{row.group} ({round(at - start) + 1})"))
-        at += 1.0
+    at = 0.0
+    for label, count in groups:
+        heights += [at + k for k in range(count)]
+        labels.append((at + (count - 1) / 2, label))
+        at += count + GAP
     return heights, labels
 
 
@@ -99,12 +115,9 @@ def _head(figure: Figure, left: float, name: str, line: str) -> None:
 def _groups(figure: Figure, labels: Sequence[tuple[float, str]], bottom: float, tall: float) -> None:
     canvas.write(figure, 0.02, 0.27, "first call", fontsize=canvas.SMALL, color=GREY, va="baseline")
     canvas.write(figure, 0.02, 0.41, "(count)", fontsize=canvas.SMALL, color=GREY, va="baseline")
-    last = -1.0
     for middle, text in labels:
         top = HEAD + tall * (middle + 1.0) / (bottom + 1.0)
-        top = max(top, last + 0.13)  # small groups side by side: labels may slide down, never overlap
         canvas.write(figure, 0.02, top, text, fontsize=canvas.SMALL, va="center")
-        last = top
 
 
 def draw_groups(names: Sequence[str], heads: Sequence[str], groups: Sequence[CallGroup]) -> str:

@@ -87,7 +87,7 @@ def _surplus(axes: Axes, values: tuple[float, ...]) -> None:
                           linewidth=0)  # fmt: skip
     axes.plot(years, values, color=BLUE)
     axes.plot(years[-1:], values[-1:], "o", color=BLUE, markersize=4.2, clip_on=False)
-    low = min(range(len(values)), key=values.__getitem__)
+    low = min(range(min(1, len(values) - 1), len(values)), key=values.__getitem__)  # year 0 is the ledger's
     if fixed(values[low], 1).startswith(MINUS):
         axes.plot([low], [values[low]], "v", color=VERMILLION, markersize=5.0, clip_on=False)
 

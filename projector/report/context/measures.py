@@ -37,8 +37,8 @@ SURPLUS = (
 )
 GAPS = (
     Measure("npv_gap", "NPV gap", "M-7", "money"),
-    Measure("npv_close_out_assets", "Left at horizon, assets", "M-7", "money"),
-    Measure("npv_close_out_liabilities", "Left at horizon, liabilities", "M-7", "money"),
+    Measure("npv_close_out_assets", "of which left, assets", "M-7", "money"),
+    Measure("npv_close_out_liabilities", "of which left, liabilities", "M-7", "money"),
     Measure("irr_assets", "IRR of assets", "M-8", "status", "%"),
     Measure("irr_assets_on_statement_value", "On statement value", "M-8", "rate", "%"),
     Measure("cost_rate", "Cost rate", "M-9", "status", "%"),
@@ -70,12 +70,12 @@ def _three(reading: Reading, numbers: tuple[str, str, str], pairs: list[tuple[st
     unit = reading.money.unit
     return (
         _table(reading, numbers[0], "Surplus by scenario and segment", SURPLUS, pairs,
-               f"{unit}, before tax. PV = ending statement surplus discounted; lows are undiscounted, at month 0 or a "
-               "year end.",
+               f"{unit}, before tax. PV = ending statement surplus discounted; lows are undiscounted, at a year end, "
+               "year 1 and later.",
                "market values are not calculated for the line", 10),
         _table(reading, numbers[1], "Gaps and returns by scenario and segment", GAPS, pairs,
                f"{unit}; rates annual effective in %, IRR gap in percentage points. Run-off of the starting holdings, "
-               "no sale and no purchase, except the horizon return.",
+               "no sale and no purchase, except the horizon return. What is left at the horizon is in the gap (M-7).",
                "there is a gap only where each side has one root", 8),
         _table(reading, numbers[2], "Cash, sales and shortfall by scenario and segment", CASH, pairs,
                f"{unit}; a gain is proceeds less statement value, positive = gain. Largest = at a month end.",
