@@ -12,20 +12,12 @@ from typing import Any, Protocol
 import numpy as np
 import numpy.typing as npt
 
+from projector.study.columns import FLOW_ITEMS as SUPPLIED_ITEMS
+
 Array = npt.NDArray[np.float64]
 
 # item -> sign into the company; order is the order of the flow arrays
-FLOW_ITEMS: dict[str, int] = {
-    "premium": 1,
-    "death_benefit": -1,
-    "surrender_benefit": -1,
-    "withdrawal": -1,
-    "annuity_payment": -1,
-    "maturity_benefit": -1,
-    "expense": -1,
-    "commission": -1,
-}
-STATE_ITEMS = ("reserve_statutory", "account_value", "surrender_value")
+FLOW_ITEMS: dict[str, int] = {name: 1 if name == "premium" else -1 for name in SUPPLIED_ITEMS}
 ITEM_NAMES = tuple(FLOW_ITEMS)
 SIGNS = np.array([float(sign) for sign in FLOW_ITEMS.values()])
 

@@ -3,12 +3,7 @@
 from __future__ import annotations
 
 import calendar
-from datetime import date, timedelta
-
-
-def is_month_end(day: date) -> bool:
-    """Whether a date is the last of its month."""
-    return (day + timedelta(days=1)).day == 1
+from datetime import date
 
 
 def month_of(day: date, valuation: date) -> int:

@@ -6,7 +6,8 @@ import math
 from collections.abc import Iterator
 from dataclasses import dataclass
 
-from projector.study.clock import is_month_end, month_end
+from projector.study.clock import month_end
+from projector.study.daycounts import is_month_end
 from projector.study.errors import LocatedError
 from projector.study.schema import StudyForm
 from projector.study.tomlfile import Place, dotted, line_of, toml_text

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import calendar
 from collections.abc import Callable
 from dataclasses import dataclass
 from datetime import date
@@ -13,6 +12,7 @@ import numpy as np
 import pandas as pd
 
 from projector.study.columns import COUPON_FREQUENCIES, YEARS_TO_MATURITY_AT_MOST
+from projector.study.daycounts import months_before
 from projector.study.errors import LocatedError
 from projector.study.tablecheck import Checked, row_errors
 
@@ -137,17 +137,6 @@ def _is_regular(terms: pd.Series) -> bool:
     if months % (12 // int(terms["coupon_frequency"])):
         return False
     return bool(first == months_before(maturity, months, month_end=bool(terms["end_of_month"])))
-
-
-def months_before(day: date, months: int, *, month_end: bool) -> date:
-    """The same day of the month so many months earlier, the last day where that month is shorter.
-
-    month_end  whether a last day of the month stays the last day
-    """
-    year, month = divmod(day.year * 12 + day.month - 1 - months, 12)
-    last = calendar.monthrange(year, month + 1)[1]
-    is_last = day.day == calendar.monthrange(day.year, day.month)[1]
-    return date(year, month + 1, last if month_end and is_last else min(day.day, last))
 
 
 @dataclass(frozen=True)

@@ -6,8 +6,8 @@ from typing import Any
 
 import pytest
 
+from projector.study.daycounts import months_before
 from projector.study.reading import read_study
-from projector.study.termchecks import months_before
 
 CASES = [
     ("lots", 2, "security_id", "B9", "E401"),
