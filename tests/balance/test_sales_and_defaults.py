@@ -146,7 +146,7 @@ def test_limit_par_defaulted_is_recovery_and_loss(lagged: Any) -> None:
 
 def test_known_default_cost_is_value_lost_less_recovery_expected(lagged: Any) -> None:
     _, r = lagged
-    # in month 7 one month of 3 % a half-year is accrued at the opening? no: month 6 paid, so none is lost
+    # month 7 opens just after a coupon: nothing is accrued, and none is lost
     m, par = 7, r.par["defaulted"][7, 0]
     book = 100.0  # B3 stands at par on the coupon date of month 6
     np.testing.assert_allclose(r.balances["default_cost"][m, 0], par / 100.0 * (book - 100.0 * RECOVERED), rtol=1e-10)

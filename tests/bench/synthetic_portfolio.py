@@ -99,9 +99,10 @@ def study_text(paths: int) -> str:
              "liability_streams", "control_totals")  # fmt: skip
     tables = "".join(f"{n} = {json.dumps(n + '.parquet')}\n" for n in names)
     classes = "".join(
-        f'[[purchases.classes]]\nname = "{r} {t} years"\nrating = "{r}"\nterm_years = {t}\nspread_bp = {s}\nweight = {w}\n'
-        for r, t, s, w in (("AA", 10, 80, 0.2), ("A", 5, 115, 0.2), ("A", 10, 115, 0.2), ("BBB", 10, 165, 0.2), ("A", 20, 130, 0.2))
-    )  # fmt: skip
+        f'[[purchases.classes]]\nname = "{r} {t} years"\nrating = "{r}"\nterm_years = {t}\n'
+        f"spread_bp = {s}\nweight = 0.2\n"
+        for r, t, s in (("AA", 10, 80), ("A", 5, 115), ("A", 10, 115), ("BBB", 10, 165), ("A", 20, 130))
+    )
     return f"""[study]
 name = "Benchmark"
 company = "Invented"

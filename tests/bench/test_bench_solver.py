@@ -86,7 +86,7 @@ def test_bench_one_value_and_sixteen_against_the_tree() -> None:
 
 
 def random_set(seed: int, count: int = 96) -> list[tuple[float, float, Problem, Problem]]:
-    """Random semiannual callable bonds: model parameters, the problem at equal spreads, and with +100 bp for holders."""
+    """Random semiannual callable bonds: model parameters, problem at equal spreads and with +100 bp for holders."""
     rng = np.random.default_rng(seed)
     out = []
     for _ in range(count):
