@@ -16,8 +16,6 @@ from dataclasses import dataclass
 from datetime import date
 from typing import NamedTuple
 
-from scipy.optimize import brentq
-
 from projector.bonds.schedule import (
     DatedBond,
     coupon_times,
@@ -184,6 +182,8 @@ def rate_at_price(value: Callable[[float], float], price: float) -> float:
             raise ValueError(f"no yield gives the price {price}")
     if low == high:
         return low
+    from scipy.optimize import brentq  # here, not above: it takes a quarter of a second that `check` need not wait
+
     return float(brentq(lambda rate: value(rate) - price, low, high, xtol=1e-16, rtol=1e-15, maxiter=300))
 
 

@@ -11,7 +11,6 @@ from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
-from scipy.optimize import brentq
 
 Array = NDArray[np.float64]
 
@@ -174,6 +173,8 @@ def _roots(coefficients: Array, changes: int) -> list[float]:
 
 
 def _solve(terms: Sequence[float], low: float, high: float) -> float:
+    from scipy.optimize import brentq  # here, not above: it takes a quarter of a second that `check` need not wait
+
     return float(brentq(lambda x: _horner(terms, x), low, high, xtol=1e-16, rtol=1e-15, maxiter=500))
 
 

@@ -2,12 +2,9 @@
 
 from __future__ import annotations
 
-import math
-
 import numpy as np
 import numpy.typing as npt
 import pandas as pd
-from scipy.optimize import brentq
 
 from projector.bonds.yields import accrued_interest
 from projector.run.prepare import Prepared, start_discount
@@ -16,18 +13,22 @@ Array = npt.NDArray[np.float64]
 
 LISTED_OVER_BP = 5.0
 DAYS_A_YEAR = 365.25
+MOST_STEPS = 100
 
 
 def spread_of(times: Array, amounts: Array, log_discount: Array, price: float) -> float:
-    """Continuously compounded spread at which payments are worth a dirty price. [1/year]; nan: none in -50..100 %"""
-    base = amounts * np.exp(log_discount)
+    """Continuously compounded spread at which payments are worth a dirty price, by Newton. [1/year]; nan: not found
 
-    def miss(spread: float) -> float:
-        return math.fsum((base * np.exp(-spread * times)).tolist()) - price
-
-    if miss(-0.5) < 0.0 or miss(1.0) > 0.0:
-        return float("nan")
-    return float(brentq(miss, -0.5, 1.0, xtol=1e-10))
+    The value is falling and convex in the spread, so Newton from the left of the root never passes it.
+    """
+    base, spread = amounts * np.exp(log_discount), -0.5
+    for _ in range(MOST_STEPS):
+        value = base * np.exp(-spread * times)
+        miss = float(value.sum()) - price
+        if abs(miss) < 1e-10:
+            return spread
+        spread += miss / float((value * times).sum())
+    return float("nan")
 
 
 def mapping_differences(prepared: Prepared) -> pd.DataFrame:

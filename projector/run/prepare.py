@@ -109,9 +109,9 @@ def exercise_model(study: Study) -> ExerciseModel:
     return ExerciseModel(m.mean_reversion, m.normal_volatility, 100.0 * m.issuer_cost_share_of_par)
 
 
-def prepare(study: Study) -> Prepared:
-    """Lays out a checked study."""
-    paths = build_paths(study)
+def prepare(study: Study, paths: PathSet | None = None) -> Prepared:
+    """Lays out a checked study; the path set may be handed in when it was built before."""
+    paths = paths or build_paths(study)
     bonds = map_bonds(study.tables.securities, study.tables.call_rights, study.valuation_date)
     spreads, calibrated = spreads_and_prices(study, paths, bonds)
     terms = DefaultTerms.from_study(study.defaults, study.tables.default_costs)

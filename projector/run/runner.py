@@ -52,7 +52,7 @@ def stage(folder: Path) -> Staged:
     paths = build_paths(study)
     curve_stage(study, paths)
     stream_stage(study, paths)
-    prepared = prepare(study)
+    prepared = prepare(study, paths)
     starting_asset_stage(prepared)
     return Staged(prepared, (*warnings, *run_warnings(prepared)))
 

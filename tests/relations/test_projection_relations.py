@@ -429,3 +429,15 @@ def test_limit_segments_add_to_the_total(busy_results: Any) -> None:
     for column in ("cash", "statement_start", "reserve", "statement_surplus"):
         parts = sum(table.xs(segment, level="segment")[column] for segment in BUSY_SEGMENTS)
         np.testing.assert_allclose(parts, table.xs("all", level="segment")[column], rtol=0, atol=1e-8)
+
+
+# the demo study, on which no amount was chosen for these tests
+
+DEMO = Path(__file__).resolve().parents[2] / "scenarios" / "harbour_ridge_2022"
+
+
+def test_order_a_path_of_the_demo_alone_is_the_path_in_the_block() -> None:
+    prepared = stage(DEMO).prepared
+    whole = project(prepared, 0, PATHS)
+    for i in (4, 6):
+        assert_same(project(prepared, i, i + 1), whole, lambda a, i=i: a[..., i : i + 1])

@@ -155,6 +155,16 @@ def test_limit_a_missing_folder_ends_with_2_and_one_sentence(tmp_path: Path, ver
     assert ended.err.count("\n") == 1
 
 
+def test_limit_yields_that_cannot_be_discounted_end_with_2_and_a_sentence(tmp_path: Path, command: Any) -> None:
+    study = hand_study(tmp_path / "hand")
+    rates = (("3", "0.01"), ("12", "0.01"), ("120", "0.02"), ("360", "0.29"))
+    study.tables["yield_curve"] = [{"tenor_months": tenor, "rate": rate} for tenor, rate in rates]
+    ended = command("check", study.write())
+    assert (ended.code, ended.out) == (2, "")
+    assert ended.err.startswith("E4")
+    assert "leave no positive discount" in ended.err
+
+
 def test_limit_a_study_that_would_not_fit_ends_with_4_and_the_arithmetic(
     hand_folder: Path, tmp_path: Path, monkeypatch: pytest.MonkeyPatch, command: Any
 ) -> None:
