@@ -1,10 +1,10 @@
 """Year-end asset adequacy projection: callable bonds with issuer-optimal calls against liability streams.
 
     import projector
-    results = projector.run("scenarios/harbour_ridge_2022")   # RunResults: pandas DataFrames with documented columns
+    results = projector.run_study("scenarios/harbour_ridge_2022")   # DataFrames with documented columns
     results.measures, results.calls, results.balance, ...
 
-Columns and units: `projector.columns()`. Everything heavy is imported when first used.
+Columns and units: `projector.result_columns()`. Everything heavy is imported when first used.
 """
 
 from __future__ import annotations
@@ -18,38 +18,38 @@ if TYPE_CHECKING:
     from projector.run.runner import Staged
 
 __version__ = "0.1.0"
-__all__ = ["check", "columns", "new", "report", "run"]
+__all__ = ["check_study", "new_study", "render_report", "result_columns", "run_study"]
 
 
-def new(folder: str | PathLike[str]) -> None:
+def new_study(folder: str | PathLike[str]) -> None:
     """Writes a commented study folder to start from. Raises StudyRefused when the folder is there and not empty."""
-    from projector.study.folder import new_study
+    from projector.study.folder import new_study as write_folder
 
-    new_study(Path(folder))
+    write_folder(Path(folder))
 
 
-def check(folder: str | PathLike[str]) -> Staged:
+def check_study(folder: str | PathLike[str]) -> Staged:
     """Reads and checks a study, calibrates spreads, projects nothing. Raises StudyRefused with every located error."""
     from projector.run.runner import stage
 
     return stage(Path(folder))
 
 
-def run(folder: str | PathLike[str], threads: int | None = None, block_paths: int | None = None) -> RunResults:
+def run_study(folder: str | PathLike[str], threads: int | None = None, block_paths: int | None = None) -> RunResults:
     """The year-end run in memory. Raises StudyRefused, StudyTooLarge or IdentityFailed."""
-    from projector.run.runner import run_study
+    from projector.run import runner
 
-    return run_study(Path(folder), threads, block_paths)
+    return runner.run_study(Path(folder), threads, block_paths)
 
 
-def report(results: RunResults, run_command: str = "projector run FOLDER") -> str:
+def render_report(results: RunResults, run_command: str = "projector run FOLDER") -> str:
     """The reserve-adequacy report as one HTML text."""
-    from projector.report.render import render_report
+    from projector.report import render
 
-    return render_report(results, run_command)
+    return render.render_report(results, run_command)
 
 
-def columns() -> dict[str, dict[str, tuple[str, str]]]:
+def result_columns() -> dict[str, dict[str, tuple[str, str]]]:
     """Result tables: table -> column -> (unit, meaning)."""
     from projector.run.results import COLUMNS
 

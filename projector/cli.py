@@ -26,7 +26,7 @@ def new(folder: Annotated[Path, typer.Argument(help="folder to make; must not ex
     """Write a study folder to start from: a commented study.toml and empty tables."""
     import projector
 
-    projector.new(folder)
+    projector.new_study(folder)
     print(f"wrote {folder}: state every value in study.toml, fill the tables, then run: projector check {folder}")
 
 
@@ -61,6 +61,8 @@ def run(
     from projector.run.results_folder import folder_name, write_results
     from projector.run.runner import run_study
 
+    if out is not None:
+        refuse_target(folder, out)
     with Bar() as bar:
         results = run_study(folder, threads or None, block or None, bar.show)
         target = out or Path("reports") / folder_name(folder, results.study.input_digest)
@@ -95,6 +97,8 @@ def no_value(_: object) -> None:
 
 def refuse_target(folder: Path, target: Path) -> None:
     """Results never land in the study folder nor over a folder that is not a run's."""
+    if target.is_symlink():
+        raise typer.BadParameter(f"--out {target} is a link; name the folder itself")
     inside, study = target.resolve(), folder.resolve()
     if inside == study or study in inside.parents:
         raise typer.BadParameter(f"--out {target} lies in the study folder; results never do, choose another place")

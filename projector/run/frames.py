@@ -126,24 +126,28 @@ def spread_out(values: Array, months: list[int], last: int) -> Array:
 def mix_frame(prepared: Prepared, blocks: list[BlockResult]) -> pd.DataFrame:
     """Statement value by asset class at years 0, 5, 10, 20, 30, 40, 50, segments and all."""
     rows = []
-    groups, classes = prepared.holdings.groups, prepared.strategy.mix.names
+    years = [y for y in MIX_YEARS if 12 * y <= prepared.months]
     for r in blocks:
-        for year in [y for y in MIX_YEARS if 12 * y <= prepared.months]:
-            m = 12 * year
-            for p in range(r.path_hi - r.path_lo):
-                scenario = prepared.paths.ids[r.path_lo + p]
-                for s, name in enumerate([*prepared.segment_names, ALL_SEGMENTS]):
-                    mine = range(len(prepared.segment_names)) if name == ALL_SEGMENTS else [s]
-                    held: dict[tuple[str, bool], float] = {}
-                    for g in range(groups.count):
-                        if int(groups.segment[g]) in mine:
-                            key = (groups.asset_class[g], bool(groups.callable_[g]))
-                            held[key] = held.get(key, 0.0) + float(r.group_book[m][g, p])
-                    for c, label in enumerate(classes):
-                        held[(f"bought: {label}", False)] = sum(float(r.class_book[m][c, i, p]) for i in mine)
-                    held[("cash", False)] = sum(float(r.balances["cash"][m, i, p]) for i in mine)
-                    rows += [(scenario, name, year, k[0], k[1], v) for k, v in held.items()]
+        for p in range(r.path_hi - r.path_lo):
+            for s, name in enumerate([*prepared.segment_names, ALL_SEGMENTS]):
+                mine = list(range(len(prepared.segment_names))) if name == ALL_SEGMENTS else [s]
+                head = (prepared.paths.ids[r.path_lo + p], name)
+                rows += [(*head, year, *row) for year in years for row in mix_rows(prepared, r, 12 * year, mine, p)]
     return pd.DataFrame(rows, columns=list(COLUMNS["mix"]))
+
+
+def mix_rows(prepared: Prepared, r: BlockResult, m: int, segments: list[int], p: int) -> list[tuple[str, bool, float]]:
+    """Class, callable or not, and statement value at one month, of some segments together."""
+    groups = prepared.holdings.groups
+    held: dict[tuple[str, bool], float] = {}
+    for g in range(groups.count):
+        if int(groups.segment[g]) in segments:
+            key = (groups.asset_class[g], bool(groups.callable_[g]))
+            held[key] = held.get(key, 0.0) + float(r.group_book[m][g, p])
+    for c, label in enumerate(prepared.strategy.mix.names):
+        held[(f"bought: {label}", False)] = sum(float(r.class_book[m][c, i, p]) for i in segments)
+    held[("cash", False)] = sum(float(r.balances["cash"][m, i, p]) for i in segments)
+    return [(*key, value) for key, value in held.items()]
 
 
 def decisions_frame(prepared: Prepared, blocks: list[BlockResult]) -> pd.DataFrame:

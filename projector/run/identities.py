@@ -12,6 +12,7 @@ import numpy as np
 import numpy.typing as npt
 import pandas as pd
 
+from projector.liabilities.streams import SuppliedStream
 from projector.run.block import BlockResult
 from projector.run.prepare import Prepared
 from projector.study.errors import IdentityFailed
@@ -27,28 +28,38 @@ class Sums:
 
     def __init__(self, code: str, name: str) -> None:
         self.code, self.name = code, name
-        self.worst, self.where, self.count, self.holds = 0.0, "", 0, True
+        self.worst, self.where, self.count, self.holds = -1.0, "", 0, True
 
     def add(self, terms: Iterable[Array], labels: tuple[tuple[str, ...], ...], first_month: int) -> None:
         """Compares at every cell; labels are the scenario and segment names of the last two axes reversed."""
         parts = list(terms)
         residual, size = np.zeros(parts[0].shape), np.zeros(parts[0].shape)
-        for term in parts:
-            residual = residual + term
-            size = size + np.abs(term)
+        with np.errstate(invalid="ignore"):  # infinities that cancel are caught below as not finite
+            for term in parts:
+                residual = residual + term
+                size = size + np.abs(term)
         gap, allowed = np.abs(residual), RELATIVE * size + ABSOLUTE
         self.count += gap.size
-        self.holds = self.holds and bool((gap <= allowed).all())  # nan is not <=, so it fails
-        at = np.unravel_index(int(np.argmax(np.where(np.isnan(gap), np.inf, gap))), gap.shape)
-        if gap.size and (np.isnan(gap[at]) or gap[at] >= self.worst):
-            self.worst = float(gap[at])
-            names = [axis[i] for axis, i in zip(labels, at[1:])]
-            self.where = ", ".join([*reversed(names), f"month {int(at[0]) + first_month}"])
+        self.holds = self.holds and bool((np.isfinite(gap) & (gap <= allowed)).all())
+        if gap.size == 0:
+            return
+        # path first, so that of equal differences the same one is named however the paths are cut into blocks
+        order = np.moveaxis(np.where(np.isfinite(gap), gap, np.inf), -1, 0)
+        at = np.unravel_index(int(np.argmax(order)), order.shape)
+        if order[at] > self.worst:
+            self.worst = float(order[at])
+            cell = (*at[1:], at[0])
+            names = [axis[i] for axis, i in zip(labels, cell[1:])]
+            self.where = ", ".join([*reversed(names), f"month {int(cell[0]) + first_month}"])
+
+    def gap_text(self) -> str:
+        """The worst difference in words."""
+        return f"{self.worst:.6g}" if np.isfinite(self.worst) else "that is not a finite number"
 
     def row(self) -> dict[str, object]:
         return {
             "identity": self.code, "name": self.name, "checked": self.count, "tolerance": RULE,
-            "worst_difference": self.worst, "where": self.where, "holds": self.holds,
+            "worst_difference": max(self.worst, 0.0), "where": self.where, "holds": self.holds,
         }  # fmt: skip
 
 
@@ -125,6 +136,24 @@ def coupon_sums(prepared: Prepared) -> Sums:
     return check
 
 
+def reserve_sums(prepared: Prepared, blocks: list[BlockResult]) -> Sums:
+    """I11: the reserve of each segment is the sum of what its streams supply, path by path and month by month."""
+    check = Sums("I11", "reserve: balances = supplied streams, added up by segment")
+    rows = prepared.study.tables.liability_streams
+    rows = rows[(rows["item"] == "reserve_statutory") & (rows["month"] <= prepared.months)]
+    month, amount = rows["month"].to_numpy(), rows["amount"].to_numpy(dtype=np.float64)
+    segment = rows["segment"].map({s: i for i, s in enumerate(prepared.segment_names)}).to_numpy()
+    scenario = rows["scenario"].to_numpy()
+    for block in blocks:
+        ids = prepared.paths.ids[block.path_lo : block.path_hi]
+        supplied = np.zeros_like(block.balances["reserve"])
+        for p, name in enumerate(ids):
+            mine = (scenario == name) | (scenario == "all")
+            np.add.at(supplied[:, :, p], (month[mine], segment[mine]), amount[mine])
+        check.add([block.balances["reserve"], -supplied], (prepared.segment_names, ids), 0)
+    return check
+
+
 FORMS = (
     ("I1", "cash: opening + flows = closing", cash_terms, 1),
     ("I2", "par: opening - redeemed - called - sold - defaulted + bought = closing", par_terms, 1),
@@ -145,8 +174,10 @@ def check_identities(prepared: Prepared, blocks: list[BlockResult]) -> pd.DataFr
             check.add(terms(block), (segments, prepared.paths.ids[block.path_lo : block.path_hi]), first_month)
         checks.append(check)
     checks.insert(4, coupon_sums(prepared))
+    if all(isinstance(b, SuppliedStream) for b in prepared.blocks):
+        checks.append(reserve_sums(prepared, blocks))
     failed = [c for c in checks if not c.holds]
     if failed:
-        lines = [f"{c.code} {c.name}: difference {c.worst:.6g} at {c.where}, allowed {RULE}" for c in failed]
+        lines = [f"{c.code} {c.name}: difference {c.gap_text()} at {c.where}, allowed {RULE}" for c in failed]
         raise IdentityFailed("sums that must hold do not; no report was written:\n" + "\n".join(lines))
     return pd.DataFrame([c.row() for c in checks])

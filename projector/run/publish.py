@@ -15,6 +15,7 @@ import pyarrow.parquet as pq
 from projector.run.results import COLUMNS, RunResults
 
 STALE_PREFIX = ".unfinished-"
+ASIDE_PREFIX = ".earlier-"
 
 
 def sync(path: Path) -> None:
@@ -47,11 +48,26 @@ def file_digest(path: Path) -> str:
     return hashlib.sha256(path.read_bytes()).hexdigest()
 
 
+def owner_alive(name: str) -> bool:
+    """Whether the process that made a temporary folder, <prefix><number>-<rest>, still runs."""
+    owner = name.split("-")[1]
+    return owner.isdigit() and process_alive(int(owner))
+
+
 def remove_stale(parent: Path) -> None:
-    """Clears what a killed run left beside its place; a run still going keeps its own."""
+    """Clears what a killed run left beside its place; a run still going keeps its own.
+
+    A kill between the two renames leaves the earlier folder set aside and nothing in its place: it is put back.
+    """
+    for path in sorted(parent.glob(f"{ASIDE_PREFIX}*")):
+        if not owner_alive(path.name):
+            target = parent / path.name.split("-", 2)[2]
+            if target.exists():
+                shutil.rmtree(path, ignore_errors=True)
+            else:
+                os.rename(path, target)
     for path in parent.glob(f"{STALE_PREFIX}*"):
-        owner = path.name.removeprefix(STALE_PREFIX).split("-")[0]
-        if not (owner.isdigit() and process_alive(int(owner))):
+        if not owner_alive(path.name):
             shutil.rmtree(path, ignore_errors=True)
 
 
@@ -75,7 +91,7 @@ def publish(target: Path, build: Callable[[Path], None]) -> None:
     remove_stale(parent)
     fresh = Path(tempfile.mkdtemp(prefix=f"{STALE_PREFIX}{os.getpid()}-", dir=parent))
     os.chmod(fresh, 0o755)
-    old = fresh.with_name(fresh.name + "-old")
+    old = parent / f"{ASIDE_PREFIX}{os.getpid()}-{target.name}"
     try:
         build(fresh)
         for path in sorted(fresh.rglob("*")):

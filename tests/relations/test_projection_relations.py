@@ -441,3 +441,13 @@ def test_order_a_path_of_the_demo_alone_is_the_path_in_the_block() -> None:
     whole = project(prepared, 0, PATHS)
     for i in (4, 6):
         assert_same(project(prepared, i, i + 1), whole, lambda a, i=i: a[..., i : i + 1])
+
+
+@pytest.mark.long
+def test_order_blocks_and_threads_change_no_digest_and_no_byte_of_the_demo_s_report():
+    staged = stage(DEMO)
+    one = collect(staged, [project(staged.prepared, 0, PATHS)])
+    for threads, block in ((2, 3), (1, 1)):
+        other = collect(staged, run_blocks(staged.prepared, threads, block))
+        assert other.result_digests == one.result_digests  # mix: rows in another order
+        assert render_report(other, "projector run demo") == render_report(one, "projector run demo")

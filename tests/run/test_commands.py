@@ -8,6 +8,7 @@ import random
 import signal
 import subprocess
 import sys
+import textwrap
 import time
 from collections.abc import Callable
 from pathlib import Path
@@ -432,3 +433,36 @@ def tables(folder: Path) -> dict[str, str]:
     return {"input digest": statement["predicate"]["buildDefinition"]["inputDigest"]} | {
         name: digest for name, digest in found.items() if name != "run_statement.json"
     }
+
+
+def test_limit_a_kill_between_the_two_renames_loses_nothing(tmp_path):
+    code = textwrap.dedent("""
+        import os, signal, sys
+        from pathlib import Path
+        from projector.run import publish
+        target = Path(sys.argv[1])
+        def build(text):
+            return lambda folder: (folder / "a.txt").write_text(text)
+        publish.publish(target, build("old"))
+        rename = os.rename
+        def killed(a, b):
+            rename(a, b)
+            if str(a) == str(target):
+                os.kill(os.getpid(), signal.SIGKILL)
+        os.rename = killed
+        publish.publish(target, build("new"))
+    """)
+    import projector
+    from projector.run import publish
+
+    home = Path(projector.__file__).resolve().parents[1]
+    subprocess.run(
+        [sys.executable, "-c", code, str(tmp_path / "out")], env={"PYTHONPATH": str(home), "HOME": str(tmp_path.parent)}
+    )
+
+    def fails(_):
+        raise OSError(28, "No space left on device")
+
+    with pytest.raises(OSError, match="No space"):
+        publish.publish(tmp_path / "out", fails)
+    assert (tmp_path / "out" / "a.txt").read_text() in ("old", "new")

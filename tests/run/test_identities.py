@@ -18,7 +18,7 @@ from projector.run.block import BlockResult, project
 from projector.run.identities import check_identities
 from projector.study.errors import IdentityFailed
 
-CODES = ["I1", "I2", "I3", "I4", "I5", "I9", "I10"]
+CODES = ["I1", "I2", "I3", "I4", "I5", "I9", "I10", "I11"]
 M, S, P = 14, 1, 2  # the cell of the planted faults: month 14, second segment, third path
 WHERE = "S3, life, month 14"
 
@@ -57,7 +57,12 @@ def test_limit_every_identity_holds_and_says_how_much_it_compared(request: Any, 
     assert table["identity"].tolist() == CODES
     assert table["holds"].all()
     segments, paths = block.balances["cash"].shape[1:]
-    cells = {"I3": 25 * segments * paths, "I5": len(staged.prepared.bonds.ids), "I9": segments * paths}
+    cells = {
+        "I3": 25 * segments * paths,
+        "I5": len(staged.prepared.bonds.ids),
+        "I9": segments * paths,
+        "I11": 25 * segments * paths,
+    }
     assert dict(zip(table["identity"], table["checked"])) == {c: cells.get(c, 24 * segments * paths) for c in CODES}
     assert (table["worst_difference"] < 1e-6).all()
 
@@ -149,13 +154,13 @@ def test_limit_a_coupon_lost_in_mapping_is_caught_with_its_security(busy: Any, b
 def test_limit_what_is_not_a_number_is_caught(busy: Any, busy_block: Any, code: str, field: str, key: Any) -> None:
     said = refusal(busy.prepared, altered(busy_block, field, key, more(np.nan)))
     assert code in said
-    assert "difference nan at S3, life, month " in said[code]
+    assert "difference that is not a finite number at S3, life, month " in said[code]
 
 
 def test_limit_what_is_not_a_number_in_the_first_block_is_still_named_after_the_last(busy: Any) -> None:
     first, second = project(busy.prepared, 0, 3), project(busy.prepared, 3, 7)
     bad = altered(first, "par", "sold", more(np.nan, (M, 0, 1)))
-    with pytest.raises(IdentityFailed, match=r"I2 .*difference nan at S2, annuities, month 14"):
+    with pytest.raises(IdentityFailed, match=r"I2 .*difference that is not a finite number at S2, annuities, month 14"):
         check_identities(busy.prepared, [bad, second])
 
 
@@ -180,3 +185,39 @@ def test_limit_a_failed_identity_ends_the_command_with_3_and_writes_nothing(
     assert said.out == ""
     assert said.err.startswith("sums that must hold do not; no report was written:\nI2 par: ")
     assert list(tmp_path.iterdir()) == []
+
+
+def test_order_the_identities_table_does_not_depend_on_blocks(hand):
+    from projector.run.identities import check_identities
+    from projector.run.runner import run_blocks
+
+    one = check_identities(hand.prepared, run_blocks(hand.prepared, 1, 2))
+    two = check_identities(hand.prepared, run_blocks(hand.prepared, 1, 1))
+    assert one["where"].tolist() == two["where"].tolist()
+
+
+def test_limit_an_infinite_figure_is_caught(busy, busy_block):
+    from projector.run.identities import check_identities
+    from projector.study.errors import IdentityFailed
+
+    for field, key in (
+        ("par", "sold"),
+        ("book", "accretion"),
+        ("balances", "interest_earned"),
+        ("flows", ("start", "sale")),
+    ):
+        bad, table = copy(busy_block), dict(getattr(busy_block, field))
+        table[key] = table[key].copy()
+        table[key][14, 1, 2] = np.inf
+        setattr(bad, field, table)
+        with pytest.raises(IdentityFailed):
+            check_identities(busy.prepared, [bad])
+
+
+def test_limit_a_reserve_off_by_a_cent_is_caught(busy, busy_block):
+    bad, balances = copy(busy_block), dict(busy_block.balances)
+    balances["reserve"] = balances["reserve"].copy()
+    balances["reserve"][7, 0, 1] += 0.01
+    bad.balances = balances
+    with pytest.raises(IdentityFailed, match="I11"):
+        check_identities(busy.prepared, [bad])
