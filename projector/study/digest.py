@@ -43,7 +43,9 @@ def _add(total: Any, content: bytes) -> None:
 
 
 def column_bytes(column: Column, values: pd.Series) -> bytes:
-    """A column as little-endian numbers, days since 1970, flags, or UTF-8 texts; empty cells have one form."""
+    """A column as little-endian numbers, days since 1970, flags, or distinct UTF-8 texts in order and where each stands;
+    empty cells have one form.
+    """
     if column.kind == "number":
         numbers = np.where(np.isnan(values.to_numpy(np.float64)), np.nan, values.to_numpy(np.float64) + 0.0)
         return bytes(numbers.astype("<f8").tobytes())
@@ -53,7 +55,8 @@ def column_bytes(column: Column, values: pd.Series) -> bytes:
         return bytes(values.to_numpy().astype("datetime64[D]").astype(np.int64).astype("<i8").tobytes())
     if column.kind == "flag":
         return bytes(values.to_numpy(bool).astype(np.uint8).tobytes())
-    return "\0".join([str(len(values)), *values.tolist()]).encode()
+    codes, distinct = pd.factorize(values, sort=True)
+    return "\0".join([str(len(values)), *distinct.tolist()]).encode() + codes.astype("<i8").tobytes()
 
 
 def _plain(value: Any) -> Any:

@@ -85,7 +85,10 @@ def row_errors(
 
     In `problem` and `remedy` the names of columns in braces stand for the row's values.
     """
-    faulty = frame[np.asarray(mask, dtype=bool)]
+    chosen = np.asarray(mask, dtype=bool)
+    if not chosen.any():  # the usual case, and rows to dictionaries are dear
+        return []
+    faulty = frame[chosen]
     return [
         LocatedError(
             code=code,
