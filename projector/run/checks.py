@@ -38,7 +38,7 @@ def stream_stage(study: Study, paths: PathSet) -> None:
     """Streams against the rate paths: the set first, since a foreign set makes every other fault meaningless."""
     streams = study.tables.liability_streams
     insensitive = study.liabilities.rate_insensitive_blocks
-    sensitive = tuple(sorted(set(streams["block"]) - set(insensitive)))
+    sensitive = tuple(sorted(set(streams["block"].unique()) - set(insensitive)))
     file = "study.toml"
     errors = digest_errors(study.liabilities.scenario_set_digest, paths.digest(), sensitive, file)
     table = str(streams.attrs.get("file", "liability_streams"))

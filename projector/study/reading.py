@@ -192,7 +192,7 @@ def _rating_errors(form: StudyForm, frames: dict[str, pd.DataFrame], files: dict
 
 def _binding_errors(form: StudyForm, streams: pd.DataFrame) -> list[LocatedError]:
     """Streams made for scenarios say for which set: only insensitive blocks need no digest."""
-    bound = set(streams["block"]) - set(form.liabilities.rate_insensitive_blocks)
+    bound = set(streams["block"].unique()) - set(form.liabilities.rate_insensitive_blocks)
     if form.liabilities.scenario_set_digest is not None or not bound:
         return []
     return [

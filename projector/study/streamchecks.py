@@ -177,7 +177,7 @@ def _foreign_errors(streams: pd.DataFrame, scenario_ids: tuple[str, ...], file: 
 def _lacking_errors(streams: pd.DataFrame, scenario_ids: tuple[str, ...], file: str) -> list[LocatedError]:
     errors = []
     for block, rows in streams.groupby("block", sort=True):
-        have = set(rows["scenario"])
+        have = set(rows["scenario"].unique())
         lacking = [scenario for scenario in scenario_ids if scenario not in have]
         if lacking:
             errors.append(
