@@ -43,8 +43,9 @@ def _add(total: Any, content: bytes) -> None:
 
 
 def column_bytes(column: Column, values: pd.Series) -> bytes:
-    """A column as little-endian numbers, days since 1970, flags, or distinct UTF-8 texts in order and where each stands;
-    empty cells have one form.
+    """A column as little-endian numbers, days since 1970, flags, or distinct texts in order and where each stands.
+
+    Empty cells have one form.
     """
     if column.kind == "number":
         numbers = np.where(np.isnan(values.to_numpy(np.float64)), np.nan, values.to_numpy(np.float64) + 0.0)

@@ -1,0 +1,222 @@
+"""Decisions on paths: what a bound settles solving would settle alike, near ties are looked at again, months are those
+of a plain search, and the key of what is kept holds what it must and nothing else.
+"""
+
+from __future__ import annotations
+
+from dataclasses import replace
+
+import numpy as np
+import pytest
+
+from projector.bonds.calibration import HIGHEST, PriceToday, calibrate
+from projector.bonds.call_rules import Opportunity, OptimalWithCost
+from projector.bonds.decisions import DecisionPass, DecisionRows, unit_key
+from projector.bonds.exercise.model import ShortRateModel
+from projector.bonds.exercise.plain import plain_values
+from projector.bonds.exercise.step_operator import GRID_FINER
+from projector.bonds.mapped import MappedBonds
+from projector.bonds.solving import ExerciseModel, Jobs, MonthSolver
+from projector.bonds.spreads import SpreadPath
+
+A, SIGMA, COST = 0.03, 0.01, 0.5
+MONTHS = 60
+
+
+def bonds() -> MappedBonds:
+    """Four securities: half-year rights from month 12, declining; monthly rights; one European; one without."""
+    terms = [(54, 6, 6.0, range(12, 54, 6)), (48, 1, 5.5, range(6, 48)), (60, 6, 5.0, [30]), (42, 6, 4.0, [])]
+    last = 60
+    coupon, accrued = np.zeros((4, last + 1)), np.zeros((4, last + 1))
+    price = np.full((4, last + 1), np.inf)
+    flow = np.zeros((4, last + 1))
+    for u, (maturity, _, rate, rights) in enumerate(terms):
+        for m in range(maturity, 0, -6):
+            coupon[u, m] = rate / 2.0
+        months = np.arange(maturity)
+        accrued[u, :maturity] = rate / 2.0 * ((months - maturity) % 6) / 6.0
+        for i, m in enumerate(rights):
+            price[u, m] = max(100.0, 102.0 - 0.5 * i) if u == 0 else 100.0
+        flow[u] = coupon[u]
+        flow[u, maturity] += 100.0
+    maturity = np.array([t[0] for t in terms])
+    return MappedBonds(
+        ids=("A", "B", "C", "D"), ratings=("A",) * 4, maturity=maturity, step=np.array([t[1] for t in terms]),
+        coupon_step=np.full(4, 6), coupon=coupon, accrued=accrued, clean_price=price, flow=flow,
+        dirty_price=price + accrued,
+    )  # fmt: skip
+
+
+def spreads(refunding: float = 0.01, valuation: float = 0.012) -> SpreadPath:
+    months = MONTHS + 1
+    return SpreadPath(np.full((4, months), valuation), np.ones(months), np.zeros(4), np.full((4, months), refunding))
+
+
+def solver(cost: float = COST, sigma: float = SIGMA) -> MonthSolver:
+    return MonthSolver(bonds(), spreads(), ExerciseModel(A, sigma, cost))
+
+
+def rate(month: int) -> np.ndarray:
+    """Flat continuously compounded rates of five paths that fall, rise, or sit near the refunding level."""
+    return np.array([0.045, 0.045 - 0.0005 * month, 0.045 + 0.0005 * month, 0.02, 0.042 - 0.0002 * month])
+
+
+def discounts(month: int) -> np.ndarray:
+    return np.exp(-rate(month)[None, :] * np.arange(MONTHS + 1)[:, None] / 12.0)
+
+
+def run(s: MonthSolver, rows: DecisionRows | None = None):
+    return DecisionPass(s, OptimalWithCost(), MONTHS).run(discounts, 5, rows)
+
+
+def plain_month(u: int, p: int) -> int:
+    """First month in which going on costs at least the bar, by the plain twin on a finer grid and no bound."""
+    s = solver()
+    b = s.bonds
+    for month in np.flatnonzero(np.isfinite(b.clean_price[u])):
+        step = int(b.step[u])
+        ahead = np.arange(month + step, b.maturity[u] + 1, step)
+        d = np.concatenate([[1.0], discounts(int(month))[ahead - month, p]]) * np.exp(
+            -0.01 * np.concatenate([[0.0], ahead - month]) / 12.0
+        )
+        ratio = np.append(d[1:] / d[:-1], 1.0)
+        flow = np.concatenate([[0.0], b.flow[u, ahead]])
+        price = np.concatenate([[np.inf], b.dirty_price[u, ahead]])
+        price[-1] = np.inf
+        going_on = plain_values(ShortRateModel(A, SIGMA), step, step, GRID_FINER, ahead.size, ratio, ratio, flow, price,
+                                price + COST)[0]  # fmt: skip
+        if going_on >= b.dirty_price[u, month] + COST:
+            return int(month)
+    return -1
+
+
+def test_order_call_months_are_those_of_a_plain_search_without_bounds():
+    months = run(solver()).months()
+    for u, p in ((0, 0), (0, 1), (0, 2), (0, 3), (2, 1), (2, 3), (2, 4)):
+        assert months[u, p] == plain_month(u, p), (u, p)
+    assert (months[3] == -1).all()
+    assert len({int(m) for m in months.ravel()}) > 3
+
+
+def test_order_what_the_bound_settles_solving_settles_alike():
+    s, rows = solver(), DecisionRows()
+    run(s, rows)
+    frame = rows.frame()
+    held = frame[frame["by"] == 0]
+    assert len(held) > 20
+    for row in held.itertuples():
+        u, m = int(row.unit), int(row.month)
+        jobs = Jobs(m, int(s.bonds.step[u]), int(s.bonds.step[u]), np.array([u]), np.array([int(row.path)]))
+        value = s.solve(jobs, discounts(m), GRID_FINER, False)[0][0]
+        assert value <= row.upper_bound + 1e-6
+        assert value < row.bar
+        assert row.share == 0.0
+
+
+def test_order_every_row_says_what_its_figures_say():
+    rows = DecisionRows()
+    run(solver(), rows)
+    frame = rows.frame()
+    solved = frame[frame["by"] > 0]
+    assert ((solved["continuation"] >= solved["bar"]) == (solved["share"] > 0.0)).all()
+    assert frame.loc[frame["by"] == 0, "continuation"].isna().all()
+    assert not frame.duplicated(["unit", "path", "month"]).any()
+
+
+def test_limit_a_near_tie_is_solved_again_on_finer_grids():
+    s = solver()
+    month, u = 24, np.array([0])
+    jobs = Jobs(month, 6, 6, u, np.array([0]))
+    value = s.solve(jobs, discounts(month), GRID_FINER, False)[0]
+    decide = DecisionPass(s, OptimalWithCost(), MONTHS)
+    for gap, code in ((0.05, 1), (0.003, 2), (0.00003, 3)):
+        found, by = decide.continuations(month, 6, u, np.array([0]), value + gap, discounts(month))
+        assert by[0] == code
+        assert found[0] == pytest.approx(value[0], abs=0.002)
+
+
+def test_order_a_called_security_is_asked_no_more_and_is_called_once():
+    rows = DecisionRows()
+    events = run(solver(), rows)
+    frame = rows.frame()
+    called = frame[frame["share"] > 0.0].groupby(["unit", "path"])["month"]
+    assert (called.count() == 1).all()
+    last = frame.groupby(["unit", "path"])["month"].max()
+    assert (last.loc[called.min().index] == called.min()).all()
+    assert (events.share == 1.0).all()
+
+
+def test_order_ties_call():
+    told = Opportunity(1, np.array([100.0, 99.999]), np.array([100.0, 100.0]))
+    assert OptimalWithCost().share_called(told).tolist() == [1.0, 0.0]
+
+
+def test_order_a_higher_cost_never_calls_more_by_any_date():
+    months = [run(solver(cost)).months().astype(float) for cost in (0.0, 0.5, 2.0)]
+    late = [np.where(m < 0, np.inf, m) for m in months]
+    assert (late[0] <= late[1]).all()
+    assert (late[1] <= late[2]).all()
+
+
+def test_limit_no_volatility_calls_as_the_forward_curve_says():
+    """With sigma = 0 going on costs the least over dates fixed in advance, so the bound is the value."""
+    s = solver(sigma=0.0)
+    rows = DecisionRows()
+    run(s, rows)
+    solved = rows.frame()
+    solved = solved[solved["by"] > 0]
+    assert len(solved) > 3
+    assert solved["continuation"].to_numpy() == pytest.approx(solved["upper_bound"].to_numpy(), rel=1e-12)
+    tiny = DecisionPass(solver(sigma=1e-6), OptimalWithCost(), MONTHS).run(discounts, 5).months()
+    assert (run(s).months() == tiny).all()
+
+
+def price_today(cost: float = COST, follows: bool = False) -> PriceToday:
+    return PriceToday(bonds(), spreads(), ExerciseModel(A, SIGMA, cost), discounts(0)[:, :1].copy(), follows)
+
+
+@pytest.mark.parametrize("follows", [False, True])
+def test_order_calibration_gives_every_price_back(follows):
+    price = price_today(follows=follows)
+    clean = np.array([101.0, 99.0, 97.0, 95.0])
+    fitted = calibrate(price, clean, np.full(4, np.nan), np.full(4, 0.01))
+    assert fitted.origin == ("price",) * 4
+    assert fitted.model_price == pytest.approx(clean, abs=1e-8)
+
+
+def test_order_a_stated_spread_is_kept_and_priced():
+    price = price_today()
+    given = np.array([0.01, np.nan, 0.02, np.nan])
+    fitted = calibrate(price, np.array([np.nan, 99.0, np.nan, 95.0]), given, np.full(4, 0.01))
+    assert fitted.origin == ("given", "price", "given", "price")
+    assert fitted.spread[[0, 2]].tolist() == [0.01, 0.02]
+    assert fitted.clean_price[0] == fitted.model_price[0]
+
+
+def test_limit_a_price_no_spread_can_give_falls_back_to_the_class_spread():
+    fitted = calibrate(price_today(), np.array([101.0, 99.0, 97.0, 190.0]), np.full(4, np.nan), np.full(4, 0.01))
+    assert fitted.origin == ("price", "price", "price", "rating_spread")
+    assert fitted.spread[3] == 0.01
+    assert fitted.model_price[3] < 110.0
+    low = calibrate(price_today(), np.array([101.0, 99.0, 97.0, 20.0]), np.full(4, np.nan), np.full(4, 0.01))
+    assert low.origin[3] == "rating_spread"
+    assert (low.spread < HIGHEST).all()
+
+
+def test_order_the_key_holds_terms_spreads_rule_model_and_set_and_nothing_of_par_or_book():
+    s, rule = solver(), OptimalWithCost()
+    key = unit_key(s, rule, 0, "set", MONTHS)
+    assert key == unit_key(solver(), OptimalWithCost(), 0, "set", MONTHS)
+    price = s.bonds.dirty_price.copy()
+    price[0, 24] += 0.01
+    others = [
+        unit_key(s, rule, 1, "set", MONTHS),
+        unit_key(s, rule, 0, "other", MONTHS),
+        unit_key(s, replace(rule, name="another"), 0, "set", MONTHS),
+        unit_key(replace(s, model=ExerciseModel(A, SIGMA, 0.6)), rule, 0, "set", MONTHS),
+        unit_key(replace(s, spreads=spreads(refunding=0.011)), rule, 0, "set", MONTHS),
+        unit_key(replace(s, spreads=spreads(valuation=0.013)), rule, 0, "set", MONTHS),
+        unit_key(replace(s, bonds=replace(s.bonds, dirty_price=price)), rule, 0, "set", MONTHS),
+    ]
+    assert key not in others
+    assert len(set(others)) == len(others)
