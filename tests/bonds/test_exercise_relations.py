@@ -1,7 +1,7 @@
 """What must be true of callable values whatever the numbers: orderings and limits, on seeded random securities.
 
-V is the issuer's cost unless said. It is the least, over the issuer's stopping rules, of the value of what he pays, so a
-larger choice or a cheaper way lowers it.
+V is the issuer's cost unless said. It is the least, over the issuer's stopping rules, of the value of what he pays, so
+a larger choice or a cheaper way lowers it.
 """
 
 from __future__ import annotations
