@@ -115,15 +115,17 @@ def build_groups(frame: pd.DataFrame, asset_class: list[str], callable_: BoolArr
 
 
 def build_holdings(
-    lots: pd.DataFrame, bonds: MappedBonds, asset_class: list[str], segments: tuple[str, ...], last_month: int
-) -> tuple[Holdings, LotPaths]:
+    lots: pd.DataFrame, bonds: MappedBonds, asset_class: list[str], stated: BoolArray, segments: tuple[str, ...],
+    last_month: int,
+) -> tuple[Holdings, LotPaths]:  # fmt: skip
     """Holdings and lot figures; statement values from each lot's own value at the valuation date, never from price.
 
+    stated      securities callable at stated prices, by which sale groups are split
     last_month  months projected (statement values after it are not needed)
     """
     frame = lot_frame(lots, bonds, segments)
     with_rights = bonds.with_rights()
-    groups, lot_group = build_groups(frame, asset_class, with_rights)
+    groups, lot_group = build_groups(frame, asset_class, stated)
     months = min(last_month, bonds.last_month)
     security, par = frame["s"].to_numpy(), frame["par"].to_numpy()
     value = frame["book"].to_numpy() / par * 100.0

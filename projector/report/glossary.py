@@ -30,8 +30,8 @@ TERMS = (
     _term("Borrowing", "Short-term debt drawn before anything is sold; money, positive, deducted from surplus (M-29)."),
     _term("Bought", "Bonds purchased in the projection, as against the starting holdings."),
     _term("Call right", "A right of the issuer to repay at a stated price, or at a make-whole price, on stated dates."),
-    _term("Callable par", "Par of starting holdings that can be called at a stated price, make-whole with par call "
-                          "included; money."),
+    _term("Callable par", "Par of starting holdings that can be called at a stated price; par calls of make-whole "
+                          "securities are counted apart; money."),
     _term("Clean price", "Price per 100 of par without accrued interest."),
     _term("Continuation", "The issuer's cost per 100 of going on with the debt and calling when best later (M-20)."),
     _term("Cost rate", "IRR of the liability stream on the statutory reserve, % a year (M-9)."),

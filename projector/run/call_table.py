@@ -56,6 +56,7 @@ def call_rows(prepared: Prepared, block: BlockResult) -> pd.DataFrame:
             "security_id": np.array(prepared.bonds.ids)[unit[e]],
             "segment": np.array(prepared.segment_names)[lots.segment[lot]],
             "month": month,
+            "right": np.where(prepared.stated_rights[unit[e]], "stated price", "par call"),
             "par_called": par,
             "price": prepared.bonds.clean_price[unit[e], month],
             "premium": par * (prepared.bonds.clean_price[unit[e], month] / 100.0 - 1.0),
@@ -83,6 +84,7 @@ def calls_frame(prepared: Prepared, blocks: list[BlockResult]) -> pd.DataFrame:
     )
     keys = ["scenario", "security_id", "segment", "month"]
     out = weighted.groupby(keys, sort=False, as_index=False).agg(
+        right=("right", "first"),
         par_called=("par_called", "sum"), price=("price", "first"), premium=("premium", "sum"),
         book_yield=("book_yield", "sum"), purchase_yield=("purchase_yield", "first"),
         years_to_worst=("years_to_worst", "sum"), yield_given_up=("yield_given_up", "sum"),

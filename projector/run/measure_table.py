@@ -213,10 +213,19 @@ def measures_frame(prepared: Prepared, blocks: list[BlockResult], calls: pd.Data
     }
     par[ALL_SEGMENTS] = total(lots.par[lots.callable_rows])
     frame["callable_par"] = frame["segment"].map(par)
-    given = calls.groupby(["scenario", "segment"])["yield_given_up"].apply(lambda x: total(x.to_numpy())).to_dict()
-    whole = calls.groupby("scenario")["yield_given_up"].apply(lambda x: total(x.to_numpy())).to_dict()
-    frame["yield_given_up"] = [
-        whole.get(sc, 0.0) if seg == ALL_SEGMENTS else given.get((sc, seg), 0.0)
-        for sc, seg in zip(frame["scenario"], frame["segment"])
-    ]
+    stated = prepared.stated_rights[lots.security]
+    own = {name: total(lots.par[stated & (lots.segment == s)]) for s, name in enumerate(prepared.segment_names)}
+    frame["stated_callable_par"] = frame["segment"].map(own | {ALL_SEGMENTS: total(lots.par[stated])})
+    frame["stated_par_called"] = sums_of(calls[calls["right"] == "stated price"], "par_called", frame)
+    frame["yield_given_up"] = sums_of(calls, "yield_given_up", frame)
     return frame[list(COLUMNS["measures"])]
+
+
+def sums_of(calls: pd.DataFrame, column: str, rows: pd.DataFrame) -> list[float]:
+    """Sum of a column of calls for each row's scenario and segment, exactly rounded once."""
+    out = []
+    for scenario, segment in zip(rows["scenario"], rows["segment"]):
+        mine = calls["scenario"] == scenario
+        mine = mine if segment == ALL_SEGMENTS else mine & (calls["segment"] == segment)
+        out.append(total(calls.loc[mine, column].to_numpy()))
+    return out

@@ -54,6 +54,11 @@ class Prepared:
     blocks: tuple[LiabilityBlock, ...]
 
     @cached_property
+    def stated_rights(self) -> npt.NDArray[np.bool_]:
+        """Securities callable at a stated price, apart from those whose only right is the par call of a make-whole."""
+        return stated_rights(self.study, self.bonds)
+
+    @cached_property
     def security_rows(self) -> dict[str, dict[str, Any]]:
         """Rows of the securities table by identifier, dates as `datetime.date`."""
         return {r["security_id"]: r for r in plain_records(self.study.tables.securities)}
@@ -75,6 +80,16 @@ class Prepared:
 def security_column(study: Study, bonds: MappedBonds, name: str) -> npt.NDArray[np.object_]:
     """One column of the securities table in the order of the mapped bonds."""
     return study.tables.securities.set_index("security_id").loc[list(bonds.ids), name].to_numpy()
+
+
+def stated_rights(study: Study, bonds: MappedBonds) -> npt.NDArray[np.bool_]:
+    """Which securities have a right at a stated price that is not the par call of a make-whole. shape (security,)"""
+    rights = study.tables.call_rights
+    make_whole = set(rights.loc[rights["style"] == "make_whole", "security_id"])
+    ahead = rights["last_date"].to_numpy() > np.datetime64(study.valuation_date)
+    priced = set(rights.loc[ahead & (rights["style"] != "make_whole").to_numpy(), "security_id"])
+    own = np.array([s in priced or s not in make_whole for s in bonds.ids])
+    return bonds.with_rights() & own
 
 
 def start_discount(paths: PathSet, last_month: int) -> Array:
@@ -119,7 +134,9 @@ def prepare(study: Study, paths: PathSet | None = None) -> Prepared:
     asset_class = tuple(str(c) for c in security_column(study, bonds, "asset_class"))
     segments = tuple(s.name for s in study.segments)
     months = study.horizon.months
-    holdings, lots = build_holdings(study.tables.lots, bonds, list(asset_class), segments, months)
+    holdings, lots = build_holdings(
+        study.tables.lots, bonds, list(asset_class), stated_rights(study, bonds), segments, months
+    )
     strategy = Strategy.from_study(
         mix, study.borrowing, study.investment_expense.annual_share_of_statement_value, terms.lag_months
     )

@@ -1,4 +1,4 @@
-"""The kernels run as plain Python, and compiled with index checks, on tiny sizes: the same bits, no index out of range."""
+"""The kernels as plain Python, with index checks, and for a generic processor, on tiny sizes: the same bits."""
 
 from __future__ import annotations
 

@@ -257,7 +257,7 @@ def _calls(opt: Options, securities: pd.DataFrame, names: list[str]) -> tuple[pd
                                   "bound" if bound else "solve", called))  # fmt: skip
                 if called:
                     par, years = bond.par * 0.98, max((last - month) / 12 - 1, 0.0)
-                    calls.append((scenario, bond.security_id, segments[j % len(segments)], month, par, 102.0,
+                    calls.append((scenario, bond.security_id, segments[j % len(segments)], month, "stated price", par, 102.0,
                                   par * 0.02, bond.book_yield, refunding, years,
                                   par * (bond.book_yield - refunding) * years))  # fmt: skip
                     break
@@ -375,6 +375,8 @@ def _measures(opt: Options, balance: pd.DataFrame, calls: pd.DataFrame, securiti
             "irr_assets_status": "several" if several else "one", "irr_assets_on_statement_value": 0.0495,
             "cost_rate": 0.043, "cost_rate_status": "one", "irr_gap": np.nan if several else 0.008 - 0.001 * k,
             "horizon_return": 0.047 - 0.0007 * k, "callable_par": callable_par / (1 if segment == "all" else parts),
+            "stated_callable_par": callable_par / (1 if segment == "all" else parts),
+            "stated_par_called": float(own["par_called"].sum()),
             "par_called": float(own["par_called"].sum()), "call_premium": float(own["premium"].sum()),
             "yield_given_up": float(own["yield_given_up"].sum()), "peak_borrowing": b["borrowing"].max(),
             "par_sold": 12e6 * opt.scale if k == 3 else 0.0, "sale_gain": -0.4e6 * opt.scale if k == 3 else 0.0,

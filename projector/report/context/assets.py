@@ -90,7 +90,7 @@ def _class_cells(reading: Reading, part: pd.DataFrame, key: str) -> tuple[Cell, 
     def summed(column: str, formula: str, where: pd.DataFrame = part) -> Cell:
         return reading.cell(total(where[column]), f"securities.{column}/{key}", formula)
 
-    can = part[part["kind"] != "fixed"]
+    can = part[part["kind"] == "stated"]
     callable_par = reading.cell(total(can["par"]), f"securities.callable_par/{key}", "M-31")
     yields = part["book_yield"].dropna()
     ends = [float(yields.min()), float(yields.max())] if len(yields) else [float("nan")] * 2
@@ -217,12 +217,14 @@ def _chart(reading: Reading, frame: pd.DataFrame) -> Chart:
     for column, title in (("to_maturity", "By maturity"), ("to_call", "By first date at a stated price")):
         a, b, c = ([v / scale for v in values] for values in _ladder(frame, column, kinds))
         ladders.append(Ladder(title, labels, tuple(a), tuple(b), tuple(c)))
-    par, can = total(frame["par"]), total(frame.loc[frame["kind"] != "fixed", "par"])
-    soon = total(frame.loc[frame["to_call"] <= CALLABLE_WITHIN[-1], "par"])
+    stated = frame[frame["kind"] == "stated"]
+    par, can = total(frame["par"]), total(stated["par"])
+    soon = total(stated.loc[stated["to_call"] <= CALLABLE_WITHIN[-1], "par"])
     title = words.title_callability(soon, can, par)
     text = (
         f"Two panels of stacked columns of par, by maturity and by first call date. {share(can, par, 0)} of par can "
-        f"be called at a stated price, {share(soon, par, 0)} within five years. Numbers: table 4.4."
+        f"be called at a stated price, {share(soon, par, 0)} within five years, par calls of make-whole apart. "
+        "Numbers: table 4.4."
     )
     return Chart(
         number="4.1", title=title, text=text, subtitle=f"{reading.money.unit} of par at the valuation date",
@@ -231,9 +233,9 @@ def _chart(reading: Reading, frame: pd.DataFrame) -> Chart:
 
 
 def _callable_text(frame: pd.DataFrame) -> str:
-    par = total(frame["par"])
+    par, stated = total(frame["par"]), frame[frame["kind"] == "stated"]
     parts = [
-        f"{share(total(frame.loc[frame['to_call'] <= years, 'par']), par, 0)} within {count_of(years, 'year')}"
+        f"{share(total(stated.loc[stated['to_call'] <= years, 'par']), par, 0)} within {count_of(years, 'year')}"
         for years in CALLABLE_WITHIN
     ]
-    return f"Share of par that can be called at a stated price: {', '.join(parts)}."
+    return f"Share of par that can be called at a stated price, par calls of make-whole apart: {', '.join(parts)}."

@@ -94,17 +94,18 @@ def par_called(reading: Reading) -> Chart:
         sums[str(scenario)][min((int(month) - 1) // 12, years - 1)].append(float(par))
     by_year = {name: [total(values) / scale for values in parts] for name, parts in sums.items()}
     rows = {name: reading.measures(name) for name in reading.scenarios}
-    callable_par = float(rows[reading.scenarios[0]]["callable_par"])
+    callable_par = float(rows[reading.scenarios[0]]["stated_callable_par"])
     title = words.title_par_called(
-        [(reading.scenario(n), float(rows[n]["par_called"])) for n in reading.scenarios], callable_par
+        [(reading.scenario(n), float(rows[n]["stated_par_called"])) for n in reading.scenarios], callable_par
     )
     lines = [
-        f"{reading.money.text(rows[n]['par_called'])}, {share(rows[n]['par_called'], callable_par, 0)}"
+        f"{reading.money.text(rows[n]['par_called'])}, {share(rows[n]['stated_par_called'], callable_par, 0)}"
         for n in reading.shown
     ]
     most = max(reading.scenarios, key=lambda n: float(rows[n]["par_called"]))
     least = min(reading.scenarios, key=lambda n: float(rows[n]["par_called"]))
-    of = f" ({percent(rows[most]['par_called'] / callable_par, 0)} of callable par)" if callable_par else ""
+    part = rows[most]["stated_par_called"] / callable_par if callable_par else 0.0
+    of = f" ({percent(part, 0)} of par callable at stated prices)" if callable_par else ""
     text = (
         f"Columns of par called by year, one panel a scenario on one scale. Most in {most}, "
         f"{reading.money.text(rows[most]['par_called'])}{of}; least in {least}, "
@@ -115,5 +116,6 @@ def par_called(reading: Reading) -> Chart:
     )
     return Chart(
         number="10.1", title=title, text=text, svg=finished(drawn, prefix="c101", title=title, text=text),
-        subtitle=f"{reading.money.unit} a year, all segments; under each name: total and share of callable par",
+        subtitle=f"{reading.money.unit} a year, all segments; under each name: total, and share called of par callable at stated "
+                 "prices",
     )  # fmt: skip

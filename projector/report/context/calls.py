@@ -126,19 +126,26 @@ def _given_up(found: CallReading) -> Table:
         rows.append(Row(name=reading.scenario(name), own_words=True, cells=(
             cells.count(count, f"calls.securities{key}", "M-31"),
             reading.cell(float(row["par_called"]), f"measures.par_called{key}", "M-31"),
-            cells.share(row["par_called"], row["callable_par"], f"measures.par_called%callable_par{key}", "M-31"),
+            reading.cell(float(row["stated_par_called"]), f"measures.stated_par_called{key}", "M-31"),
+            cells.share(
+                row["stated_par_called"], row["stated_callable_par"],
+                f"measures.stated_par_called%stated_callable_par{key}", "M-31",
+            ),
             reading.cell(float(row["call_premium"]), f"measures.call_premium{key}", "M-31"),
             reading.cell(float(row["yield_given_up"]), f"measures.yield_given_up{key}", "M-12"),
             cells.word(words.effect_of_later_calls(row["yield_given_up"], reading.money), f"calls.later{key}"),
         )))  # fmt: skip
-    callable_par = reading.money.phrase(reading.measures(reading.scenarios[0])["callable_par"])
+    first = reading.measures(reading.scenarios[0])
+    callable_par = reading.money.phrase(first["stated_callable_par"])
+    window_par = reading.money.phrase(float(first["callable_par"]) - float(first["stated_callable_par"]))
     return Table(
         number="10.1", caption="Par called and yield given up by scenario",
-        basis=f"{reading.money.unit} over the horizon, undiscounted, all segments; callable par {callable_par}. "
+        basis=f"{reading.money.unit} over the horizon, undiscounted, all segments. Callable par: {callable_par} at stated prices; "
+              f"beside it {window_par} in par calls of make-whole securities. "
               "Premium: paid to the holder above par. Yield given up (M-12): positive = income lost.",
         row_head="Scenario", rows=tuple(rows), why_missing="the results hold no such figure for the scenario",
         columns=(Column(name="Securities called"), Column(name="Par called"),
-                 Column(name="Of callable par", unit="%"), Column(name="Premium"), Column(name="Yield given up"),
+                 Column(name="Of it at stated prices"), Column(name="Of callable par", unit="%"), Column(name="Premium"), Column(name="Yield given up"),
                  Column(name="Later calls would", words=True)),
     )  # fmt: skip
 

@@ -126,7 +126,10 @@ def _cells(reading: Reading, name: str) -> tuple[Cell, ...]:
         money(row[reading.ending], f"measures.{reading.ending}{key}", surplus),
         money(row[reading.lowest], f"measures.{reading.lowest}{key}", "M-5"),
         cells.year(row[reading.lowest_year], f"measures.{reading.lowest_year}{key}", "M-5"),
-        cells.share(row["par_called"], row["callable_par"], f"measures.par_called%callable_par{key}", "M-31", 0),
+        cells.share(
+            row["stated_par_called"], row["stated_callable_par"],
+            f"measures.stated_par_called%stated_callable_par{key}", "M-31", 0,
+        ),
         cells.word("met" if row["criterion_met"] else "not met", f"measures.criterion_met{key}"),
     )
 
@@ -175,7 +178,8 @@ def _calls(reading: Reading) -> str:
     row = reading.measures(name)
     if not row["par_called"]:
         return "Calls: no scenario in which calls give up yield (table 10.1)."
-    called = percent(row["par_called"] / row["callable_par"], 0) if row["callable_par"] else "none"
+    callable_par = row["stated_callable_par"]
+    called = percent(row["stated_par_called"] / callable_par, 0) if callable_par else "none"
     return (
         f"Calls: most yield given up in {reading.scenario(name)}, {reading.money.phrase(row['yield_given_up'])} "
         f"before discounting, with {called} of callable par called (table 10.1)."

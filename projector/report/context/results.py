@@ -124,7 +124,7 @@ def _mix(reading: Reading, shares: dict[tuple[str, int], list[float]]) -> Table:
     return Table(
         number="9.4", caption="Asset mix at stated years, all segments",
         basis=f"% of statement value and cash; last column in {reading.money.unit}. Held = starting holdings left; "
-              "bought = purchases of the projection, none of them callable. Callable: par calls included.",
+              "bought = purchases of the projection, none of them callable. Callable: at stated prices.",
         row_head="Scenario, year", rows=tuple(rows),
         columns=(*(Column(name=kind.capitalize(), unit="%") for kind in KINDS), Column(name="Total")),
     )  # fmt: skip
