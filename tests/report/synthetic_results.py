@@ -257,8 +257,8 @@ def _calls(opt: Options, securities: pd.DataFrame, names: list[str]) -> tuple[pd
                                   "bound" if bound else "solve", called))  # fmt: skip
                 if called:
                     par, years = bond.par * 0.98, max((last - month) / 12 - 1, 0.0)
-                    calls.append((scenario, bond.security_id, segments[j % len(segments)], month, "stated price", par, 102.0,
-                                  par * 0.02, bond.book_yield, refunding, years,
+                    calls.append((scenario, bond.security_id, segments[j % len(segments)], month, "stated price",
+                                  par, 102.0, par * 0.02, bond.book_yield, refunding, years,
                                   par * (bond.book_yield - refunding) * years))  # fmt: skip
                     break
     return (

@@ -116,6 +116,5 @@ def par_called(reading: Reading) -> Chart:
     )
     return Chart(
         number="10.1", title=title, text=text, svg=finished(drawn, prefix="c101", title=title, text=text),
-        subtitle=f"{reading.money.unit} a year, all segments; under each name: total, and share called of par callable at stated "
-                 "prices",
+        subtitle=f"{reading.money.unit} a year, all segments; under each name: total, and share called of callable par",
     )  # fmt: skip

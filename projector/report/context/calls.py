@@ -140,13 +140,13 @@ def _given_up(found: CallReading) -> Table:
     window_par = reading.money.phrase(float(first["callable_par"]) - float(first["stated_callable_par"]))
     return Table(
         number="10.1", caption="Par called and yield given up by scenario",
-        basis=f"{reading.money.unit} over the horizon, undiscounted, all segments. Callable par: {callable_par} at stated prices; "
-              f"beside it {window_par} in par calls of make-whole securities. "
+        basis=f"{reading.money.unit} over the horizon, undiscounted, all segments. Callable par: {callable_par} "
+              f"at stated prices; beside it {window_par} in par calls of make-whole securities. "
               "Premium: paid to the holder above par. Yield given up (M-12): positive = income lost.",
         row_head="Scenario", rows=tuple(rows), why_missing="the results hold no such figure for the scenario",
         columns=(Column(name="Securities called"), Column(name="Par called"),
-                 Column(name="Of it at stated prices"), Column(name="Of callable par", unit="%"), Column(name="Premium"), Column(name="Yield given up"),
-                 Column(name="Later calls would", words=True)),
+                 Column(name="Of it at stated prices"), Column(name="Of callable par", unit="%"),
+                 Column(name="Premium"), Column(name="Yield given up"), Column(name="Later calls would", words=True)),
     )  # fmt: skip
 
 

@@ -127,8 +127,11 @@ def _cells(reading: Reading, name: str) -> tuple[Cell, ...]:
         money(row[reading.lowest], f"measures.{reading.lowest}{key}", "M-5"),
         cells.year(row[reading.lowest_year], f"measures.{reading.lowest_year}{key}", "M-5"),
         cells.share(
-            row["stated_par_called"], row["stated_callable_par"],
-            f"measures.stated_par_called%stated_callable_par{key}", "M-31", 0,
+            row["stated_par_called"],
+            row["stated_callable_par"],
+            f"measures.stated_par_called%stated_callable_par{key}",
+            "M-31",
+            0,
         ),
         cells.word("met" if row["criterion_met"] else "not met", f"measures.criterion_met{key}"),
     )
