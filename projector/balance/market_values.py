@@ -11,8 +11,10 @@ from projector.balance.holdings import Holdings
 from projector.balance.holdings_kernels import group_values
 from projector.bonds.decisions import CallEvents
 from projector.bonds.solving import MonthSolver
+from projector.bonds.store import Place, SolveStore
 
 Array = npt.NDArray[np.float64]
+IntArray = npt.NDArray[np.int64]
 BoolArray = npt.NDArray[np.bool_]
 
 
@@ -35,6 +37,8 @@ class GroupValues:
     solver: MonthSolver
     survival: Array  # [security, month]
     events: CallEvents
+    store: SolveStore | None = None
+    places: dict[int, Place] = field(default_factory=dict)  # by security, when a store is given
     known: dict[int, tuple[Array, BoolArray]] = field(default_factory=dict)
 
     def at(self, month: int, discount: Array, wanted: BoolArray) -> Array:
@@ -64,7 +68,27 @@ class GroupValues:
         left = outstanding(self.events, month)[units]
         asked = np.zeros((units.size, discount.shape[1]), dtype=np.bool_)
         np.logical_or.at(asked, at, wanted[self.holdings.segment[rows]])
-        unit_value = self.solver.values(month, units, discount, asked & (left > 0.0))
+        unit_value = self.unit_values(month, units, discount, asked & (left > 0.0))
         scale = self.holdings.par[rows] / 100.0 * self.survival[self.holdings.security[rows], month]
         group_values(at, self.holdings.group[rows], scale, unit_value, left, out)
+        return out
+
+    def unit_values(self, month: int, units: IntArray, discount: Array, wanted: BoolArray) -> Array:
+        """Values of securities, from the store where it holds them. [per 100 dirty], [unit, path]"""
+        if self.store is None:
+            return self.solver.values(month, units, discount, wanted)
+        out = np.zeros(wanted.shape)
+        missing = []
+        for n, u in enumerate(units):
+            known = self.store.value(self.places[int(u)], month, wanted[n])
+            if known is None:
+                missing.append(n)
+            else:
+                out[n] = known
+        self.store.found += units.size - len(missing)
+        self.store.solved += len(missing)
+        if missing:
+            out[missing] = self.solver.values(month, units[missing], discount, wanted[missing])
+            for n in missing:
+                self.store.keep_value(self.places[int(units[n])], month, out[n], wanted[n])
         return out

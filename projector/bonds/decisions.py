@@ -88,10 +88,18 @@ class DecisionPass:
     rule: CallRule
     last_month: int
 
-    def run(self, discounts: Discounts, paths: int, rows: DecisionRows | None = None) -> CallEvents:
-        """Decides every right of months 1..last_month; a security with nothing left outstanding is asked no more."""
+    def run(
+        self, discounts: Discounts, paths: int, rows: DecisionRows | None = None, asked: IntArray | None = None
+    ) -> CallEvents:
+        """Decides every right of months 1..last_month; a security with nothing left outstanding is asked no more.
+
+        asked  securities to decide for, all when not given
+        """
         bonds = self.solver.bonds
         left = np.ones((len(bonds.ids), paths))
+        if asked is not None:
+            left[:] = 0.0
+            left[asked] = 1.0
         events: list[tuple[IntArray, IntArray, IntArray, Array]] = []
         live = np.isfinite(bonds.clean_price)
         for month in range(1, min(self.last_month, bonds.last_month) + 1):

@@ -28,9 +28,11 @@ from projector.balance.month import (
     opening_state,
     segment_sum,
 )
-from projector.bonds.decisions import CallEvents, DecisionPass, DecisionRows
+from projector.bonds.decisions import CallEvents
+from projector.bonds.store import SolveStore
 from projector.liabilities.blocks import ITEM_NAMES, Market, MonthOutcome, signed
 from projector.rates.curve import log_discount_nodes, monthly_discounts
+from projector.run.deciding import decide
 from projector.run.earned import EarnedRate
 from projector.run.prepare import Prepared
 
@@ -71,20 +73,20 @@ class BlockResult:
     decisions: pd.DataFrame | None
 
 
-def project(prepared: Prepared, path_lo: int, path_hi: int, record: str = "detail") -> BlockResult:
+def project(
+    prepared: Prepared, path_lo: int, path_hi: int, record: str = "detail", store: SolveStore | None = None
+) -> BlockResult:
     """Projects the paths path_lo..path_hi-1.
 
     record  "detail" keeps rows of decisions; "summary" does not (the arrays are the same)
+    store   decisions and values of earlier runs, used and added to (the arrays are the same with and without)
     """
-    paths = path_hi - path_lo
     discounts = discounts_of(prepared, path_lo, path_hi)
-    rows = DecisionRows() if record == "detail" else None
-    events = DecisionPass(prepared.solver, prepared.rule, prepared.months).run(discounts, paths, rows)
+    events, frame, places = decide(prepared, path_lo, path_hi, record, discounts, store)
     items = group_items(prepared.holdings, prepared.bonds, prepared.terms, prepared.survival, events, prepared.months)
-    values = GroupValues(prepared.holdings, prepared.solver, prepared.survival, events)
+    values = GroupValues(prepared.holdings, prepared.solver, prepared.survival, events, store, places)
     result = roll_forward(prepared, path_lo, path_hi, items, values, discounts, events)
-    if rows is not None:
-        frame = rows.frame()
+    if frame is not None:
         result.decisions = frame.assign(path=frame["path"].astype(np.int64) + path_lo)
     return result
 

@@ -8,6 +8,7 @@ from concurrent.futures import ThreadPoolExecutor
 from dataclasses import dataclass
 from pathlib import Path
 
+from projector.bonds.store import SolveStore
 from projector.rates.paths import build_paths
 from projector.run.block import BlockResult, project
 from projector.run.call_table import calls_frame
@@ -79,15 +80,16 @@ def block_ranges(paths: int, size: int) -> list[tuple[int, int]]:
 
 
 def run_blocks(
-    prepared: Prepared, threads: int, block_paths: int | None = None, progress: Progress = silent
-) -> list[BlockResult]:
+    prepared: Prepared, threads: int, block_paths: int | None = None, progress: Progress = silent,
+    store: SolveStore | None = None,
+) -> list[BlockResult]:  # fmt: skip
     """Every block, in path order whatever order they finish in."""
     count = prepared.paths.count
     size = block_paths or min(prepared.study.numerics.block_paths, max(1, -(-count // max(threads, 1))))
     ranges = block_ranges(count, size)
     done = 0
     with ThreadPoolExecutor(max_workers=max(threads, 1)) as pool:
-        futures = [pool.submit(project, prepared, lo, hi) for lo, hi in ranges]
+        futures = [pool.submit(project, prepared, lo, hi, "detail", store) for lo, hi in ranges]
         results = []
         for (lo, hi), future in zip(ranges, futures):
             results.append(future.result())
