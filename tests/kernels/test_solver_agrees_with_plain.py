@@ -3,6 +3,10 @@
 from __future__ import annotations
 
 import importlib.util
+import os
+import subprocess
+import sys
+from dataclasses import replace
 from pathlib import Path
 
 import mpmath
@@ -11,35 +15,66 @@ import pytest
 
 import projector
 from projector.arithmetic.elementary import exp_array, exp_one, log_one
+from projector.bonds.exercise import plain
 from projector.bonds.exercise.model import ShortRateModel
 from projector.bonds.exercise.path_kernels import run_jobs, straight_values, upper_bounds
-from projector.bonds.exercise.plain import plain_upper_bound, plain_values
+from projector.bonds.exercise.plain import plain_straight_value, plain_upper_bound, plain_values
 from projector.bonds.exercise.pricing import Problem, operator_arguments, operator_for, solve
-from projector.bonds.exercise.step_operator import GRID_FINE, GRID_HALF_YEAR, GRID_MONTHLY
+from projector.bonds.exercise.step_operator import GRID_FINE, GRID_FINER, GRID_HALF_YEAR, GRID_MONTHLY
 
 EXERCISE = Path(projector.__file__).parent / "bonds" / "exercise"
 
 
 def random_problem(rng: np.random.Generator, lanes: int, longest: int, step: float, spread: float) -> Problem:
-    """Securities of mixed lives, rights, costs and curves; some European, some with windows, some without a right."""
+    """Securities of mixed lives, rights, costs and curves: European, windows, rights with gaps, none at all.
+
+    Coupons lie around the curve, so that going on crosses the bar inside the grid.
+    """
     top = longest + 1
     steps = rng.integers(3, longest + 1, lanes)
     ratio, flow = np.ones((top, lanes)), np.zeros((top, lanes))
     price, bar = np.full((top, lanes), np.inf), np.full((top, lanes), np.inf)
     for lane, n in enumerate(steps):
         t = np.arange(n + 1) * step
-        zero = rng.uniform(0.01, 0.07) + rng.uniform(-0.01, 0.01) * np.exp(-t / 5.0)
-        discount = np.exp(-zero * t)
+        level = rng.uniform(0.01, 0.07)
+        discount = np.exp(-(level + rng.uniform(-0.01, 0.01) * np.exp(-t / 5.0)) * t)
         ratio[:n, lane] = discount[1:] / discount[:-1]
-        flow[1 : n + 1, lane] = rng.uniform(1.0, 4.0)
+        flow[1 : n + 1, lane] = 100.0 * step * (level + rng.uniform(-0.005, 0.02))
         flow[n, lane] += 100.0
-        kind = rng.integers(0, 5)
+        kind = rng.integers(0, 7)  # 0 none, 1 European, 2 a window, 3 every other date, else all to maturity
         first = int(rng.integers(1, n))
         last = first if kind == 1 else (n - 1 if kind != 2 else int(rng.integers(first, n)))
         if kind != 0:
-            price[first : last + 1, lane] = 100.0 + rng.uniform(0.0, 3.0) * np.linspace(1.0, 0.0, last - first + 1)
+            every = 2 if kind == 3 else 1
+            k = np.arange(first, last + 1, every)
+            price[k, lane] = 100.0 + rng.uniform(0.0, 3.0) * np.linspace(1.0, 0.0, k.size)
             bar[:, lane] = price[:, lane] + rng.choice([0.0, 0.5, 1.5])
     return Problem(steps, ratio, ratio * np.exp(-spread * step), flow, price, bar)
+
+
+def lane_of(problem: Problem, lane: int) -> list[np.ndarray]:
+    """One security's columns in the order the twin takes them."""
+    return [x[:, lane] for x in (problem.ratio, problem.holder_ratio, problem.flow, problem.price, problem.bar)]
+
+
+def lanes_of(problem: Problem, lanes: np.ndarray) -> Problem:
+    """Some of the securities, as a problem of their own."""
+    columns = (problem.ratio, problem.holder_ratio, problem.flow, problem.price, problem.bar)
+    return Problem(problem.steps[lanes], *(np.ascontiguousarray(x[:, lanes]) for x in columns))
+
+
+@pytest.fixture
+def kinks(monkeypatch: pytest.MonkeyPatch) -> list[float]:
+    """The jumps of every correction the twin makes: shows that a comparison met what it compares."""
+    met: list[float] = []
+    own = plain.corrections
+
+    def counted(curve: np.polynomial.Polynomial, theta: float, jump: float) -> np.ndarray:
+        met.append(jump)
+        return own(curve, theta, jump)
+
+    monkeypatch.setattr(plain, "corrections", counted)
+    return met
 
 
 @pytest.mark.parametrize(
@@ -49,23 +84,56 @@ def random_problem(rng: np.random.Generator, lanes: int, longest: int, step: flo
         (6, 6, 12, GRID_MONTHLY, 0.01),
         (6, 1, 12, GRID_HALF_YEAR, 0.005),
         (6, 4, 10, GRID_HALF_YEAR, -0.004),
-        (1, 1, 20, GRID_MONTHLY, 0.01),
+        (1, 1, 36, GRID_MONTHLY, 0.01),
         (12, 5, 8, GRID_FINE, 0.002),
         (3, 2, 9, GRID_FINE, 0.0),
+        (6, 3, 6, GRID_FINER, 0.01),
     ],
 )
 @pytest.mark.parametrize(("a", "sigma"), [(0.03, 0.01), (0.0, 0.008), (-0.01, 0.012)])
-def test_order_kernel_and_plain_twin_agree(step, offset, longest, grid, spread, a, sigma):
+def test_order_kernel_and_plain_twin_agree(step, offset, longest, grid, spread, a, sigma, kinks):
     rng = np.random.default_rng(step * 1000 + offset * 10 + longest)
-    problem = random_problem(rng, 6, longest, step / 12.0, spread)
+    problem = random_problem(rng, 8, longest, step / 12.0, spread)
     op = operator_for(a, sigma, step, offset, longest, grid)
     issuer, holder = solve(op, problem)
-    for lane in range(6):
+    for lane in range(8):
         n = int(problem.steps[lane])
-        pick = [x[:, lane] for x in (problem.ratio, problem.holder_ratio, problem.flow, problem.price, problem.bar)]
-        twin = plain_values(ShortRateModel(a, sigma), step, offset, grid, n, *pick)
-        # the kernel stops after two Newton steps at the kink, the twin bisects: 1e-9 of the value is theirs to differ
-        assert (issuer[lane], holder[lane]) == pytest.approx(twin, rel=1e-9), lane
+        twin = plain_values(ShortRateModel(a, sigma), step, offset, grid, n, *lane_of(problem, lane))
+        assert (issuer[lane], holder[lane]) == pytest.approx(twin, rel=1e-12), lane
+    assert len(kinks) >= 20  # kinks corrected inside the range, not only values carried back
+    assert sum(jump != 0.0 for jump in kinks) >= 10
+
+
+def test_limit_two_newton_steps_end_close_to_the_crossing(monkeypatch):
+    """What the kernel and the twin share, the place of the kink, against bisection on the same quintic."""
+    worst, own = [], plain.kink_place
+
+    def compared(curve: np.polynomial.Polynomial, bar: float) -> float:
+        low, high = 0.0, 1.0
+        for _ in range(60):
+            middle = 0.5 * (low + high)
+            low, high = (middle, high) if curve(middle) > bar else (low, middle)
+        found = own(curve, bar)
+        worst.append(abs(found - low))
+        return found
+
+    monkeypatch.setattr(plain, "kink_place", compared)
+    problem = random_problem(np.random.default_rng(21), 30, 16, 0.5, 0.01)
+    for lane in range(30):
+        n = int(problem.steps[lane])
+        plain_values(ShortRateModel(0.03, 0.01), 6, 6, GRID_HALF_YEAR, n, *lane_of(problem, lane))
+    assert len(worst) > 50
+    assert max(worst) < 1e-5
+
+
+def test_order_the_holder_s_recursion_changes_no_bit_of_the_issuer_s():
+    problem = random_problem(np.random.default_rng(9), 40, 20, 0.5, 0.01)
+    op = operator_for(0.03, 0.01, 6, 2, 20, GRID_HALF_YEAR)
+    both, alone = solve(op, problem, True), solve(op, problem, False)
+    assert both[0].tobytes() == alone[0].tobytes() == alone[1].tobytes()
+    same = replace(problem, holder_ratio=problem.ratio, bar=problem.price)
+    issuer, holder = solve(op, same)
+    assert holder == pytest.approx(issuer, rel=1e-12)  # no cost and one curve: one value
 
 
 def test_order_one_solve_alone_and_sixteen_together_give_the_same_bits():
@@ -73,22 +141,15 @@ def test_order_one_solve_alone_and_sixteen_together_give_the_same_bits():
     op = operator_for(0.03, 0.01, 6, 6, 30, GRID_HALF_YEAR)
     together = solve(op, problem)
     for lane in range(37):
-        alone = Problem(
-            problem.steps[[lane]], *(np.ascontiguousarray(x[:, [lane]]) for x in
-            (problem.ratio, problem.holder_ratio, problem.flow, problem.price, problem.bar)),
-        )  # fmt: skip
-        assert solve(op, alone) == (together[0][lane], together[1][lane])
+        alone = solve(op, lanes_of(problem, np.array([lane])))
+        assert (alone[0][0], alone[1][0]) == (together[0][lane], together[1][lane])
 
 
 def test_order_neighbours_and_places_never_change_a_lane():
     problem = random_problem(np.random.default_rng(6), 48, 24, 0.5, 0.004)
     op = operator_for(0.03, 0.01, 6, 6, 24, GRID_HALF_YEAR)
     order = np.random.default_rng(7).permutation(48)
-    mixed = Problem(
-        problem.steps[order], *(x[:, order] for x in
-        (problem.ratio, problem.holder_ratio, problem.flow, problem.price, problem.bar)),
-    )  # fmt: skip
-    for straight, shuffled in zip(solve(op, problem), solve(op, mixed)):
+    for straight, shuffled in zip(solve(op, problem), solve(op, lanes_of(problem, order))):
         assert straight[order].tobytes() == shuffled.tobytes()
 
 
@@ -112,32 +173,43 @@ def path_tables(rng: np.random.Generator, units: int, months: int) -> tuple[np.n
     return maturity, flow, price
 
 
-def test_order_jobs_on_paths_are_the_solves_of_their_own_arrays():
+def job_problem(
+    u: int, p: int, tables: tuple[np.ndarray, ...], dates: tuple[int, int, int], cost: float, spreads: tuple[float, ...],
+    discount: np.ndarray,
+) -> Problem:  # fmt: skip
+    """One job's own arrays, multiplied in the order the kernel does: nothing collapsed, no neighbours."""
+    (maturity, flow, price), (month, offset, step) = tables, dates
+    n = (int(maturity[u]) - month - offset) // step + 1
+    months = month + offset + np.arange(n) * step
+    d = np.concatenate([[1.0], discount[months - month, p]])
+    columns = []
+    for spread in spreads:
+        decay = np.full(n, exp_one(-spread * step / 12.0))
+        decay[0] = exp_one(-spread * offset / 12.0)
+        columns.append(np.append(d[1:] / d[:-1] * decay, 1.0))
+    due = np.concatenate([[np.inf], price[u, months[:-1]], [np.inf]])
+    columns += [np.concatenate([[0.0], flow[u, months]]), due, due + cost]
+    return Problem(np.array([n]), *(x[:, None] for x in columns))
+
+
+@pytest.mark.parametrize(("month", "offset"), [(2, 4), (0, 6), (17, 1)])
+def test_order_jobs_on_paths_are_the_solves_of_their_own_arrays_bit_for_bit(month, offset):
     rng = np.random.default_rng(11)
     maturity, flow, price = path_tables(rng, 9, 120)
-    month, offset, step, cost = 2, 4, 6, 0.5
-    tau = np.arange(121)[:, None]
-    discount = np.exp(-np.array([0.02, 0.035, 0.05])[None, :] * tau / 12.0)
-    unit, path = (a.ravel().astype(np.int64) for a in np.meshgrid(np.arange(9), np.arange(3), indexing="ij"))
-    issuer_spread, holder_spread = np.full(27, 0.012), np.full(27, 0.015)
-    op = operator_for(0.03, 0.01, step, offset, 20, GRID_HALF_YEAR)
-    issuer, holder = np.empty(27), np.empty(27)
-    run_jobs(*operator_arguments(op), month, offset, step, unit, path, maturity, flow, price, cost, issuer_spread,
-             holder_spread, discount, True, issuer, holder)  # fmt: skip
-    for job in range(27):
-        u, p = unit[job], path[job]
-        n = (maturity[u] - month - offset) // step + 1
-        months = month + offset + np.arange(n) * step
-        d = np.concatenate([[1.0], discount[months - month, p]])
-        years = np.concatenate([[0.0], (months - month) / 12.0])
-        curve, held = d * np.exp(-0.012 * years), d * np.exp(-0.015 * years)
-        rows = [np.append(x[1:] / x[:-1], 1.0) for x in (curve, held)]
-        own_flow = np.concatenate([[0.0], flow[u, months]])
-        own_price = np.concatenate([[np.inf], price[u, months]])
-        own_price[-1] = np.inf
-        columns = [x[:, None] for x in (*rows, own_flow, own_price, own_price + cost)]
-        alone = solve(op, Problem(np.array([n]), *columns))
-        assert (issuer[job], holder[job]) == pytest.approx((alone[0][0], alone[1][0]), rel=1e-12)
+    live = np.flatnonzero(maturity > month + 6)
+    discount = np.exp(-np.array([0.02, 0.035, 0.05])[None, :] * np.arange(121)[:, None] / 12.0)
+    unit, path = (a.ravel().astype(np.int64) for a in np.meshgrid(live, np.arange(3), indexing="ij"))
+    mine, theirs = rng.uniform(0.0, 0.02, unit.size), rng.uniform(0.0, 0.02, unit.size)
+    op = operator_for(0.03, 0.01, 6, offset, 20, GRID_HALF_YEAR)
+    issuer, holder = np.empty(unit.size), np.empty(unit.size)
+    run_jobs(*operator_arguments(op), month, offset, 6, unit, path, maturity, flow, price, 0.5, mine, theirs, discount,
+             True, issuer, holder)  # fmt: skip
+    for job in range(unit.size):
+        alone = solve(op, job_problem(
+            int(unit[job]), int(path[job]), (maturity, flow, price), (month, offset, 6), 0.5, (mine[job], theirs[job]),
+            discount,
+        ))  # fmt: skip
+        assert (issuer[job], holder[job]) == (alone[0][0], alone[1][0])
 
 
 def test_order_jobs_in_another_order_keep_their_bits():
@@ -178,7 +250,66 @@ def test_order_bounds_and_straight_values_agree_with_plain_sums():
             bar = price[u, m] + 0.5
             bar[-1] = np.inf
             assert bounds[u, p] == pytest.approx(plain_upper_bound(d, flow[u, m], bar), rel=1e-12)
-            assert values[u, p] == pytest.approx(float((flow[u, m] * d).sum()), rel=1e-12)
+            assert values[u, p] == pytest.approx(plain_straight_value(d, flow[u, m]), rel=1e-12)
+
+
+@pytest.mark.parametrize("month", [1, 4, 11])
+def test_order_straight_values_between_payments_agree_with_plain_sums(month):
+    rng = np.random.default_rng(15)
+    maturity, flow, _ = path_tables(rng, 12, 120)
+    discount = np.exp(-rng.uniform(0.01, 0.06, 4)[None, :] * np.arange(121)[:, None] / 12.0)
+    spread, values = rng.uniform(0.0, 0.02, 12), np.empty((12, 4))
+    everyone = np.ones((12, 4), dtype=np.bool_)
+    straight_values(month, 6, np.arange(12), maturity, flow, spread, discount, everyone, values)
+    for u in range(12):
+        ahead = np.arange(1, maturity[u] - month + 1)
+        d = discount[ahead] * np.exp(-spread[u] * ahead / 12.0)[:, None]
+        plain_ones = [plain_straight_value(d[:, p], flow[u, month + ahead]) for p in range(4)]
+        assert values[u] == pytest.approx(plain_ones, rel=1e-12)
+
+
+PATHS_CODE = """
+import numpy as np
+from projector.bonds.exercise.path_kernels import run_jobs, straight_values, upper_bounds
+from projector.bonds.exercise.pricing import operator_arguments, operator_for
+from projector.bonds.exercise.step_operator import GRID_HALF_YEAR, GRID_MONTHLY
+out = []
+for month, offset, step, grid in ((0, 6, 6, GRID_HALF_YEAR), (2, 4, 6, GRID_HALF_YEAR), (4, 1, 6, GRID_MONTHLY)):
+    maturity = np.array([18, 30, 24])
+    flow, price = np.zeros((3, 31)), np.full((3, 31), np.inf)
+    for u, m in enumerate(maturity):
+        flow[u, 6 : m + 1 : 6] = 2.6 + 0.1 * u
+        flow[u, m] += 100.0
+    price[0, 6:18:6], price[1, 12:30:6] = 100.0, 101.0
+    discount = np.exp(-np.array([0.03, 0.06])[None, :] * np.arange(31)[:, None] / 12.0)
+    unit, path = np.array([0, 0, 1, 1, 2]), np.array([0, 1, 0, 1, 0])
+    issuer, holder, bounds, values = np.empty(5), np.empty(5), np.empty((3, 2)), np.zeros((3, 2))
+    run_jobs(*operator_arguments(operator_for(0.03, 0.01, step, offset, 6, grid)), month, offset, step, unit, path,
+             maturity, flow, price, 0.5, np.full(5, 0.01), np.full(5, 0.012), discount, True, issuer, holder)
+    alive, spread = np.array([[True, True], [True, False], [True, True]]), np.full(3, 0.01)
+    upper_bounds(month, offset, np.arange(3), maturity, flow, price, 0.5, spread, discount, alive, bounds)
+    straight_values(month, step, np.arange(3), maturity, flow, spread, discount, alive, values)
+    out += [float(v).hex() for v in (*issuer, *holder, *bounds.ravel(), *values.ravel())]
+print(" ".join(out))
+"""
+
+
+def path_figures(folder: Path, **extra: str) -> str:
+    """The figures as hexadecimal, from a process of its own with its own kernel folder."""
+    home = Path(projector.__file__).resolve().parents[1]
+    environment = {**os.environ, "PYTHONPATH": str(home), "NUMBA_CACHE_DIR": str(folder), **extra}
+    done = subprocess.run(
+        [sys.executable, "-c", PATHS_CODE], env=environment, capture_output=True, text=True, check=True
+    )
+    return done.stdout
+
+
+@pytest.mark.long
+def test_order_path_kernels_as_python_and_with_index_checks_give_the_same_bits(tmp_path):
+    compiled = path_figures(tmp_path / "compiled")
+    assert len(compiled.split()) == 66
+    assert path_figures(tmp_path / "python", NUMBA_DISABLE_JIT="1") == compiled
+    assert path_figures(tmp_path / "checked", NUMBA_BOUNDSCHECK="1") == compiled
 
 
 def test_pinned_the_unrolled_bands_are_what_their_writer_writes():
