@@ -46,7 +46,7 @@ def check(
     from projector.run.check_text import check_text
     from projector.run.runner import stage
 
-    print(check_text(stage(folder)))
+    print(check_text(stage(folder), str(folder)))
 
 
 @app.command()
@@ -71,8 +71,10 @@ def run(
         bar.show("writing the report" if report else "writing the tables", 0, 1)
         extras = report_writers(results, command) if report else {}
         write_results(results, target, {"command": command, "report": report}, extras)
-    met = results.measures[results.measures["segment"] == "all"]["criterion_met"]
-    print(f"criterion met in {int(met.sum())} of {len(met)} scenarios")
+    met = results.measures[results.measures["segment"] == "all"]["criterion_met"].astype(bool)
+    allowed = results.study.criterion.scenarios_allowed_below
+    head = "criterion met" if int((~met).sum()) <= allowed else "criterion not met"
+    print(f"{head}: {int(met.sum())} of {len(met)} scenarios at or above the limit, {allowed or 'none'} may be below")
     print(f"results: {target}")
     if report:
         print(f"report: {target / 'report.html'}")
@@ -96,14 +98,33 @@ def no_value(_: object) -> None:
 
 
 def refuse_target(folder: Path, target: Path) -> None:
-    """Results never land in the study folder nor over a folder that is not a run's."""
+    """Results never land in or over the study, nor over anything that a run has not written."""
     if target.is_symlink():
         raise typer.BadParameter(f"--out {target} is a link; name the folder itself")
-    inside, study = target.resolve(), folder.resolve()
-    if inside == study or study in inside.parents:
+    place, study = target.resolve(), folder.resolve()
+    if place == study or study in place.parents:
         raise typer.BadParameter(f"--out {target} lies in the study folder; results never do, choose another place")
-    if inside.exists() and any(inside.iterdir()) and not (inside / "run_statement.json").is_file():
-        raise typer.BadParameter(f"--out {target} holds files that no run wrote; choose an empty or new folder")
+    if place in study.parents or place == Path.cwd():
+        raise typer.BadParameter(f"--out {target} would replace a folder that holds more than results; name a new one")
+    if place.exists():
+        strange = strange_files(place)
+        if strange:
+            raise typer.BadParameter(f"--out {target} holds {strange[0]}, which no run wrote; choose a new folder")
+
+
+def strange_files(folder: Path) -> list[str]:
+    """Names in a folder that its run statement does not list; every name when there is no statement."""
+    import json
+
+    if not folder.is_dir():
+        return [folder.name]
+    names = sorted(p.relative_to(folder).as_posix() for p in folder.rglob("*") if not p.is_dir() or p.is_symlink())
+    try:
+        statement = json.loads((folder / "run_statement.json").read_text(encoding="utf-8"))
+        listed = {subject["name"] for subject in statement["subject"]} | {"run_statement.json"}
+    except (OSError, ValueError, KeyError, TypeError):
+        listed = set()
+    return [name for name in names if name not in listed]
 
 
 def print_schemas() -> None:

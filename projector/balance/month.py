@@ -163,7 +163,10 @@ def month_step(
     state.borrowing = state.borrowing - repaid
     state.shortfall = state.shortfall - shortfall_repaid
     spent = purchases.buy(state.cohorts, strategy.mix, m, cash, next_discount)
-    cash = cash - spent
+    if strategy.mix.invested == 1.0:  # all of it is spent: what subtraction leaves is rounding
+        cash = np.minimum(cash, 0.0)
+    else:
+        cash = cash - spent
     book_now, accrued_now, par_start = of(item.BOOK), of(item.ACCRUED), of(item.PAR)
     par_bought = state.statement_bought
     room = np.maximum(strategy.borrowing_limit * (book_now + par_bought) - state.borrowing, 0.0)

@@ -23,7 +23,11 @@ NODE_MONTHS = np.array([1, 3] + [6 * k for k in range(1, 61)], dtype=np.int64)
 
 
 class CurveError(ValueError):
-    """A yield curve cannot be turned into positive discounts; says which month and path."""
+    """A yield curve cannot be turned into positive discounts; says which month and path (counted from 0)."""
+
+    def __init__(self, month: int, path: int) -> None:
+        super().__init__(f"the yields of month {month}, path number {path + 1}, leave no positive discount")
+        self.month, self.path = month, path
 
 
 @dataclass(frozen=True)
@@ -75,7 +79,7 @@ def log_discount_nodes(yields: Array, reading: CurveReading) -> Array:
     )
     if not np.isfinite(out).all():
         month, _, path = (int(i[0]) for i in np.nonzero(~np.isfinite(out)))
-        raise CurveError(f"the yields of month {month}, path number {path + 1}, leave no positive discount")
+        raise CurveError(month, path)
     return out
 
 

@@ -27,6 +27,7 @@ class PathSet:
     ids: tuple[str, ...]
     titles: tuple[str, ...]
     kinds: tuple[str, ...]
+    files: tuple[str, ...]  # table each path was read from, empty for presets
     reading: CurveReading
     yields: Array
     measure: str  # "deterministic": neither a real-world nor a pricing distribution
@@ -83,16 +84,19 @@ def build_paths(study: Study) -> PathSet:
     start = study.tables.yield_curve["rate"].to_numpy(dtype=np.float64)
     titles: list[str] = []
     kinds: list[str] = []
+    files: list[str] = []
     parts: list[Array] = []
     for source in study.rates.paths:
         names, yields = source_paths(source, study, start)
         titles.extend(names)
         kinds.extend([source.kind] * len(names))
+        files.extend([source.file or ""] * len(names))
         parts.append(yields)
     return PathSet(
         ids=tuple(f"S{i + 1}" for i in range(len(titles))),
         titles=tuple(titles),
         kinds=tuple(kinds),
+        files=tuple(files),
         reading=curve_reading(study),
         yields=np.ascontiguousarray(np.concatenate(parts, axis=2)),
         measure="deterministic",

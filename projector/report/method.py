@@ -60,16 +60,18 @@ FORMULAS = (
             "or several; the status is printed in words.",
             "outlay = Σ A(m) × (1 + i)^(−m/12)", f"Kellison, The Theory of Interest, 3rd ed., 2009, ch. 7 ({MEMORY})"),
     Formula("M-9", "Cost rate", "The annual effective rate at which net liability outgo is worth the statutory "
-                                "reserve.",
+                                "reserve; what is left at the horizon is paid out at its close-out value.",
             "R(0) = Σ N(m) × (1 + k)^(−m/12)", f"Kellison, 2009, ch. 7 ({MEMORY})"),
     Formula("M-10", "IRR gap", "IRR of assets on market value less cost rate, in percentage points; only where both "
                                "have one root.", "i − k", OWN),
-    Formula("M-11", "Horizon return", "Yearly return of the whole segment with reinvestment, from market value at "
-                                      "the valuation date to market value at the "
-                                      "horizon.", "(1 + h)^(T/12) = growth of market value", OWN),
+    Formula("M-11", "Horizon return", "Yearly internal rate of the whole segment with reinvestment: market value "
+                                      "and cash put in, net liability outgo and, at the horizon, market value and "
+                                      "cash less debts taken out.",
+            "V(0) = Σ N(m) × (1 + h)^(−m/12) + V(T) × (1 + h)^(−T/12)", OWN),
     Formula("M-12", "Yield given up by calls",
-            "Called par × (book yield − net yield of the purchase mix at that date) × years from the call to the old "
-            "worst date. Positive = income given up. Not discounted.", "Y = Σ P × (y − n) × t", OWN),
+            "Called par × (book yield − yield of the purchase mix at that date, both after default cost) × years from "
+            "the call to the old worst date, lot by lot. Positive = income given up. Not discounted.",
+            "Y = Σ P × (y − n) × t", OWN),
     Formula("M-13", "Net earned rate",
             "Coupons, cash interest, accretion less amortisation, default cost and investment expense of the last 12 "
             "months, over the mean opening statement value and cash of those months. Realised gains are left out.",
@@ -77,11 +79,12 @@ FORMULAS = (
             f"American Academy of Actuaries, Asset Adequacy Analysis practice note, 2017 ({MEMORY})"),
     Formula("M-14", "Statement value",
             "Amortised cost: the constant effective yield from statement value to the date that gives the lowest "
-            "value (yield to worst). Make-whole rights do not set the date.",
-            "B(t+1) = B(t) × (1 + y/2)^(1/6) − coupon − accrued change",
+            "value (lowest yield, of equals the latest). Make-whole rights do not set the date, par calls do. When the "
+            "date goes by without a call, the value goes on from the call price. Purchases stay at 100.",
+            "B(t+1) + I(t+1) = (B(t) + I(t)) × (1 + y/2)^(1/6) − coupon",
             f"NAIC SSAP No. 26, yield-to-worst (2015-04); constant-yield method ({MEMORY})"),
     Formula("M-15", "Book yield", "The yield of M-14, bond-equivalent, before default cost and expense.",
-            "B(0) = Σ flows to the worst date at y", f"NAIC SSAP No. 26 ({MEMORY})"),
+            "B(0) + I(0) = Σ flows to the worst date at y", f"NAIC SSAP No. 26 ({MEMORY})"),
     Formula("M-16", "Street yield to worst",
             "The lowest bond-equivalent yield over maturity and every call at a stated price, from price with "
             "accrued interest on the security's own day count.",
@@ -116,7 +119,8 @@ FORMULAS = (
             "P + I = V(s)", OWN),
     Formula("M-24", "Refunding and purchase spread",
             "The issuer decides with the class spread of new debt plus concession (or with the valuation spread, "
-            "when the study says so); purchases earn the class spread.", "s' = class + concession", OWN),
+            "when the study says so); purchases earn the spread the study states for "
+            "their class (table 8.3).", "s' = class + concession", OWN),
     Formula("M-25", "Market value",
             "A second backward recursion with the valuation spread on the issuer's exercise set: what the holder "
             "owns while the issuer decides.", "V(k) = E[d × (coupon + (called ? K + I : V(k+1)))]", OWN),
@@ -206,11 +210,18 @@ LIMITS = (
     Limit("Calls for mergers, special events and refunding bans are left out.", "They happen in any scenario.",
           "Lower result in falling scenarios, higher in rising ones.", "Not tried in this version."),
     Limit("Flows are placed at month ends.", "They fall on their dates.",
-          "Under one month's interest on each flow, either way.", "Not tried in this version."),
+          "Payments come up to a month later here, so values are lower at the same spread; the spread is fitted to the "
+          "price, which takes most of it back.", "Stated in section 4."),
     Limit("Liability flows are supplied by scenario and do not react to what this program finds.",
           "Crediting and lapses follow the earned rate.",
           "Depends on the supplied streams; unknown here.", "Not tried in this version."),
-    Limit("Tax, interest maintenance reserve and asset valuation reserve are nil.",
-          "They smooth or lower results.", "Lower result after tax in every scenario with gains.",
+    Limit("Tax is nil.", "Gains are taxed, losses give relief.",
+          "Lower result after tax where there are gains, higher where losses are relieved.",
           "Not tried in this version."),
+    Limit("Interest maintenance reserve is nil: gains and losses on sales and calls go to surplus at once.",
+          "Interest-related gains and losses are deferred and released over the remaining life.",
+          "Lows after losses on sales are deeper here; surplus after gains is higher here (gain on sales: table 9.6).",
+          "Not tried in this version."),
+    Limit("Asset valuation reserve is nil.", "It takes credit losses first and is built up from income.",
+          "Surplus is higher here by what would be held.", "Not tried in this version."),
 )  # fmt: skip

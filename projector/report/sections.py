@@ -49,14 +49,16 @@ class Placed:
     """A memorandum item and the section that holds it."""
 
     item: str = field(metadata=told("what a memorandum must hold, in the words of its usual list"))
-    section: str = field(metadata=told("section number"))
+    section: str = field(metadata=told("section number, empty when the memorandum itself must hold it"))
 
+
+OUTSIDE = ""  # the streams are supplied: the memorandum itself must hold it
 
 REQUIREMENTS = (
-    Placed("Reserves: product descriptions and guarantees", "5"),
-    Placed("Reserves: source of liability in force, reserve method and basis", "5"),
+    Placed("Reserves: product descriptions and guarantees", OUTSIDE),
+    Placed("Reserves: source of liability in force, reserve method and basis", OUTSIDE),
     Placed("Reserves: reinsurance arrangements", "17"),
-    Placed("Reserves: assumptions on policyholders, expenses and crediting", "8"),
+    Placed("Reserves: assumptions on policyholders, expenses and crediting", OUTSIDE),
     Placed("Assets: portfolio description, quality, distribution and types", "4"),
     Placed("Assets: investment and disinvestment assumptions", "8"),
     Placed("Assets: source of asset data", "17"),

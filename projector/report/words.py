@@ -32,10 +32,8 @@ def verdict(outcomes: Sequence[Outcome], allowed_below: int, limit: float, money
         return "Criterion not met in the one scenario run." if total == 1 else _none_met(total)
     where = listed([o.name for o in below])
     met = f"{fixed(total - len(below))} of {count_of(total, 'scenario')}"
-    if not allowed_below:
-        return f"Criterion met in {met}; not met in {where}."
     head = "Criterion met" if len(below) <= allowed_below else "Criterion not met"
-    allowed = f"{fixed(allowed_below)} may be below the limit"
+    allowed = f"{fixed(allowed_below) if allowed_below else 'none'} may be below the limit"
     return f"{head}: {met} at or above the limit, {fixed(len(below))} below ({where}); {allowed}."
 
 
@@ -164,8 +162,8 @@ def title_par_called(called: Sequence[tuple[str, float]], callable_par: float) -
 def explained_call(decision: str, month: str, continuation: str, bar: str) -> str:
     """One decision in words."""
     if decision == "called":
-        return f"Called in {month}: value of keeping it {continuation}, price plus cost and accrued {bar}."
-    return f"Kept in {month}: value of keeping it {continuation}, price plus cost and accrued {bar}."
+        return f"Called in {month}: issuer's cost of keeping it {continuation}, price plus cost and accrued {bar}."
+    return f"Kept in {month}: issuer's cost of keeping it {continuation}, price plus cost and accrued {bar}."
 
 
 def effect_of_later_calls(given_up: float, money: Money) -> str:

@@ -19,6 +19,16 @@ def bond_equivalent_of_growth(growth: Array) -> Array:
     return 2.0 * (half * half - 1.0)
 
 
+def default_cost(prepared: Prepared) -> Array:
+    """Yearly default cost of each security net of recovery, as it is taken off purchases. [1/year]"""
+    kept = np.array([prepared.terms.survival[r] for r in prepared.bonds.ratings])
+    recovered = np.array([prepared.terms.recovery[r] for r in prepared.bonds.ratings])
+    year = np.ones(kept.size)
+    for _ in range(12):
+        year = year * kept
+    return (1.0 - year) * (1.0 - recovered)
+
+
 def share_before(block: BlockResult) -> Array:
     """Share outstanding just before each event of a block. [-], shape (event,)"""
     out = np.ones(block.events.month.size)
@@ -47,7 +57,7 @@ def call_rows(prepared: Prepared, block: BlockResult) -> pd.DataFrame:
     group = group_of_lot(prepared)[lot]
     share = (events.share * share_before(block))[e] * block.held[month, group, path[e]]
     par = lots.par[lot] * prepared.survival[unit[e], month] * share
-    book_yield = bond_equivalent_of_growth(lots.growth_at[row, month])
+    book_yield = bond_equivalent_of_growth(lots.growth_at[row, month]) - default_cost(prepared)[unit[e]]
     years = np.maximum(lots.worst[row, month - 1] - month, 0) / 12.0
     purchase = block.net_yield[month, path[e]]
     return pd.DataFrame(
@@ -63,7 +73,7 @@ def call_rows(prepared: Prepared, block: BlockResult) -> pd.DataFrame:
             "book_yield": book_yield,
             "purchase_yield": purchase,
             "years_to_worst": years,
-            "yield_given_up": par * (book_yield - purchase) * years,
+            "yield_given_up": par * (book_yield - purchase) * years + 0.0,
         }
     )
 

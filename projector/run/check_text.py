@@ -47,8 +47,8 @@ def spread_lines(staged: Staged) -> list[str]:
     return lines
 
 
-def check_text(staged: Staged) -> str:
-    """The whole text."""
+def check_text(staged: Staged, folder: str) -> str:
+    """The whole text; `folder` as the user named it."""
     prepared = staged.prepared
     study = prepared.study
     lines = [
@@ -83,11 +83,12 @@ def check_text(staged: Staged) -> str:
     lines += section(
         "Special cases",
         [
-            f"{r.case}: {r.count} securities, par {money(r.par)}{': ' + r.names if r.names else ''} ({r.treatment})"
+            f"{r.case}: {r.count} of the securities, par {money(r.par)}{': ' + r.names if r.names else ''}"
+            f" ({r.treatment})"
             for r in special_cases(prepared).itertuples()
         ],
     )
     lines += section("Sizes", [sizes(study).sentence()])
     lines += section("Warnings", list(staged.warnings) or ["none"])
-    lines += ["", "Checked: nothing was projected. Next: projector run"]
+    lines += ["", f"Checked: nothing was projected. Next: projector run {folder}"]
     return "\n".join(lines)

@@ -24,11 +24,13 @@ def curve_stage(study: Study, paths: PathSet) -> None:
     try:
         log_discount_nodes(paths.yields, paths.reading)
     except CurveError as fault:
+        curve = str(study.tables.yield_curve.attrs.get("file", "yield_curve"))
+        place = curve if fault.month == 0 else paths.files[fault.path] or "study.toml"
         error = LocatedError(
             code="E450",
-            file=str(study.tables.yield_curve.attrs.get("file", "yield_curve")),
+            file=place,
             column="rate",
-            problem=f"a rate path cannot be discounted: {fault}",
+            problem=f"path {paths.ids[fault.path]} ({paths.titles[fault.path]}) cannot be discounted: {fault}",
             remedy="look for a yield in the wrong unit or with too steep a step between tenors, or change the path",
         )
         raise StudyRefused([error]) from fault
@@ -139,7 +141,7 @@ def special_cases(prepared: Prepared) -> pd.DataFrame:
         (
             "refunding spread below the make-whole spread",
             spreads.refunding[:, 0] < make_whole,
-            "the make-whole right is still not used before the par-call date",
+            "an optimal issuer would use the make-whole right; not used here, so the bond stays longer",
         ),
         ("valuation spread below the make-whole spread", fitted.spread < make_whole, "listed for review of the price"),
         (
@@ -150,7 +152,7 @@ def special_cases(prepared: Prepared) -> pd.DataFrame:
         (
             "call rows wholly before the valuation date",
             np.array([s in past for s in bonds.ids]),
-            "ignored: the right has lapsed",
+            "these rows are ignored, they have lapsed; later rows of the security stand",
         ),
     ]
     return pd.DataFrame(

@@ -131,6 +131,12 @@ def numerical_choices(study: Study) -> list[tuple[str, str, str, str]]:
             "default",
             NUMERICAL,
         ),
+        (
+            "Regular coupons",
+            "rate over frequency whatever the day count, which serves odd first coupons and accrued interest on dates",
+            "default",
+            "convention of the program",
+        ),
         ("Within a month", "order of events of convention C2; no notice", "default", "convention of the program"),
     ]
 

@@ -72,6 +72,14 @@ def flow_total(result: BlockResult, without: tuple[str, ...] = ()) -> Array:
     return total
 
 
+def gross_flows(result: BlockResult) -> Array:
+    """Sum of the absolute values of all flows. [month, segment, path]"""
+    total = np.zeros_like(result.runoff)
+    for amount in result.flows.values():
+        total = total + np.abs(amount)
+    return total
+
+
 def cash_terms(r: BlockResult) -> list[Array]:
     """I1: opening cash + every flow = closing cash."""
     cash = r.balances["cash"]
@@ -101,12 +109,12 @@ def book_terms(r: BlockResult) -> list[Array]:
 
 def value_terms(r: BlockResult) -> list[Array]:
     """I9: opening cash + discounted flows other than interest on cash = discounted closing cash, at cash rates."""
-    flows = flow_total(r, without=("cash_interest",))
+    flows, gross = flow_total(r, without=("cash_interest",)), gross_flows(r)
     discount, total, size = np.ones(r.short_rate.shape[1]), np.zeros(flows.shape[1:]), np.zeros(flows.shape[1:])
     for m in range(1, flows.shape[0]):  # month by month: a sum over the array would depend on its shape
         discount = discount / (1.0 + r.short_rate[m])
         total = total + flows[m] * discount
-        size = size + np.abs(flows[m]) * discount
+        size = size + gross[m] * discount
     opening, closing = r.balances["cash"][0], r.balances["cash"][-1] * discount
     # the size of all discounted flows enters the tolerance through a pair that cancels
     return [opening[None], total[None], -closing[None], size[None], -size[None]]

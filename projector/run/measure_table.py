@@ -188,6 +188,7 @@ def segment_measures(r: BlockResult, pick: slice, p: int) -> dict[str, object]:
     short = np.flatnonzero(shortfall > 0.0)
     return {
         "peak_borrowing": float(borrowing.max()),
+        "months_with_borrowing": int((borrowing > 0.0).sum()),
         "par_sold": total(series(r.par["sold"])),
         "sale_gain": total(gain),
         "first_shortfall_month": int(short[0]) if short.size else -1,

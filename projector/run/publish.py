@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import hashlib
 import os
+import re
 import shutil
 import tempfile
 from collections.abc import Callable
@@ -48,10 +49,17 @@ def file_digest(path: Path) -> str:
     return hashlib.sha256(path.read_bytes()).hexdigest()
 
 
-def owner_alive(name: str) -> bool:
-    """Whether the process that made a temporary folder, <prefix><number>-<rest>, still runs."""
-    owner = name.split("-")[1]
-    return owner.isdigit() and process_alive(int(owner))
+OURS = re.compile(r"\.(?P<kind>unfinished|earlier)-(?P<owner>[0-9]+)-(?P<rest>.+)")
+
+
+def left_behind(parent: Path, kind: str) -> list[tuple[Path, str]]:
+    """Folders of exactly our names whose process has ended, and the rest of each name."""
+    found = []
+    for path in sorted(parent.iterdir()):
+        name = OURS.fullmatch(path.name)
+        if name and name["kind"] == kind and path.is_dir() and not process_alive(int(name["owner"])):
+            found.append((path, name["rest"]))
+    return found
 
 
 def remove_stale(parent: Path) -> None:
@@ -59,16 +67,13 @@ def remove_stale(parent: Path) -> None:
 
     A kill between the two renames leaves the earlier folder set aside and nothing in its place: it is put back.
     """
-    for path in sorted(parent.glob(f"{ASIDE_PREFIX}*")):
-        if not owner_alive(path.name):
-            target = parent / path.name.split("-", 2)[2]
-            if target.exists():
-                shutil.rmtree(path, ignore_errors=True)
-            else:
-                os.rename(path, target)
-    for path in parent.glob(f"{STALE_PREFIX}*"):
-        if not owner_alive(path.name):
+    for path, name in left_behind(parent, "earlier"):
+        if (parent / name).exists():
             shutil.rmtree(path, ignore_errors=True)
+        else:
+            os.rename(path, parent / name)
+    for path, _ in left_behind(parent, "unfinished"):
+        shutil.rmtree(path, ignore_errors=True)
 
 
 def process_alive(pid: int) -> bool:

@@ -11,12 +11,14 @@ import pandas as pd
 from projector.bonds.mapped import plain_records
 from projector.bonds.schedule import DatedBond
 from projector.bonds.worst import yield_to_worst
-from projector.bonds.yields import Redemption, bond_equivalent
+from projector.bonds.yields import Redemption, accrued_interest, bond_equivalent
 from projector.run.call_table import bond_equivalent_of_growth
+from projector.run.mapping_check import mapping_differences
 from projector.run.prepare import Prepared
 from projector.run.results import COLUMNS
 from projector.study.clock import month_end
 
+BELIEVABLE = 1.0  # a call days away at a loss has a yearly yield of thousands of percent, which says nothing
 STATED = ("american", "bermudan", "european")
 
 
@@ -45,12 +47,13 @@ def street_redemptions(row: dict[str, Any], rights: list[dict[str, Any]], settle
 
 
 def street_yield(bond: DatedBond, redemptions: list[Redemption], settlement: date, price: float) -> float:
-    """Yield to worst at a clean price on exact dates, bond-equivalent. [1/year]; nan where no yield gives the price"""
+    """Yield to worst at a clean price on exact dates, bond-equivalent. [1/year]; nan where none within 100 %"""
     try:
         found = yield_to_worst(bond, settlement, price, redemptions, "street")
     except ValueError:
         return float("nan")
-    return bond_equivalent(found.annual_yield, bond.periods_a_year)
+    equivalent = bond_equivalent(found.annual_yield, bond.periods_a_year)
+    return equivalent if abs(equivalent) < BELIEVABLE else float("nan")
 
 
 def securities_frame(prepared: Prepared) -> pd.DataFrame:
@@ -60,7 +63,7 @@ def securities_frame(prepared: Prepared) -> pd.DataFrame:
     rights: dict[str, list[dict[str, Any]]] = {}
     for r in plain_records(study.tables.call_rights):
         rights.setdefault(r["security_id"], []).append(r)
-    sums = lot_sums(prepared)
+    sums, mapping = lot_sums(prepared), mapping_differences(prepared)["difference_bp"].to_numpy()
     out = []
     for u, name in enumerate(bonds.ids):
         row, mine = rows[name], rights.get(name, [])
@@ -80,6 +83,8 @@ def securities_frame(prepared: Prepared) -> pd.DataFrame:
                 "statement_value": float(sums["book"][u]),
                 "market_value": par * clean / 100.0,
                 "accrued": par * float(bonds.accrued[u, 0]) / 100.0,
+                "accrued_dated": par * accrued_interest(prepared.dated_bonds[u], study.valuation_date) / 100.0,
+                "mapping_bp": mapping[u],
                 "clean_price": clean,
                 "model_price": float(fitted.model_price[u]),
                 "valuation_spread_bp": float(fitted.spread[u]) * 1e4,

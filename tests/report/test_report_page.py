@@ -38,7 +38,7 @@ def test_order_one_title_no_skipped_level_and_every_section_in_the_contents(tree
 
 def test_known_memorandum_items_point_at_sections_that_exist(tree):
     ids = {node.attrs.get("id") for node in tree.walk()}
-    assert {f"s{placed.section}" for placed in REQUIREMENTS} <= ids
+    assert {f"s{placed.section}" for placed in REQUIREMENTS if placed.section} <= ids
 
 
 def test_limit_ids_are_unique_and_no_reference_dangles(tree, html):

@@ -24,9 +24,12 @@ def outcomes(*values, limit=0.0):
         ((3,), 0, "Criterion met in the one scenario run. Smallest margin: $3.0 million in S1 Name."),
         ((-3,), 0, "Criterion not met in the one scenario run."),
         ((-3, -1), 0, "Criterion not met in any of 2 scenarios."),
-        ((3, -1, 2), 0, "Criterion met in 2 of 3 scenarios; not met in S2 Name."),
-        ((3, -1, -2), 0, "Criterion met in 1 of 3 scenarios; not met in S3 Name and S2 Name."),
-        ((3, -1, -2, -3, -4), 0, "Criterion met in 1 of 5 scenarios; not met in S5 Name, S4 Name, S3 Name and 1 more."),
+        ((3, -1, 2), 0, "Criterion not met: 2 of 3 scenarios at or above the limit, 1 below (S2 Name); none may be "
+         "below the limit."),
+        ((3, -1, -2), 0, "Criterion not met: 1 of 3 scenarios at or above the limit, 2 below (S3 Name and S2 Name); "
+         "none may be below the limit."),
+        ((3, -1, -2, -3, -4), 0, "Criterion not met: 1 of 5 scenarios at or above the limit, 4 below (S5 Name, S4 "
+         "Name, S3 Name and 1 more); none may be below the limit."),
         ((3, -1, 2), 1, f"Criterion met: 2 of 3 scenarios at or above the limit, 1 below (S2 Name); {ONE}"),
         ((3, -1, -2), 1, f"Criterion not met: 1 of 3 scenarios at or above the limit, 2 below ({TWO}); {ONE}"),
     ],
@@ -162,4 +165,4 @@ def test_known_line_under_a_surplus_panel():
 
 def test_known_decision_in_words():
     said = words.explained_call("called", "2027-02", "101.37", "101.25")
-    assert said == "Called in 2027-02: value of keeping it 101.37, price plus cost and accrued 101.25."
+    assert said == "Called in 2027-02: issuer's cost of keeping it 101.37, price plus cost and accrued 101.25."

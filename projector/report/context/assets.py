@@ -11,7 +11,7 @@ from projector.report import cells, words
 from projector.report.charts import holdings
 from projector.report.charts.holdings import Ladder
 from projector.report.context.reading import Reading, total
-from projector.report.numbers import as_date, count_of, share, years_between
+from projector.report.numbers import as_date, count_of, fixed, share, years_between
 from projector.report.parts import Cell, Chart, Column, Row, Table, rows_with_total, told
 from projector.report.svg import finished
 
@@ -34,6 +34,7 @@ class Assets:
     ladder: Table = field(metadata=told("table 4.4"))
     chart: Chart = field(metadata=told("chart 4.1"))
     callable_text: str = field(metadata=told("share of par callable within one, three and five years"))
+    mapping_text: str = field(metadata=told("what placing payments at month ends does to accrued interest and spreads"))
 
 
 def assets(reading: Reading) -> Assets:
@@ -42,6 +43,7 @@ def assets(reading: Reading) -> Assets:
     return Assets(
         by_class=_by_class(reading, frame), by_rating=_by_rating(reading, frame), spreads=_spreads(reading, frame),
         ladder=_ladder_table(reading, frame), chart=_chart(reading, frame), callable_text=_callable_text(frame),
+        mapping_text=_mapping_text(reading),
     )  # fmt: skip
 
 
@@ -239,3 +241,20 @@ def _callable_text(frame: pd.DataFrame) -> str:
         for years in CALLABLE_WITHIN
     ]
     return f"Share of par that can be called at a stated price, par calls of make-whole apart: {', '.join(parts)}."
+
+
+def _mapping_text(reading: Reading) -> str:
+    frame, money = reading.results.securities, reading.money
+    moved = frame["mapping_bp"].abs()
+    largest = frame.loc[moved.idxmax()] if moved.notna().any() else None
+    spread = ""
+    if largest is not None:
+        spread = (
+            f" It moves the spread that promised payments need for the same price by {fixed(float(moved.median()), 1)} "
+            f"bp in the median and {fixed(float(moved.max()), 1)} bp at most ({largest['security_id']})."
+        )
+    return (
+        f"Payments stand at month ends (M-17): accrued interest is {money.phrase(total(frame['accrued']))} on mapped "
+        f"months, as used here and in table 3.2, and {money.phrase(total(frame['accrued_dated']))} on their own "
+        f"dates.{spread}"
+    )

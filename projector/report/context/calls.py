@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections import Counter
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from functools import cached_property
 
 import pandas as pd
@@ -60,7 +60,9 @@ class CallReading:
     def called(self, security: str, scenario: str) -> Cell:
         """The month called, or not called in grey."""
         month, key = self.months.get((security, scenario)), f"calls.month/{security}/{scenario}"
-        return cells.word(self.reading.month(month), key) if month is not None else cells.quiet(NO_CALL, key)
+        if month is None:
+            return cells.quiet(NO_CALL, key)
+        return replace(cells.word(self.reading.month(month), key), formula="M-22")
 
 
 def calls(reading: Reading) -> Calls:
@@ -180,7 +182,7 @@ def _chosen(reading: Reading, found: CallReading) -> list[Chosen]:
 
 def _sentence(reading: Reading, what: str, row: dict[str, object]) -> str:
     month = reading.month(float(str(row["month"])))
-    continuation, bar = (fixed(float(str(row[name])), 2) for name in ("continuation", "bar"))
+    continuation, bar = (fixed(float(str(row[name])), 4) for name in ("continuation", "bar"))
     text = explained_call(what, month, continuation, bar)
     return f"{row['security_id']}, {reading.scenario(str(row['scenario']))}, {what}. {text}"
 

@@ -5,6 +5,7 @@ from __future__ import annotations
 import re
 from dataclasses import dataclass, field
 
+from projector import __version__
 from projector.report import cells
 from projector.report.cautions import Caution, cautions
 from projector.report.context import measures
@@ -31,6 +32,7 @@ class Reproduce:
     """Section 16."""
 
     table: Table = field(metadata=told("table 16.1"))
+    version: str = field(metadata=told("version of the program that made the results"))
     command: str = field(metadata=told("the command that made the run"))
     input_digest: str = field(metadata=told("SHA-256 of checked tables and choices"))
     set_digest: str = field(metadata=told("SHA-256 of the rate paths"))
@@ -89,7 +91,8 @@ def reproduce(reading: Reading, run_command: str) -> Reproduce:
         for name, digest in reading.results.result_digests.items()
     )  # fmt: skip
     return Reproduce(
-        command=run_command, input_digest=reading.study.input_digest, set_digest=reading.results.set_digest,
+        command=run_command, version=__version__, input_digest=reading.study.input_digest,
+        set_digest=reading.results.set_digest,
         table=Table(
             number="16.1", caption="Digests of results",
             basis="SHA-256 of each table's canonical rounded content, independent of file format and row order of "

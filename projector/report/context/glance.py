@@ -81,10 +81,15 @@ def _segments(reading: Reading) -> str:
 def _shortfall(reading: Reading) -> str:
     parts = []
     for name in reading.scenarios:
-        month = int(reading.measures(name)["first_shortfall_month"])
-        if month >= 0:
-            parts.append(f"{reading.scenario(name)} from month {fixed(month)} ({reading.month(month)})")
-    return f"Assets and borrowing ran out in {listed(parts)} (table 9.6)." if parts else ""
+        for segment in reading.segments:
+            month = int(reading.measures(name, segment)["first_shortfall_month"])
+            if month >= 0:
+                place = f"{reading.segment(segment)} in {reading.scenario(name)}"
+                parts.append(f"{place} from month {fixed(month)} ({reading.month(month)})")
+    if not parts:
+        return ""
+    apart = " No cash moves between segments; their surpluses are added." if len(reading.segments) > 1 else ""
+    return f"Assets and borrowing ran out in {listed(parts)} (table 9.6).{apart}"
 
 
 def _facts(reading: Reading) -> tuple[Fact, ...]:

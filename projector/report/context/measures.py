@@ -50,6 +50,7 @@ CASH = (
     Measure("peak_borrowing", "Largest borrowing", "M-29", "money"),
     Measure("par_sold", "Par sold", "M-31", "money"),
     Measure("sale_gain", "Gain on sales", "M-31", "money"),
+    Measure("months_with_borrowing", "Months borrowing", "M-29", "count"),
     Measure("first_shortfall_month", "First shortfall", "", "month"),
     Measure("largest_shortfall", "Largest shortfall", "M-29", "money"),
 )
