@@ -201,7 +201,10 @@ def _binding_errors(form: StudyForm, streams: pd.DataFrame) -> list[LocatedError
             file=STUDY_FILE,
             column="liabilities.scenario_set_digest",
             problem="the key is missing although the streams depend on scenarios",
-            remedy="write the digest of the set they were made for; check prints the digest of this run's set",
+            remedy=(
+                "write the digest of the set they were made for, or name the blocks in"
+                " liabilities.rate_insensitive_blocks if one stream serves every path"
+            ),
         )
     ]
 

@@ -288,4 +288,5 @@ def _price_warnings(joined: pd.DataFrame, file: str) -> list[str]:
 def _past_warnings(joined: pd.DataFrame, valuation: date, file: str) -> list[str]:
     past = int((joined["last_date"] <= pd.Timestamp(valuation)).sum())
     count = "1 call right ends" if past == 1 else f"{past} call rights end"
-    return [f"{file}: {count} on or before the valuation date and has no effect."] if past else []
+    effect = "has" if past == 1 else "have"
+    return [f"{file}: {count} on or before the valuation date and {effect} no effect."] if past else []
