@@ -6,11 +6,13 @@ raises once.
 
 from __future__ import annotations
 
-from collections.abc import Iterable
-from dataclasses import dataclass
+from collections.abc import Callable, Iterable, Sequence
+from dataclasses import dataclass, replace
+from typing import TypeVar
 
 SHOWN_AT_MOST = 20
 ECHO_AT_MOST = 80
+Found = TypeVar("Found")
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -25,6 +27,7 @@ class LocatedError:
     column: str | None = None
     value: str | None = None
     sheet: str | None = None
+    more: int = 0  # further faults of the same code, file and column that have no record of their own
 
     def sentence(self) -> str:
         """The error as one line of text."""
@@ -44,6 +47,17 @@ def echo(value: str) -> str:
     printable = "".join(ch if ch.isprintable() else "?" for ch in value)
     cut = printable if len(printable) <= ECHO_AT_MOST else printable[: ECHO_AT_MOST - 3] + "..."
     return f"'{cut}'"
+
+
+def first_errors(found: Sequence[Found], make: Callable[[Found], LocatedError], known: int = 0) -> list[LocatedError]:
+    """Errors for the first twenty of the faults, the last of them with the count of the rest.
+
+    found  what was found, of one code in one column
+    known  further faults of the same kind that are counted but not in `found`
+    """
+    errors = [make(fault) for fault in found[:SHOWN_AT_MOST]]
+    more = len(found) - len(errors) + known
+    return [*errors[:-1], replace(errors[-1], more=errors[-1].more + more)] if errors and more else errors
 
 
 class StudyRefused(Exception):
@@ -67,6 +81,8 @@ class StudyRefused(Exception):
                 shown.append(error.sentence())
             else:
                 hidden[key] = hidden.get(key, 0) + 1
+            if error.more:
+                hidden[key] = hidden.get(key, 0) + error.more
         for (code, file, column), count in hidden.items():
             place = f"{file}, column {column}" if column else file
             shown.append(f"{code} {place}: {count} more of the same.")

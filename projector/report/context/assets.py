@@ -10,7 +10,7 @@ import pandas as pd
 from projector.report import cells, words
 from projector.report.charts import holdings
 from projector.report.charts.holdings import Ladder
-from projector.report.context.reading import Reading, total
+from projector.report.context.reading import Reading, credit_order, total
 from projector.report.numbers import as_date, count_of, fixed, share, years_between
 from projector.report.parts import Cell, Chart, Column, Row, Table, rows_with_total, told
 from projector.report.svg import finished
@@ -109,8 +109,7 @@ def _by_rating(reading: Reading, frame: pd.DataFrame) -> Table:
     net = reading.study.defaults.form == "net_annual_cost"
     heads = (("annual_cost", "Net default cost"),) if net else (
         ("annual_rate", "Default rate"), ("recovery", "Recovery"))  # fmt: skip
-    order = [str(r) for r in costs.index if (frame["rating"] == r).any()]
-    order += sorted(set(frame["rating"].astype(str)) - set(order))
+    order = sorted(set(frame["rating"].astype(str)), key=credit_order)
     rows = []
     for rating in order:
         part, key = frame[frame["rating"] == rating], f"rating={rating}"

@@ -5,7 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass, field
 
 from projector.report import cells
-from projector.report.context.reading import Reading
+from projector.report.context.reading import Reading, credit_order
 from projector.report.numbers import NOT_AVAILABLE, count_of, fixed
 from projector.report.parts import Cell, Column, Row, Table, told
 
@@ -104,7 +104,7 @@ def _spreads(reading: Reading) -> Table:
         (str(r), float(life)): float(bp)
         for r, life, bp in zip(frame["rating"], frame["life_years"], frame["spread_bp"], strict=True)
     }
-    ratings = list(dict.fromkeys(str(r) for r in frame["rating"]))
+    ratings = sorted({str(r) for r in frame["rating"]}, key=credit_order)
 
     def cell(rating: str, life: float) -> Cell:
         key = f"class_spreads/{rating}/{life:g} years"

@@ -181,3 +181,13 @@ class Reading:
         return tuple(
             str(i) for i, day in zip(frame["security_id"], frame["first_call_date"]) if numbers.as_date(day) is not None
         )
+
+
+LETTERS = ("AAA", "AA", "A", "BBB", "BB", "B", "CCC", "CC", "C", "D")
+
+
+def credit_order(rating: str) -> tuple[int, int, str]:
+    """Best first: AAA, AA+, AA, AA-, A+, ...; names of another kind at the end."""
+    letters = rating.rstrip("+-")
+    grade = LETTERS.index(letters) if letters in LETTERS else len(LETTERS)
+    return grade, {"+": 0, "-": 2}.get(rating[-1:], 1), rating
