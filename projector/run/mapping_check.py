@@ -16,12 +16,13 @@ DAYS_A_YEAR = 365.25
 MOST_STEPS = 100
 
 
-def spread_of(times: Array, amounts: Array, log_discount: Array, price: float) -> float:
+def spread_of(times: Array, amounts: Array, log_discount: Array, price: float, start: float = -0.5) -> float:
     """Continuously compounded spread at which payments are worth a dirty price, by Newton. [1/year]; nan: not found
 
-    The value is falling and convex in the spread, so Newton from the left of the root never passes it.
+    The value is falling and convex in the spread, so Newton from the left of the root never passes it, and from the
+    right it passes it once; `start` near the root saves steps.
     """
-    base, spread = amounts * np.exp(log_discount), -0.5
+    base, spread = amounts * np.exp(log_discount), start
     for _ in range(MOST_STEPS):
         value = base * np.exp(-spread * times)
         miss = float(value.sum()) - price
@@ -46,8 +47,10 @@ def mapping_differences(prepared: Prepared) -> pd.DataFrame:
         times = np.array([(day - valuation).days / DAYS_A_YEAR for day, _ in ahead])
         amounts = np.array([amount for _, amount in ahead])
         clean = float(prepared.calibrated.clean_price[u])
-        exact = spread_of(times, amounts, np.interp(times, months, discount), clean + accrued_interest(bond, valuation))
+        near = float(prepared.calibrated.spread[u])
+        dirty = clean + accrued_interest(bond, valuation)
+        exact = spread_of(times, amounts, np.interp(times, months, discount), dirty, near)
         at = np.flatnonzero(bonds.flow[u])
-        mapped = spread_of(at / 12.0, bonds.flow[u, at], discount[at], clean + float(bonds.accrued[u, 0]))
+        mapped = spread_of(at / 12.0, bonds.flow[u, at], discount[at], clean + float(bonds.accrued[u, 0]), near)
         out.append((name, 1e4 * exact, 1e4 * mapped, 1e4 * (mapped - exact)))
     return pd.DataFrame(out, columns=["security_id", "exact_bp", "mapped_bp", "difference_bp"])

@@ -10,6 +10,7 @@ import re
 from array import array
 from collections.abc import Iterable
 from dataclasses import dataclass, field
+from functools import lru_cache
 from typing import Any
 from xml.parsers import expat
 
@@ -106,20 +107,25 @@ class SheetScan(PartScan):
         self.row = self.column = 0  # where the scan stands
         self.last_row = self.last_column = self.cells = self.text = 0
         self.place, self.kind = (0, 0), ""  # of the cell that is open
-        self.has_formula = False
+        self.is_open = self.has_formula = False
         self.value: list[str] | None = None
 
     def start(self, name: str, attributes: dict[str, str]) -> None:
-        name = _local(name)
+        if ":" in name:
+            name = _local(name)
         if name == "c":
             self.close()
             self._open(attributes)
         elif name == "row":
             self.close()
             self._next_row(attributes.get("r"))
+        elif not self.is_open or self.kind == "inlineStr":
+            return
         elif name == "f":
             self.has_formula = True
-        elif name == "v":
+        elif name != "v":  # the sheet goes on after its cells
+            self.close()
+        else:
             self.value = []
             if self.has_formula or self.kind in ("e", "s"):
                 self.parser.CharacterDataHandler = self.value.append
@@ -131,6 +137,8 @@ class SheetScan(PartScan):
 
     def close(self) -> None:
         """The open cell ends: judged by what was seen of it."""
+        if not self.is_open:
+            return
         self.parser.CharacterDataHandler = None
         text = "".join(self.value or ()).strip()
         if self.kind == "e":
@@ -139,8 +147,9 @@ class SheetScan(PartScan):
             self.hollow.add("E321", HollowCell(*self.place, None))
         elif self.kind == "s" and text.isdecimal() and len(text) < 10 and int(text) < len(self.lengths):
             self.text += self.lengths[int(text)]
-            self._require("E110", "characters in the cells of a sheet", self.text, self.limits.unpacked_bytes)
-        self.kind, self.has_formula, self.value = "", False, None
+            if self.text > self.limits.unpacked_bytes:
+                self._require("E110", "characters in the cells of a sheet", self.text, self.limits.unpacked_bytes)
+        self.kind, self.is_open, self.has_formula, self.value = "", False, False, None
 
     def _next_row(self, named: str | None) -> None:
         if named is not None and not _ROW_NAME.fullmatch(named):
@@ -157,60 +166,60 @@ class SheetScan(PartScan):
                 raise NotAWorkbook("a cell of a sheet has a name that is none")
             row, self.column = int(parts[2]), column_number(parts[1])
         self.place, self.kind = (row, self.column), attributes.get("t", "")
-        self.cells += 1
+        self.cells, self.is_open = self.cells + 1, True
         self._reach(row, self.column)
 
     def _reach(self, row: int, column: int) -> None:
         """The sheet reaches to this cell at least; refused as soon as that is too far."""
+        if self.cells > self.limits.sheet_cells:
+            self._require("E111", "cells in a sheet", self.cells, self.limits.sheet_cells)
         if row > self.last_row or column > self.last_column:
             self.last_row, self.last_column = max(row, self.last_row), max(column, self.last_column)
             self._require("E111", "columns used in a sheet", self.last_column, self.limits.columns)
-            what = f"cells between the first and the last of a sheet ({self.last_row:,} rows x {self.last_column:,} columns)"
+            area = f"{self.last_row:,} rows x {self.last_column:,} columns"
+            what = f"cells between the first and the last of a sheet ({area})"
             self._require("E111", what, self.last_row * self.last_column, self.limits.sheet_cells)
-        self._require("E111", "cells in a sheet", self.cells, self.limits.sheet_cells)
 
     def _require(self, code: str, what: str, found: int, limit: int) -> None:
         if found > limit:
             raise too_large(code, self.file, what, found, limit, SPLIT)
 
 
-class NamesScan(PartScan):
-    """Pairs of attributes of one kind of element: the sheets of a workbook, or what its relations point to."""
+class AttributesScan(PartScan):
+    """The attributes of one kind of element: the sheets of a workbook, or what it relates to."""
 
-    def __init__(self, element: str, key: str, value: str) -> None:
+    def __init__(self, element: str) -> None:
         super().__init__()
-        self.element, self.key, self.value = element, key, value
-        self.pairs: list[tuple[str, str]] = []
+        self.element = element
+        self.found: list[dict[str, str]] = []
 
     def start(self, name: str, attributes: dict[str, str]) -> None:
         if _local(name) == self.element:
-            of = {_local(key): value for key, value in attributes.items() if ":" in key or key not in ("id",)}
-            self.pairs.append((of.get(self.key, ""), of.get(self.value, "")))
+            self.found.append({_local(key): value for key, value in attributes.items()})
 
 
-def sheet_parts(workbook: Iterable[bytes], relations: Iterable[bytes]) -> dict[str, str]:
-    """Where each sheet lies in the archive, in lower case, by the sheet's name."""
-    sheets = _pairs(NamesScan("sheet", "name", "id"), workbook)
-    targets = dict(_pairs(NamesScan("Relationship", "Id", "Target"), relations))
-    return {name: _part_name(targets[id_]) for name, id_ in sheets if id_ in targets}
-
-
-def _pairs(scan: NamesScan, pieces: Iterable[bytes]) -> list[tuple[str, str]]:
+def attributes_of(element: str, pieces: Iterable[bytes]) -> list[dict[str, str]]:
+    """The attributes of each such element in a part, without prefixes; none where there is no part."""
+    scan, any_piece = AttributesScan(element), False
     for piece in pieces:
         scan.feed(piece)
-    scan.feed(b"", last=True)
-    return scan.pairs
+        any_piece = True
+    if any_piece:
+        scan.feed(b"", last=True)
+    return scan.found
 
 
-def _part_name(target: str) -> str:
-    whole = target.lower().replace("\\", "/").removeprefix("/")
-    return whole if whole.startswith("xl/") else f"xl/{whole}"
+def part_name(target: str, folder: str = "xl/") -> str:
+    """The member a relation points to, in lower case: from the root of the archive, or from the workbook's folder."""
+    whole = target.lower().replace("\\", "/")
+    return whole[1:] if whole.startswith("/") else whole if whole.startswith(folder) else folder + whole
 
 
 def _local(name: str) -> str:
     return name.rpartition(":")[2]
 
 
+@lru_cache(maxsize=4096)
 def column_number(letters: str) -> int:
     """The number of a spreadsheet column: A is 1, Z is 26, AA is 27."""
     number = 0
