@@ -13,11 +13,13 @@ from os import PathLike
 from pathlib import Path
 from typing import TYPE_CHECKING
 
+from projector.study.version import VERSION
+
 if TYPE_CHECKING:
     from projector.run.results import RunResults
     from projector.run.runner import Staged
 
-__version__ = "0.1.0"
+__version__ = VERSION
 __all__ = ["check_study", "new_study", "render_report", "result_columns", "run_study"]
 
 

@@ -14,7 +14,7 @@ NUMERICAL = "numerical default of the program"
 
 def percent(value: float, digits: int = 2) -> str:
     """A decimal rate in percent."""
-    return f"{100.0 * value:.{digits}f}%"
+    return f"{round(100.0 * value, digits) + 0.0:.{digits}f}%"
 
 
 def bp(value: float) -> str:

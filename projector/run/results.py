@@ -86,7 +86,7 @@ COLUMNS: dict[str, dict[str, tuple[str, str]]] = {
         "cost_rate": ("1/year", "IRR of the liability stream on the statutory reserve"),
         "cost_rate_status": ("-", "none, one or several"),
         "irr_gap": ("1/year", "irr_assets less cost_rate; empty unless both have one root"),
-        "horizon_return": ("1/year", "yearly return of the whole segment with reinvestment, on market value"),
+        "horizon_return": ("1/year", "internal rate of the whole segment, on market value; empty unless there is one"),
         "callable_par": ("currency", "starting par callable at stated prices (make-whole with par call included)"),
         "par_called": ("currency", "par called"),
         "stated_callable_par": ("currency", "of callable_par: at stated prices, par calls of make-whole not counted"),

@@ -5,11 +5,13 @@ from __future__ import annotations
 import math
 import re
 from collections.abc import Callable
-from dataclasses import dataclass
+from dataclasses import replace
 from datetime import date
-from typing import Any
+from functools import partial
+from typing import Any, NamedTuple
 
 import numpy as np
+from numpy.typing import NDArray
 
 from projector.study.columns import Column
 from projector.study.names import is_identifier, listed, nearest, text_fault
@@ -22,13 +24,19 @@ _NUMBER_REMEDY = "write a decimal number such as 0.0525, with a point, without a
 _DATE_REMEDY = f"write a real calendar day as YYYY-MM-DD, {FIRST_YEAR} to {LAST_YEAR}"
 
 
-@dataclass(frozen=True)
-class Fault:
-    """What is wrong with a cell: code, problem, remedy; the place is known to the caller."""
+class Fault(NamedTuple):
+    """What is wrong with a cell: code, problem, remedy; the place is known to the caller.
+
+    A remedy that is dear to word is worded only for the faults that are shown.
+    """
 
     code: str
     problem: str
-    remedy: str
+    remedy: str | Callable[[], str]
+
+    def advice(self) -> str:
+        """The remedy in words."""
+        return self.remedy if isinstance(self.remedy, str) else self.remedy()
 
 
 def plain_text(value: Any) -> str:
@@ -61,10 +69,16 @@ def number_fault(number: float, column: Column) -> Fault | None:
         return Fault("E308", f"{column.name} is not a finite number", _NUMBER_REMEDY)
     below = column.least is not None and (number <= column.least if column.above_least else number < column.least)
     if below or (column.most is not None and number > column.most):
-        return Fault("E309", f"{column.name} is out of range", f"{_range(column)}{_meant(number, column)}")
+        return Fault("E309", f"{column.name} is out of range", partial(_range_remedy, number, column))
     if column.kind == "whole" and number != math.floor(number):
         return Fault("E310", f"{column.name} is not a whole number", "write it without decimals")
     return None
+
+
+def number_codes(numbers: NDArray[np.float64], column: Column) -> NDArray[Any]:
+    """The code `number_fault` gives each of some numbers that may not stand in the column."""
+    within = in_range(numbers, replace(column, kind="number"))
+    return np.where(np.isfinite(numbers), np.where(within, "E310", "E309"), "E308")
 
 
 def in_range(number: Any, column: Column) -> Any:
@@ -80,6 +94,10 @@ def in_range(number: Any, column: Column) -> Any:
 def figure(number: float) -> str:
     """A number in a sentence: thousands separated, no digits beyond the fifteenth."""
     return f"{number:,.15g}"
+
+
+def _range_remedy(number: float, column: Column) -> str:
+    return f"{_range(column)}{_meant(number, column)}"
 
 
 def _range(column: Column) -> str:
@@ -116,9 +134,13 @@ def parse_choice(text: str, column: Column) -> str | Fault:
     text = text.strip(" ")
     if text in column.choices:
         return text
+    return Fault("E312", f"{column.name} is unknown", partial(_choice_remedy, text, column))
+
+
+def _choice_remedy(text: str, column: Column) -> str:
     close = nearest(text, column.choices)
     meant = f"did you mean {close}? Allowed are " if close else "write one of "
-    return Fault("E312", f"{column.name} is unknown", f"{meant}{listed(column.choices, 30)}")
+    return f"{meant}{listed(column.choices, 30)}"
 
 
 def parse_flag(text: str, column: Column) -> bool | Fault:

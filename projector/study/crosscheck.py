@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 from collections.abc import Iterable
 from functools import partial
+from typing import Any
 
 import pandas as pd
 
@@ -47,20 +48,21 @@ def lot_errors(
 def segment_errors(frame: pd.DataFrame, segments: Iterable[str], file: str) -> list[LocatedError]:
     """Every segment named in a table is one of study.toml's."""
     known = tuple(segments)
-    errors = []
-    for name in frame["segment"][~frame["segment"].isin(known)].unique():
-        close = nearest(name, known)
+
+    def remedy(row: dict[str, Any]) -> str:
+        close = nearest(str(row["segment"]), known)
         meant = f"did you mean {close}?" if close else "add it to study.toml, or correct the name:"
-        errors += row_errors(
-            frame,
-            frame["segment"] == name,
-            code="E402",
-            file=file,
-            column="segment",
-            problem="this segment is not in study.toml",
-            remedy=f"{meant} The segments are {listed(known)}",
-        )
-    return errors
+        return f"{meant} The segments are {listed(known)}"
+
+    return row_errors(
+        frame,
+        ~frame["segment"].isin(known),
+        code="E402",
+        file=file,
+        column="segment",
+        problem="this segment is not in study.toml",
+        remedy=remedy,
+    )
 
 
 def rating_errors(

@@ -13,6 +13,8 @@ from projector.study.schema import StudyForm
 from projector.study.tomlfile import Place, dotted, line_of, toml_text
 
 WEIGHTS_TO = 1e-9
+LEAST_FADE_YEARS = 1 / 12  # [year], the projection's own step
+LEAST_VOLATILITY = 1e-6  # [1/year]
 
 
 @dataclass(frozen=True)
@@ -28,7 +30,16 @@ class Breach:
 
 def rule_errors(form: StudyForm, lines: dict[Place, int]) -> list[LocatedError]:
     """Every rule that is not met, at the line of its key."""
-    rules = (_dates, _segments, _spreads_and_defaults, _purchases, _path_files, _blocks, _not_honoured)
+    rules = (
+        _dates,
+        _segments,
+        _nothing_or_enough,
+        _spreads_and_defaults,
+        _purchases,
+        _path_files,
+        _blocks,
+        _not_honoured,
+    )
     return [
         LocatedError(
             code=breach.code,
@@ -72,6 +83,22 @@ def _segments(form: StudyForm) -> Iterator[Breach]:
         if name == "all":
             remedy = "choose another: all means the total over segments"
             yield Breach(("segments", at, "name"), "E209", "a segment cannot have this name", remedy, name)
+
+
+def _nothing_or_enough(form: StudyForm) -> Iterator[Breach]:
+    """Numbers that are 0 or not near it: between, the arithmetic has no answer that could be told from none."""
+    for section, key, value, least, remedy in (
+        (
+            *("spreads", "residual_fade_years", form.spreads.residual_fade_years, LEAST_FADE_YEARS),
+            "write 0 to keep the residual, or at least 1/12 of a year, such as 0.084",
+        ),
+        (
+            *("call_model", "normal_volatility", form.call_model.normal_volatility, LEAST_VOLATILITY),
+            "write 0 for rates that do not move, or at least 0.000001; 0.01 is 100 bp a year",
+        ),
+    ):
+        if 0 < value < least:
+            yield Breach((section, key), "E205", "this number is too small to mean anything but 0", remedy, value)
 
 
 def _spreads_and_defaults(form: StudyForm) -> Iterator[Breach]:

@@ -8,20 +8,16 @@ from __future__ import annotations
 import csv
 import io
 from dataclasses import dataclass
+from functools import partial
 from typing import Any
 
 import numpy as np
-import pyarrow as pa
-import pyarrow.parquet as pq
 from numpy.typing import NDArray
 
-from projector.study.cells import plain_text
-from projector.study.errors import LocatedError, StudyRefused
-from projector.study.files import LIMITS, InputFile, Limits, refused, require_known_suffix, too_large
-from projector.study.names import shown
+from projector.study.errors import LocatedError, StudyRefused, first_errors
+from projector.study.files import LIMITS, InputFile, Limits, require_known_suffix, too_large
+from projector.study.parquetcells import LARGE_REMEDY, read_parquet
 from projector.study.workbook import read_sheet
-
-LARGE_REMEDY = "drop what the run does not need, or split the study"
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -33,6 +29,7 @@ class RawTable:
     header: tuple[str, ...]
     columns: tuple[NDArray[Any], ...]  # beside the header
     row: NDArray[np.int64]  # the line of the file, header = 1
+    floating: frozenset[str] = frozenset()  # columns that were floating-point numbers in the file
 
 
 def read_raw_table(file: InputFile, table: str, limits: Limits = LIMITS) -> RawTable:
@@ -122,54 +119,22 @@ def _require_even(file: str, sheet: str | None, kept: list[tuple[int, list[str]]
         (number, line) for number, line in kept if len(line) != width and (len(line) < width or any(line[width:]))
     ]
     if ragged:
-        raise StudyRefused(
-            LocatedError(
-                code="E305",
-                file=file,
-                sheet=sheet,
-                row=number,
-                problem=f"this row has {len(line)} cells, the header has {width}",
-                remedy="give every row as many cells as the header; a text with a comma in it needs quotes",
-            )
-            for number, line in ragged
-        )
+        raise StudyRefused(first_errors(ragged, partial(_uneven, file, sheet, width)))
+
+
+def _uneven(file: str, sheet: str | None, width: int, ragged: tuple[int, list[str]]) -> LocatedError:
+    number, line = ragged
+    return LocatedError(
+        code="E305",
+        file=file,
+        sheet=sheet,
+        row=number,
+        problem=f"this row has {len(line)} cells, the header has {width}",
+        remedy="give every row as many cells as the header; a text with a comma in it needs quotes",
+    )
 
 
 def _from_parquet(file: InputFile, limits: Limits) -> RawTable:
-    try:
-        source = pq.ParquetFile(pa.BufferReader(file.content))
-        meta = source.metadata
-        _require_size(file.name, meta.num_rows, meta.num_columns, meta.num_rows * meta.num_columns, limits)
-        unpacked = sum(meta.row_group(at).total_byte_size for at in range(meta.num_row_groups))
-        if unpacked > limits.unpacked_bytes:
-            raise too_large("E110", file.name, "bytes unpacked", unpacked, limits.unpacked_bytes, LARGE_REMEDY)
-        schema = source.schema_arrow
-        texts = [name for name, kind in zip(schema.names, schema.types) if pa.types.is_string(kind)]
-        frame = pq.read_table(pa.BufferReader(file.content), read_dictionary=texts)
-        columns = tuple(_parquet_cells(column) for column in frame.columns)
-    except (pa.ArrowException, OSError, ValueError, NotImplementedError) as problem:
-        reason = shown(problem) or type(problem).__name__
-        remedy = "write it again as a plain table of texts, numbers, dates and flags"
-        raise refused("E108", file.name, f"this is not a Parquet file that can be read: {reason}", remedy) from None
-    row = np.arange(2, frame.num_rows + 2, dtype=np.int64)
-    return RawTable(file=file.name, sheet=None, header=tuple(frame.column_names), columns=columns, row=row)
-
-
-def _parquet_cells(column: Any) -> NDArray[Any]:
-    """A column as numbers where it is numeric without gaps, else as text."""
-    kind = column.type
-    if pa.types.is_floating(kind) or pa.types.is_integer(kind):
-        if column.null_count == 0:
-            return np.asarray(column.to_numpy())
-        return np.array([plain_text(value) for value in column.to_pylist()], dtype=object)
-    if pa.types.is_dictionary(kind):
-        whole = column.combine_chunks()
-        parts = whole.chunks if isinstance(whole, pa.ChunkedArray) else [whole]
-        return np.concatenate([_dictionary_cells(part) for part in parts]) if parts else np.array([], dtype=object)
-    return np.array([plain_text(value) for value in column.to_pylist()], dtype=object)
-
-
-def _dictionary_cells(part: Any) -> NDArray[Any]:
-    words = np.array([*(plain_text(value) for value in part.dictionary.to_pylist()), ""], dtype=object)
-    places = part.indices.fill_null(len(words) - 1).to_numpy(zero_copy_only=False)
-    return words[places]
+    header, columns, floating = read_parquet(file, limits, _require_size)
+    row = np.arange(2, (len(columns[0]) if columns else 0) + 2, dtype=np.int64)
+    return RawTable(file=file.name, sheet=None, header=header, columns=columns, row=row, floating=floating)

@@ -14,6 +14,8 @@ from pydantic_core import PydanticCustomError
 from projector.study.columns import RATINGS
 from projector.study.names import WORDS_AT_MOST, text_fault
 
+SEGMENTS_AT_MOST = 200
+
 
 def _printable(text: str, at_most: int, *, lines: bool) -> str:
     problem = text_fault(text, at_most, lines=lines) or (None if text else "is empty")
@@ -223,7 +225,9 @@ class StudyForm(Form):
 
     study: StudySection = Field(description="What this study is.")
     tables: TablesSection = Field(description="Files under the study folder: CSV, Parquet or XLSX.")
-    segments: list[SegmentSection] = Field(min_length=1, description="Blocks of business with their own assets.")
+    segments: list[SegmentSection] = Field(
+        min_length=1, max_length=SEGMENTS_AT_MOST, description="Blocks of business with their own assets."
+    )
     call_model: CallModelSection = Field(description="How issuers decide to call.")
     spreads: SpreadsSection = Field(description="Refunding spread and what a price tells beyond its class.")
     defaults: DefaultsSection = Field(description="Default cost.")

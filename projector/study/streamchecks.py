@@ -11,13 +11,15 @@ import pandas as pd
 from numpy.typing import NDArray
 
 from projector.study.columns import ALL, FLOW_ITEMS, STATE_ITEMS
-from projector.study.errors import LocatedError
+from projector.study.errors import LocatedError, first_errors
 from projector.study.files import STUDY_FILE
 from projector.study.names import listed, nearest
 from projector.study.tablecheck import row_errors
 
 RESERVE = "reserve_statutory"
 SAME_TO = 0.005  # [currency]
+_PLACE = ("block", "scenario", "item")
+Place = tuple[str, str, str]
 
 
 def stream_errors(streams: pd.DataFrame, horizon_months: int, close_out: str, file: str) -> list[LocatedError]:
@@ -73,18 +75,19 @@ def _item_errors(streams: pd.DataFrame, close_out: str, file: str) -> list[Locat
     blocks = sorted(streams["block"].unique())
     for item, why in needed.items():
         having = set(streams["block"][streams["item"] == item])
-        errors += [
-            LocatedError(
-                code="E446",
-                file=file,
-                column="item",
-                problem=f"block {block} has no rows of {item}",
-                remedy=f"add them for every scenario and month: {why}",
-            )
-            for block in blocks
-            if block not in having
-        ]
+        lacking = [block for block in blocks if block not in having]
+        errors += first_errors(lacking, partial(_item_error, file, item, why))
     return errors
+
+
+def _item_error(file: str, item: str, why: str, block: str) -> LocatedError:
+    return LocatedError(
+        code="E446",
+        file=file,
+        column="item",
+        problem=f"block {block} has no rows of {item}",
+        remedy=f"add them for every scenario and month: {why}",
+    )
 
 
 def _reserve_errors(streams: pd.DataFrame, file: str) -> list[LocatedError]:
@@ -124,20 +127,10 @@ def check_stream_scenarios(
 
 def _declaration_errors(streams: pd.DataFrame, insensitive: Sequence[str], file: str) -> list[LocatedError]:
     """Blocks named insensitive have scenario `all` and nothing else; no other block has it."""
-    blocks = streams["block"].unique()
-    key = "liabilities.rate_insensitive_blocks"
-    errors = [
-        LocatedError(
-            code="E448",
-            file=STUDY_FILE,
-            column=key,
-            value=block,
-            problem="this block has no rows in the liability streams",
-            remedy=_meant(block, blocks, "remove the name"),
-        )
-        for block in insensitive
-        if block not in set(blocks)
-    ]
+    blocks, key = streams["block"].unique().tolist(), "liabilities.rate_insensitive_blocks"
+    there = set(blocks)
+    unknown = [block for block in insensitive if block not in there]
+    errors = first_errors(unknown, partial(_undeclared, key, blocks))
     pairs = streams.drop_duplicates(["block", "scenario"])
     declared, whole = pairs["block"].isin(insensitive), pairs["scenario"] == ALL
     at = partial(row_errors, pairs, file=file, code="E448", column="scenario")
@@ -154,6 +147,17 @@ def _declaration_errors(streams: pd.DataFrame, insensitive: Sequence[str], file:
             remedy=f"name the block in {key}, or give it a stream for each scenario",
         ),
     ]
+
+
+def _undeclared(key: str, blocks: list[str], block: str) -> LocatedError:
+    return LocatedError(
+        code="E448",
+        file=STUDY_FILE,
+        column=key,
+        value=block,
+        problem="this block has no rows in the liability streams",
+        remedy=_meant(block, blocks, "remove the name"),
+    )
 
 
 def _meant(name: str, names: Iterable[str], otherwise: str) -> str:
@@ -175,21 +179,24 @@ def _foreign_errors(streams: pd.DataFrame, scenario_ids: tuple[str, ...], file: 
 
 
 def _lacking_errors(streams: pd.DataFrame, scenario_ids: tuple[str, ...], file: str) -> list[LocatedError]:
-    errors = []
-    for block, rows in streams.groupby("block", sort=True):
-        have = set(rows["scenario"].unique())
-        lacking = [scenario for scenario in scenario_ids if scenario not in have]
-        if lacking:
-            errors.append(
-                LocatedError(
-                    code="E442",
-                    file=file,
-                    column="scenario",
-                    problem=f"block {block} has no stream for {listed(lacking)}",
-                    remedy="add a stream for every scenario of the run, or declare the block insensitive to rates",
-                )
-            )
-    return errors
+    have = streams.drop_duplicates(["block", "scenario"])
+    have = have[have["scenario"].isin(scenario_ids)]
+    counts = (
+        have.groupby("block", sort=True)["scenario"].count().reindex(sorted(streams["block"].unique()), fill_value=0)
+    )
+    lacking = counts.index[counts < len(set(scenario_ids))].tolist()
+
+    def told(block: str) -> LocatedError:
+        there = set(have["scenario"][have["block"] == block])
+        return LocatedError(
+            code="E442",
+            file=file,
+            column="scenario",
+            problem=f"block {block} has no stream for {listed(each for each in scenario_ids if each not in there)}",
+            remedy="add a stream for every scenario of the run, or declare the block insensitive to rates",
+        )
+
+    return first_errors(lacking, told)
 
 
 def _month_errors(streams: pd.DataFrame, horizon_months: int, file: str) -> list[LocatedError]:
@@ -199,25 +206,28 @@ def _month_errors(streams: pd.DataFrame, horizon_months: int, file: str) -> list
     within = (month <= horizon_months) & (state | (month >= 1))
     rows = streams[within]
     groups = rows.groupby(["block", "scenario", "item"], sort=True)["month"]
-    sizes = {
-        key: (int(distinct), int(count)) for key, distinct, count in zip(groups.groups, groups.nunique(), groups.size())
-    }
-    errors = []
-    for block, scenario, item in _expected(rows):
-        distinct, count = sizes.get((block, scenario, item), (0, 0))
-        first = 0 if item in STATE_ITEMS else 1
-        where = {"block": block, "scenario": scenario, "item": item}
-        if distinct != horizon_months + 1 - first:
-            missing = sorted(set(range(first, horizon_months + 1)) - set(_months(rows, where)))
-            errors.append(_month_error("E440", file, where, missing, "missing", "add one row for each"))
-        if count > distinct:
-            months, counts = np.unique(_months(rows, where), return_counts=True)
-            twice = months[counts > 1].tolist()
-            errors.append(_month_error("E441", file, where, twice, "there more than once", "keep one row for each"))
-    return errors
+    sizes = dict(zip(groups.groups, zip(groups.nunique().tolist(), groups.size().tolist())))
+    expected = [(place, *sizes.get(place, (0, 0))) for place in _expected(rows)]
+    short = [place for place, distinct, _ in expected if distinct != horizon_months + 1 - _first_month(place)]
+    doubled = [place for place, distinct, count in expected if count > distinct]
+
+    def missing(place: Place) -> LocatedError:
+        months = sorted(set(range(_first_month(place), horizon_months + 1)) - set(_months(rows, place).tolist()))
+        return _month_error("E440", file, place, months, "missing", "add one row for each")
+
+    def twice(place: Place) -> LocatedError:
+        months, counts = np.unique(_months(rows, place), return_counts=True)
+        again = months[counts > 1].tolist()
+        return _month_error("E441", file, place, again, "there more than once", "keep one row for each")
+
+    return first_errors(short, missing) + first_errors(doubled, twice)
 
 
-def _expected(rows: pd.DataFrame) -> list[tuple[str, str, str]]:
+def _first_month(place: Place) -> int:
+    return 0 if place[2] in STATE_ITEMS else 1
+
+
+def _expected(rows: pd.DataFrame) -> list[Place]:
     scenarios = rows.drop_duplicates(["block", "scenario"]).groupby("block", sort=True)["scenario"].agg(sorted)
     items = rows.drop_duplicates(["block", "item"]).groupby("block", sort=True)["item"].agg(sorted)
     return [
@@ -228,21 +238,20 @@ def _expected(rows: pd.DataFrame) -> list[tuple[str, str, str]]:
     ]
 
 
-def _months(rows: pd.DataFrame, where: dict[str, str]) -> NDArray[Any]:
-    mask = np.logical_and.reduce([(rows[name] == value).to_numpy() for name, value in where.items()])
+def _months(rows: pd.DataFrame, place: Place) -> NDArray[Any]:
+    """The months of one block, scenario and item; asked only for faults that are shown."""
+    mask = np.logical_and.reduce([(rows[name] == value).to_numpy() for name, value in zip(_PLACE, place)])
     return rows["month"].to_numpy()[mask]
 
 
-def _month_error(
-    code: str, file: str, where: dict[str, str], months: list[int], what: str, remedy: str
-) -> LocatedError:
+def _month_error(code: str, file: str, place: Place, months: list[int], what: str, remedy: str) -> LocatedError:
     which = f"month {months[0]} is" if len(months) == 1 else f"months {spans(months)} are"
-    place = ", ".join(f"{name} {value}" for name, value in where.items())
+    where = ", ".join(f"{name} {value}" for name, value in zip(_PLACE, place))
     return LocatedError(
         code=code,
         file=file,
         column="month",
-        problem=f"{place}: {which} {what}",
+        problem=f"{where}: {which} {what}",
         remedy=f"{remedy}, 0 where nothing flows",
     )
 

@@ -7,7 +7,7 @@ what is different, not with what is repeated.
 from __future__ import annotations
 
 import re
-from collections.abc import Iterable
+from collections.abc import Callable, Iterable
 from dataclasses import dataclass
 from typing import Any
 
@@ -15,14 +15,15 @@ import numpy as np
 import pandas as pd
 from numpy.typing import NDArray
 
-from projector.study.cells import PARSERS, Fault, in_range, number_fault, plain_text
+from projector.study.cells import PARSERS, Fault, in_range, number_codes, number_fault, plain_text
 from projector.study.columns import Column, RefusedColumn, Table
-from projector.study.errors import LocatedError
+from projector.study.errors import SHOWN_AT_MOST, LocatedError, first_errors
 from projector.study.names import listed, nearest, shown
 from projector.study.rawtables import RawTable
 
 BLANKS: dict[str, Any] = {"number": np.nan, "whole": 0, "date": None, "flag": False}  # others: ""
 _BRACED = re.compile(r"\{(\w+)\}")
+_NO_NUMBER = ("nan", "inf", "-inf")
 _HARMLESS = ("", "0", "0.0", "none", "no", "false")
 
 
@@ -79,28 +80,29 @@ def row_errors(
     file: str,
     column: str,
     problem: str,
-    remedy: str,
+    remedy: str | Callable[[dict[str, Any]], str],
 ) -> list[LocatedError]:
-    """One located error for each row of the mask, with the value of `column` as found.
+    """Located errors for the rows of the mask, with the value of `column` as found; twenty, the rest are counted.
 
     In `problem` and `remedy` the names of columns in braces stand for the row's values.
     """
     chosen = np.asarray(mask, dtype=bool)
     if not chosen.any():  # the usual case, and rows to dictionaries are dear
         return []
-    faulty = frame[chosen]
-    return [
-        LocatedError(
+    shown_rows = frame[chosen & (np.cumsum(chosen) <= SHOWN_AT_MOST)]
+    return first_errors(
+        _records(shown_rows),
+        lambda values: LocatedError(
             code=code,
             file=file,
             row=int(values["row"]),
             column=column,
             value=cell_as_read(values[column]),
             problem=_filled_in(problem, values),
-            remedy=_filled_in(remedy, values),
-        )
-        for values in _records(faulty)
-    ]
+            remedy=remedy(values) if callable(remedy) else _filled_in(remedy, values),
+        ),
+        int(chosen.sum()) - len(shown_rows),
+    )
 
 
 def _records(frame: pd.DataFrame) -> list[dict[str, Any]]:
@@ -151,39 +153,71 @@ def _blank(column: Column) -> Any:
     return BLANKS.get(column.kind, "")
 
 
+@dataclass(frozen=True)
+class _Column:
+    """A column as parsed: values, the places of the bad cells, the code of each, and what is wrong at a place."""
+
+    values: NDArray[Any]
+    bad: NDArray[np.int64]
+    codes: NDArray[Any]  # beside `bad`
+    fault: Callable[[int], Fault]
+
+
 def _check_column(
     raw: RawTable, column: Column, cells: NDArray[Any]
 ) -> tuple[Any, NDArray[np.bool_], list[LocatedError]]:
     """Typed values, which of them are sound, and the faults."""
     if cells.dtype != object and column.kind in ("number", "whole"):
-        values, faults = _judged(column, cells.astype(np.float64))
+        parsed = _judged(column, cells.astype(np.float64))
     else:
         texts = (
             cells if cells.dtype == object else np.array([plain_text(cell) for cell in cells.tolist()], dtype=object)
         )
-        values, faults = _parsed(column, texts)
+        parsed = _parsed(column, texts, floating=column.name in raw.floating)
     sound = np.ones(len(cells), dtype=bool)
-    sound[list(faults)] = False
-    errors = [_cell_error(raw, column, at, cells[at], fault) for at, fault in sorted(faults.items())]
-    return _typed(column, values), sound, errors
+    sound[parsed.bad] = False
+    return _typed(column, parsed.values), sound, _column_errors(raw, column, cells, parsed)
 
 
-def _judged(column: Column, numbers: NDArray[np.float64]) -> tuple[NDArray[Any], dict[int, Fault]]:
-    """Numbers of a Parquet file, judged all at once; only the bad ones are looked at alone."""
+def _column_errors(raw: RawTable, column: Column, cells: NDArray[Any], parsed: _Column) -> list[LocatedError]:
+    """The first faults of each code in the order of the rows; the rest are counted."""
+    errors: list[LocatedError] = []
+    for code in sorted(set(parsed.codes.tolist())):
+        places = parsed.bad[parsed.codes == code].tolist()
+        errors += first_errors(places, lambda at: _cell_error(raw, column, at, cells[at], parsed.fault(at)))
+    return sorted(errors, key=lambda error: error.row or 0)
+
+
+def _judged(column: Column, numbers: NDArray[np.float64]) -> _Column:
+    """Numbers of a Parquet file, judged all at once; only the bad ones that are shown are looked at alone."""
     bad = np.flatnonzero(~in_range(numbers, column))
-    faults = {int(at): fault for at in bad if (fault := number_fault(float(numbers[at]), column))}
-    return np.where(np.isfinite(numbers), numbers, 0.0), faults
+
+    def fault(at: int) -> Fault:
+        found = number_fault(float(numbers[at]), column)
+        assert found is not None  # `bad` are the numbers out of range
+        return found
+
+    values = np.where(np.isfinite(numbers), numbers, 0.0)
+    return _Column(values, bad, number_codes(numbers[bad], column), fault)
 
 
-def _parsed(column: Column, texts: NDArray[Any]) -> tuple[NDArray[Any], dict[int, Fault]]:
-    """Texts, each distinct one parsed once."""
-    codes, distinct = pd.factorize(texts)
-    results = [_value(column, text) for text in distinct]
-    is_bad = np.array([isinstance(result, Fault) for result in results], dtype=bool)
+def _parsed(column: Column, texts: NDArray[Any], *, floating: bool) -> _Column:
+    """Texts, each distinct one parsed once.
+
+    floating  the texts were floating-point numbers: where they were none, the text they became is no text
+    """
+    places, distinct = pd.factorize(texts)
+    results = [
+        Fault("E308", f"{column.name} is not a finite number", f"write the {column.meaning}")
+        if floating and text in _NO_NUMBER
+        else _value(column, text)
+        for text in distinct
+    ]
+    codes = np.array([result.code if isinstance(result, Fault) else "" for result in results], dtype=object)
     values = np.empty(len(results), dtype=object)
     values[:] = [_blank(column) if isinstance(result, Fault) else result for result in results]
-    bad = np.flatnonzero(is_bad[codes]) if is_bad.any() else ()
-    return values[codes], {int(at): results[codes[at]] for at in bad}
+    bad = np.flatnonzero((codes != "")[places]) if (codes != "").any() else np.zeros(0, dtype=np.int64)
+    return _Column(values[places], bad, codes[places[bad]], lambda at: results[places[at]])
 
 
 def _value(column: Column, text: str) -> Any:
@@ -215,7 +249,7 @@ def _cell_error(raw: RawTable, column: Column, at: int, cell: Any, fault: Fault)
         column=column.name,
         value=cell if isinstance(cell, str) else plain_text(cell.item()),
         problem=fault.problem,
-        remedy=fault.remedy,
+        remedy=fault.advice(),
     )
 
 
@@ -225,12 +259,9 @@ def _refused_errors(raw: RawTable, refused: RefusedColumn, cells: NDArray[Any]) 
     remedy = "leave the cell empty only where the terms do not have it; otherwise this security cannot be modelled"
     harmless = _HARMLESS + refused.harmless
     texts = [cell if isinstance(cell, str) else plain_text(cell) for cell in cells.tolist()]
-    return [
-        _cell_error(raw, Column(name=refused.name, kind="text", unit="-", meaning=""), at, text, fault)
-        for fault in [Fault(refused.code, problem, remedy)]
-        for at, text in enumerate(texts)
-        if text.strip(" ").lower() not in harmless
-    ]
+    asking = [at for at, text in enumerate(texts) if text.strip(" ").lower() not in harmless]
+    column, fault = Column(name=refused.name, kind="text", unit="-", meaning=""), Fault(refused.code, problem, remedy)
+    return first_errors(asking, lambda at: _cell_error(raw, column, at, texts[at], fault))
 
 
 def _codes(values: pd.Series) -> NDArray[np.int64]:
@@ -247,13 +278,19 @@ def _duplicate_errors(
         return []
     place = pd.Series(np.arange(len(frame)), index=frame.index)
     first = keyed.assign(place=place).groupby(key, sort=False, dropna=False)["place"].transform("first")
-    errors = []
-    for later in keyed.index[keyed.duplicated(key)]:
-        earlier = int(first.loc[later])
-        names = ", ".join(f"{name} {cell_as_read(frame[name].iloc[later])}" for name in key)
-        differing = [name for name, cells in zip(raw.header, raw.columns) if cells[later] != cells[earlier]]
-        errors.append(_duplicate(raw, table, names, int(later), int(frame["row"].iloc[earlier]), differing))
-    return errors
+    later = keyed.index[keyed.duplicated(key)].to_numpy()
+    earlier = first.loc[later].to_numpy()
+    other = np.zeros(len(later), dtype=bool)
+    for cells in raw.columns if table.name == "securities" else ():
+        other |= cells[later] != cells[earlier]
+
+    def told(pair: tuple[int, int]) -> LocatedError:
+        names = ", ".join(f"{name} {cell_as_read(frame[name].iloc[pair[0]])}" for name in key)
+        differing = [name for name, cells in zip(raw.header, raw.columns) if cells[pair[0]] != cells[pair[1]]]
+        return _duplicate(raw, table, names, pair[0], int(frame["row"].iloc[pair[1]]), differing)
+
+    pairs = [list(zip(later[kind].tolist(), earlier[kind].tolist())) for kind in (~other, other)]
+    return sorted((error for same in pairs for error in first_errors(same, told)), key=lambda error: error.row or 0)
 
 
 def _duplicate(raw: RawTable, table: Table, names: str, at: int, earlier: int, differing: list[str]) -> LocatedError:

@@ -16,6 +16,8 @@ from projector.study.daycounts import months_before
 from projector.study.errors import LocatedError
 from projector.study.tablecheck import Checked, row_errors
 
+_SCHEDULE = ["first_coupon_date", "maturity_date", "coupon_frequency", "end_of_month"]
+_TERMS = ["issue_date", "maturity_date", "par_call_date", "coupon_frequency", "end_of_month"]
 RowErrors = Callable[..., list[LocatedError]]
 
 
@@ -110,9 +112,9 @@ def _first_coupon_errors(securities: pd.DataFrame, at: RowErrors) -> list[Locate
     given = first.notna()
     zero = given & (securities["coupon_frequency"] == 0)
     order = given & ~zero & ((first <= securities["issue_date"]) | (first > securities["maturity_date"]))
-    irregular = pd.Series(False, index=securities.index)
-    for index in securities.index[given & ~zero & ~order]:
-        irregular.loc[index] = not _is_regular(securities.loc[index])
+    judged = (given & ~zero & ~order).to_numpy()
+    irregular = np.zeros(len(securities), dtype=bool)
+    irregular[judged] = [not _is_regular(*terms) for terms in zip(*(securities[name][judged] for name in _SCHEDULE))]
     column: dict[str, Any] = {"code": "E405", "column": "first_coupon_date"}
     return [
         *at(zero, **column, problem="a zero coupon bond has no first coupon", remedy="leave the cell empty"),
@@ -131,12 +133,11 @@ def _first_coupon_errors(securities: pd.DataFrame, at: RowErrors) -> list[Locate
     ]
 
 
-def _is_regular(terms: pd.Series) -> bool:
-    first, maturity = terms["first_coupon_date"].date(), terms["maturity_date"].date()
+def _is_regular(first: pd.Timestamp, maturity: pd.Timestamp, frequency: int, end_of_month: bool) -> bool:
     months = (maturity.year - first.year) * 12 + maturity.month - first.month
-    if months % (12 // int(terms["coupon_frequency"])):
+    if months % (12 // int(frequency)):
         return False
-    return bool(first == months_before(maturity, months, month_end=bool(terms["end_of_month"])))
+    return bool(first.date() == months_before(maturity.date(), months, month_end=bool(end_of_month)))
 
 
 @dataclass(frozen=True)
@@ -153,7 +154,7 @@ def check_call_rights(rights: pd.DataFrame, securities: pd.DataFrame, valuation:
     rights      checked table in the order of its file
     securities  checked table of securities
     """
-    terms = securities.set_index("security_id")[["issue_date", "maturity_date", "par_call_date"]]
+    terms = securities.set_index("security_id")[_TERMS]
     joined = rights.join(terms, on="security_id")
     at = partial(row_errors, joined, file=file)
     errors = [
@@ -167,6 +168,7 @@ def check_call_rights(rights: pd.DataFrame, securities: pd.DataFrame, valuation:
         *_right_date_errors(joined, at),
         *_right_price_errors(joined, at),
         *_sequence_errors(joined, at),
+        *_unused_errors(joined, valuation, at),
     ]
     return Rights(errors, (*_price_warnings(joined, file), *_past_warnings(joined, valuation, file)))
 
@@ -207,6 +209,59 @@ def _right_date_errors(joined: pd.DataFrame, at: RowErrors) -> list[LocatedError
             remedy="end the right before par_call_date, or leave par_call_date empty",
         ),
     ]
+
+
+def _unused_errors(joined: pd.DataFrame, valuation: date, at: RowErrors) -> list[LocatedError]:
+    """Rights with no day on which they could be used; those wholly past have no effect and are left alone."""
+    first, last, maturity = joined["first_date"], joined["last_date"], joined["maturity_date"]
+    possible = (first <= last) & (last < maturity) & (last > pd.Timestamp(valuation))
+    month_end = (last + pd.Timedelta(days=1)).to_numpy().astype("datetime64[M]").astype("datetime64[D]") - 1
+    without_month_end = month_end < first.to_numpy().astype("datetime64[D]")
+    bermudan = possible & (joined["style"] == "bermudan")
+    zero = joined["coupon_frequency"] == 0
+    paying = (bermudan & ~zero).to_numpy()
+    without_coupon = np.zeros(len(joined), dtype=bool)
+    names = ["first_date", "last_date", *_SCHEDULE[1:]]
+    without_coupon[paying] = [not _has_coupon_date(*terms) for terms in zip(*(joined[name][paying] for name in names))]
+    column: dict[str, Any] = {"code": "E419", "column": "last_date"}
+    never = "this right can never be used: "
+    widen = "widen the dates or make it european"
+    return [
+        *at(
+            possible & (joined["style"] == "american") & without_month_end,
+            **column,
+            problem=never
+            + "an american right is used at month ends, and none lies between {first_date} and {last_date}",
+            remedy=widen,
+        ),
+        *at(
+            bermudan & zero,
+            **{**column, "column": "style"},
+            problem=never + "a bermudan right is used on coupon dates, and {security_id} is a zero coupon bond",
+            remedy="make it european or american",
+        ),
+        *at(
+            without_coupon,
+            **column,
+            problem=never
+            + "a bermudan right is used on coupon dates, and none lies between {first_date} and {last_date}",
+            remedy=widen,
+        ),
+    ]
+
+
+def _has_coupon_date(
+    first: pd.Timestamp, last: pd.Timestamp, maturity: pd.Timestamp, frequency: float, end_of_month: bool
+) -> bool:
+    """Whether a date of the schedule counted back from maturity lies between the two days, both included."""
+    step = 12 // int(frequency)
+    months = (maturity.year - last.year) * 12 + maturity.month - last.month
+    periods = months // step  # the date so many periods before maturity is in the month of `last` or later
+    for back in (periods, periods + 1):
+        day = months_before(maturity.date(), back * step, month_end=bool(end_of_month))
+        if first.date() <= day <= last.date():
+            return True
+    return False
 
 
 def _right_price_errors(joined: pd.DataFrame, at: RowErrors) -> list[LocatedError]:

@@ -107,6 +107,11 @@ def _too_short(complaint: Complaint) -> Words:
     return "E202", "this list is empty", "write at least one entry"
 
 
+def _too_long(complaint: Complaint) -> Words:
+    found, most = complaint.context["actual_length"], complaint.context["max_length"]
+    return "E205", f"this list has {found:,} entries", f"write at most {most}"
+
+
 _WORDS: dict[str, Callable[[Complaint], Words]] = {
     "float_type": _number,
     "int_type": _whole,
@@ -130,6 +135,7 @@ _WORDS: dict[str, Callable[[Complaint], Words]] = {
     "string_too_long": _pattern,
     "text_fault": _fault,
     "too_short": _too_short,
+    "too_long": _too_long,
 }
 
 

@@ -13,10 +13,12 @@ from projector.study.errors import LocatedError, StudyRefused
 from projector.study.files import STUDY_FILE
 from projector.study.names import listed, nearest, shown
 from projector.study.schema import StudyForm
+from projector.study.tomldepth import too_deep_at
 from projector.study.tomlfaults import Complaint, reworded
 
 FILL_IN = "FILL IN"
 Place = tuple[str | int, ...]
+_PLAIN = "write plain sections and keys as in a new study"
 
 _PLACE_OF_TOML_ERROR = re.compile(r"\s*\(at line (\d+), column (\d+)\)$")
 _TABLE = re.compile(r"\s*(\[\[?)\s*([^\[\]]+?)\s*\]\]?\s*(?:#.*)?$")
@@ -30,6 +32,9 @@ def parse_toml(content: bytes) -> tuple[dict[str, Any], dict[Place, int]]:
     except UnicodeDecodeError as problem:
         row = content.count(b"\n", 0, problem.start) + 1
         raise StudyRefused([_error("E201", row, "the file is not UTF-8 text", "save it as UTF-8")]) from None
+    too_deep = too_deep_at(text)
+    if too_deep is not None:
+        raise StudyRefused([_error("E208", too_deep, "the file is nested too deeply", _PLAIN)])
     try:
         return tomllib.loads(text), dict(key_lines(text))
     except tomllib.TOMLDecodeError as problem:
@@ -41,8 +46,7 @@ def parse_toml(content: bytes) -> tuple[dict[str, Any], dict[Place, int]]:
         remedy = "correct the line; texts need quotes, dates and numbers do not"
         raise StudyRefused([_error("E201", row, said, remedy)]) from None
     except RecursionError:
-        remedy = "write plain sections and keys as in a new study"
-        raise StudyRefused([_error("E208", None, "the file is nested too deeply", remedy)]) from None
+        raise StudyRefused([_error("E208", None, "the file is nested too deeply", _PLAIN)]) from None
     except ValueError:  # an integer of thousands of digits
         remedy = "write numbers of at most 17 digits"
         raise StudyRefused([_error("E201", None, "a number has too many digits to be read", remedy)]) from None
@@ -116,7 +120,7 @@ def check_form(raw: dict[str, Any], lines: dict[Place, int]) -> tuple[StudyForm 
 
 def _located(faults: list[tuple[Place, Any]], lines: dict[Place, int]) -> list[LocatedError]:
     """The faults as located errors; an unknown key that is close to a missing one becomes one error with it."""
-    missing = {place for place, fault in faults if fault["type"] == "missing"}
+    missing = dict.fromkeys(place for place, fault in faults if fault["type"] == "missing")  # in the form's order
     errors = []
     for place, fault in faults:
         if fault["type"] == "extra_forbidden":
@@ -141,14 +145,14 @@ def _asked_for(place: Place) -> str:
     return f"add it: {description[0].lower() + description[1:].rstrip('.')}" if description else "add it"
 
 
-def _unknown_key(place: Place, fault: Any, missing: set[Place], lines: dict[Place, int]) -> LocatedError:
+def _unknown_key(place: Place, fault: Any, missing: dict[Place, None], lines: dict[Place, int]) -> LocatedError:
     """An unknown key; takes its missing neighbour out of `missing` when that is what was meant."""
     key, around = str(place[-1]), place[:-1]
     lacking = [str(other[-1]) for other in missing if other[:-1] == around]
     known = [name for model in models_at(fault["loc"][:-1]) for name in model.model_fields]
     remedy = f"remove it; the keys here are {listed(known, 30)}"
     if close := nearest(key, lacking):
-        missing.discard((*around, close))
+        missing.pop((*around, close), None)
         remedy = f"did you mean {close}? That key is missing"
     elif close := nearest(key, known):
         remedy = f"did you mean {close}? Correct the name or remove the key"

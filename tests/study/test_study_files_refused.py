@@ -9,6 +9,7 @@ from pathlib import Path
 from typing import Any
 
 import pandas as pd
+import pyarrow as pa
 import pyarrow.parquet as pq
 import pytest
 
@@ -226,3 +227,68 @@ def test_limit_csv_that_is_not_utf8_or_not_csv_is_located(small: Any, only_fault
         error = only_fault(small)
         assert (error.code, error.file) == ("E108", "yield_curve.csv")
         assert error.row in (row, row - 1)
+
+
+def _arrow(small: Any, **columns: Any) -> Any:
+    """The lots as a Parquet file with columns replaced."""
+    table = pa.table(pd.DataFrame(small.tables["lots"]).astype({"par": float, "book_value": float}).to_dict("list"))
+    for name, values in columns.items():
+        table = table.set_column(table.column_names.index(name), name, values)
+    content = io.BytesIO()
+    pq.write_table(table, content)
+    return _parquet(small, content.getvalue())
+
+
+def test_limit_a_parquet_time_outside_the_calendar_is_located(small: Any, only_fault: Any) -> None:
+    frame = pd.DataFrame(small.tables["securities"])
+    for kind, far in ((pa.timestamp("s"), 10**12), (pa.timestamp("us"), -(10**18)), (pa.date32(), 10**7)):
+        day = 20_254 if pa.types.is_date(kind) else 20_254 * 86_400 * (10**6 if kind.unit == "us" else 1)
+        table = pa.table(frame.to_dict("list"))
+        place = table.column_names.index("maturity_date")
+        table = table.set_column(place, "maturity_date", pa.array([day, day, far], kind))
+        pq.write_table(table, small.write() / "securities.parquet")
+        error = only_fault(small.replace('"securities.csv"', '"securities.parquet"'))
+        assert (error.code, error.row, error.column) == ("E311", 4, "maturity_date")
+        small.replace('"securities.parquet"', '"securities.csv"')
+
+
+def test_limit_bytes_of_a_parquet_file_are_text_or_refused(small: Any, only_fault: Any) -> None:
+    names = [b"L1", b"L2", "L\u00e93".encode(), b"L4"]
+    for values in (
+        pa.array(names),
+        pa.array(names, pa.large_binary()),
+        pa.array(names).dictionary_encode(),
+        pa.array([b"A1", b"A2", b"A3", b"A4"], pa.binary(2)),
+    ):
+        study, _ = read_study(_arrow(small, lot_id=values).write())
+        assert sorted(study.tables.lots["lot_id"])[0] in ("L1", "A1")
+        small.replace('"lots.parquet"', '"lots.csv"')
+    error = only_fault(_arrow(small, lot_id=pa.array([b"L1", b"L2", b"\xff", b"L4"])))
+    assert error.sentence() == (
+        "E322 lots.parquet, column lot_id: the column holds bytes that are not UTF-8 text; "
+        "write it as a column of texts, numbers, dates or flags."
+    )
+
+
+@pytest.mark.parametrize(
+    ("values", "kind"),
+    [
+        ([[1], [2], [3], [4]], pa.list_(pa.int64())),
+        ([{"a": 1}] * 4, pa.struct([("a", pa.int64())])),
+        ([1, 2, 3, 4], pa.duration("s")),
+        ([1, 2, 3, 4], pa.time32("s")),
+    ],
+)
+def test_limit_parquet_columns_that_are_no_cells_are_refused(
+    small: Any, only_fault: Any, values: list[Any], kind: Any
+) -> None:
+    error = only_fault(_arrow(small, lot_id=pa.array(values, kind)))
+    assert (error.code, error.file, error.column) == ("E322", "lots.parquet", "lot_id")
+    assert error.problem.startswith("the column is of the type ")
+
+
+def test_limit_a_number_that_is_none_is_no_name_either(small: Any, faults: Any) -> None:
+    for values in ([1.0, 2.0, float("nan"), float("inf")], [1.0, None, float("nan"), float("inf")]):
+        found = faults(_arrow(small, lot_id=pa.array(values)))
+        assert [(error.code, error.row) for error in found if error.code == "E308"] == [("E308", 4), ("E308", 5)]
+        small.replace('"lots.parquet"', '"lots.csv"')

@@ -127,3 +127,45 @@ def test_known_month_ends_counted_back_from_maturity() -> None:
     assert months_before(date(2030, 6, 30), 6, month_end=True) == date(2029, 12, 31)
     assert months_before(date(2030, 6, 30), 6, month_end=False) == date(2029, 12, 30)
     assert months_before(date(2030, 1, 31), 23, month_end=False) == date(2028, 2, 29)
+
+
+UNUSED = [
+    ("american", "2026-06-01", "2026-06-29", False),
+    ("american", "2026-06-01", "2026-06-30", True),
+    ("american", "2026-06-30", "2026-06-30", True),
+    ("american", "2025-12-31", "2026-01-02", True),
+    ("american", "2026-07-01", "2026-07-01", False),
+    ("american", "2022-07-01", "2022-07-30", True),  # wholly past: a warning
+    ("bermudan", "2026-06-16", "2026-12-14", False),
+    ("bermudan", "2026-06-15", "2026-06-15", True),
+    ("bermudan", "2026-06-16", "2026-12-15", True),
+    ("bermudan", "2026-03-01", "2026-06-14", False),
+    ("bermudan", "2022-07-01", "2022-07-30", True),
+    ("european", "2026-06-17", "2026-06-17", True),
+]
+
+
+@pytest.mark.parametrize(("style", "first", "last", "taken"), UNUSED)
+def test_limit_a_right_that_can_never_be_used_is_refused(
+    small: Any, only_fault: Any, style: str, first: str, last: str, taken: bool
+) -> None:
+    small.tables["call_rights"] = [{**small.tables["call_rights"][0], "style": style}]
+    small.cell("call_rights", 2, "first_date", first).cell("call_rights", 2, "last_date", last)
+    if taken:
+        read_study(small.write())
+        return
+    error = only_fault(small)
+    assert (error.code, error.row, error.column, error.value) == ("E419", 2, "last_date", last)
+    used = "an american right is used at month ends" if style == "american" else "a bermudan right is used on coupon"
+    assert error.problem.startswith(f"this right can never be used: {used}")
+    assert error.sentence().endswith(
+        f"and none lies between {first} and {last} (found '{last}'); widen the dates or make it european."
+    )
+
+
+def test_limit_a_bermudan_right_on_a_zero_coupon_bond_is_refused(small: Any, only_fault: Any) -> None:
+    small.cell("securities", 2, "coupon_rate", "0").cell("securities", 2, "coupon_frequency", "0")
+    small.cell("call_rights", 2, "style", "bermudan")
+    error = only_fault(small)
+    assert (error.code, error.row, error.column, error.value) == ("E419", 2, "style", "bermudan")
+    assert error.problem.endswith("and B1 is a zero coupon bond")

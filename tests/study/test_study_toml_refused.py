@@ -144,7 +144,11 @@ def test_limit_whole_numbers_stand_for_decimals(small: Any) -> None:
         ("[study]\nname = \n", "E201", 2),
         ("a = 2022-02-31\n", "E201", 1),
         ("a = 1\na = 2\n", "E201", 2),
-        (f"a = {'[' * 100_000}", "E208", None),
+        (f"a = {'[' * 100_000}", "E208", 1),
+        (f"\n{'.'.join(['a'] * 5_000)} = 1", "E208", 2),
+        (f"\n\n[{' . '.join(['a'] * 100_000)}]", "E208", 3),
+        ("[[" + ".".join(['"a"', "'b'"] * 400) + "]]", "E208", 1),
+        (f"a = {{{'.'.join(['a'] * 22)} = 1}}", "E208", 1),
         (f"a = {'9' * 5_000}", "E201", None),
     ],
 )
@@ -175,6 +179,59 @@ def test_order_the_lines_of_keys_survive_texts_that_look_like_keys(small: Any, o
     small.replace('notes = ["Invented data."]', 'notes = ["""\n[tax]\nrate = 5\n"""]\nmaterialty = "x"')
     error = only_fault(small)
     assert (error.code, error.column, error.row) == ("E203", "texts.materialty", small.line("materialty"))
+
+
+def test_limit_dots_and_brackets_in_texts_and_comments_do_not_count(small: Any) -> None:
+    dots = "." * 200 + "[" * 30
+    texts = f"""["{dots}\\"{dots}", '{dots}', \"\"\"{dots}\n"{dots}\"\"\"\"]  # {dots}"""
+    study, _ = read_study(small.replace('["Invented data."]', texts).write())
+    assert study.texts.notes[1] == dots
+
+
+def test_limit_deep_keys_are_refused_at_once(small: Any, only_fault: Any) -> None:
+    import time
+
+    for text in ("a." * 400_000 + "a = 1", 'a = """' + '\\"""' * 200_000, "'" * 900_000):
+        start, small.toml = time.perf_counter(), text
+        assert only_fault(small).code in ("E208", "E201")
+        assert time.perf_counter() - start < 5
+
+
+def test_order_missing_keys_come_in_the_order_of_the_form(small: Any, faults: Any) -> None:
+    from projector.study.schema import StudyForm
+
+    small.toml = ""
+    needed = [name for name, field in StudyForm.model_fields.items() if field.is_required()]
+    assert [error.column for error in faults(small)] == needed
+
+
+def test_limit_more_than_200_segments_are_refused(small: Any, only_fault: Any) -> None:
+    more = "".join(f'[[segments]]\nname = "s{at}"\ntitle = "S"\ncash = 0\n' for at in range(200))
+    error = only_fault(small.replace("[call_model]\n", f"{more}\n[call_model]\n"))
+    assert (error.code, error.column) == ("E205", "segments")
+    assert error.sentence().endswith("this list has 201 entries; write at most 200.")
+
+
+@pytest.mark.parametrize(
+    ("key", "old", "refused", "taken"),
+    [
+        ("residual_fade_years", "0", ("1e-300", "0.05", "0.0833"), ("0.084", "1", "0.0")),
+        ("normal_volatility", "0.0095", ("5e-324", "1e-9", "9.9e-7"), ("1e-6", "0", "0.01")),
+    ],
+)
+def test_limit_numbers_next_to_nothing_are_refused(
+    small: Any, only_fault: Any, key: str, old: str, refused: tuple[str, ...], taken: tuple[str, ...]
+) -> None:
+    small.replace(f"{key} = {old}\n", f"{key} = @\n")
+    whole = small.toml
+    for value in refused:
+        small.toml = whole.replace("@", value)
+        error = only_fault(small)
+        assert (error.code, error.column.split(".")[1]) == ("E205", key)
+        assert error.problem == "this number is too small to mean anything but 0"
+    for value in taken:
+        small.toml = whole.replace("@", value)
+        read_study(small.write())
 
 
 def test_pinned_the_json_schema_knows_every_section() -> None:

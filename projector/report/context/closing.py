@@ -5,7 +5,6 @@ from __future__ import annotations
 import re
 from dataclasses import dataclass, field
 
-from projector import __version__
 from projector.report import cells
 from projector.report.cautions import Caution, cautions
 from projector.report.context import measures
@@ -15,6 +14,7 @@ from projector.report.context.results import by_year
 from projector.report.context.scope import defects
 from projector.report.numbers import count_of, date_words, fixed
 from projector.report.parts import Column, Row, Table, told
+from projector.study.version import VERSION
 
 EXPONENT = re.compile(r"(?<=e)-(?=\d)")
 
@@ -91,7 +91,7 @@ def reproduce(reading: Reading, run_command: str) -> Reproduce:
         for name, digest in reading.results.result_digests.items()
     )  # fmt: skip
     return Reproduce(
-        command=run_command, version=__version__, input_digest=reading.study.input_digest,
+        command=run_command, version=VERSION, input_digest=reading.study.input_digest,
         set_digest=reading.results.set_digest,
         table=Table(
             number="16.1", caption="Digests of results",
