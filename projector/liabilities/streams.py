@@ -55,28 +55,43 @@ class SuppliedStream:
         return state, self.outcome(state, m)
 
 
+@dataclass(frozen=True)
+class StreamRows:
+    """Rows of one block as arrays, and the room they fill: months 0..months and so many paths."""
+
+    item: npt.NDArray[np.object_]
+    month: npt.NDArray[np.int64]
+    path: npt.NDArray[np.int64]
+    amount: Array
+    months: int
+    paths: int
+
+    def table(self, name: str) -> Array:
+        """Amounts of one item. [currency], shape (month, path), zero where the block has no row"""
+        out = np.zeros((self.months + 1, self.paths))
+        mine = (self.item == name) & (self.month <= self.months)
+        out[self.month[mine], self.path[mine]] = self.amount[mine]
+        return out
+
+
 def build_streams(table: pd.DataFrame, scenario_ids: tuple[str, ...], months: int) -> tuple[SuppliedStream, ...]:
     """Every block of the table, in the order (segment, block). The door has checked that each is there once."""
     blocks = []
     for (segment, block), part in table.groupby(["segment", "block"], sort=True):
         insensitive = bool((part["scenario"] == EVERY_PATH).all())
         order = {EVERY_PATH: 0} if insensitive else {s: p for p, s in enumerate(scenario_ids)}
-        path = part["scenario"].map(order).to_numpy(dtype=np.int64)
-        month = part["month"].to_numpy(dtype=np.int64)
-        item = part["item"].astype(str).to_numpy()
-        amount = part["amount"].to_numpy(dtype=np.float64)
-
-        def table_of(name: str, item=item, month=month, path=path, amount=amount, order=order) -> Array:  # type: ignore[no-untyped-def]
-            out = np.zeros((months + 1, len(order)))
-            mine = (item == name) & (month <= months)
-            out[month[mine], path[mine]] = amount[mine]
-            return out
-
-        flows = np.stack([table_of(name) for name in ITEM_NAMES])
-        surrender = table_of("surrender_value") if (item == "surrender_value").any() else None
-        blocks.append(
-            SuppliedStream(str(block), str(segment), flows, table_of("reserve_statutory"), surrender, insensitive)
+        rows = StreamRows(
+            part["item"].astype(str).to_numpy(),
+            part["month"].to_numpy(dtype=np.int64),
+            part["scenario"].map(order).to_numpy(dtype=np.int64),
+            part["amount"].to_numpy(dtype=np.float64),
+            months,
+            len(order),
         )
+        flows = np.stack([rows.table(name) for name in ITEM_NAMES])
+        surrender = rows.table("surrender_value") if (rows.item == "surrender_value").any() else None
+        reserve = rows.table("reserve_statutory")
+        blocks.append(SuppliedStream(str(block), str(segment), flows, reserve, surrender, insensitive))
     return tuple(blocks)
 
 
