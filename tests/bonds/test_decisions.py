@@ -18,9 +18,9 @@ from projector.bonds.call_rules import Opportunity, OptimalWithCost
 from projector.bonds.decisions import DecisionPass, DecisionRows, unit_key
 from projector.bonds.exercise.model import ShortRateModel
 from projector.bonds.exercise.plain import plain_values
-from projector.bonds.exercise.step_operator import GRID_FINE, GRID_FINER
+from projector.bonds.exercise.step_operator import GRID_FINE, GRID_FINER, GRID_HALF_YEAR
 from projector.bonds.mapped import MappedBonds
-from projector.bonds.solving import ExerciseModel, Jobs, MonthSolver
+from projector.bonds.solving import ExerciseModel, Jobs, MonthSolver, production_grid
 from projector.bonds.spreads import SpreadPath
 from projector.run.block import discounts_of
 from projector.run.prepare import Prepared, prepare
@@ -31,8 +31,11 @@ MONTHS = 60
 
 
 def bonds() -> MappedBonds:
-    """Four securities: half-year rights from month 12, declining; monthly rights; one European; one without."""
-    terms = [(54, 6, 6.0, range(12, 54, 6)), (48, 1, 5.5, range(6, 48)), (60, 6, 5.0, [30]), (42, 6, 4.0, [])]
+    """Four securities: half-year rights from month 12, declining; monthly rights; one European; one without.
+
+    The last two pay between half-years, so they carry accrued interest at month 0.
+    """
+    terms = [(54, 6, 6.0, range(12, 54, 6)), (48, 1, 5.5, range(6, 48)), (58, 6, 5.0, [28]), (45, 6, 4.0, [])]
     last = 60
     coupon, accrued = np.zeros((4, last + 1)), np.zeros((4, last + 1))
     price = np.full((4, last + 1), np.inf)
@@ -177,9 +180,25 @@ def test_limit_a_near_tie_is_solved_again_on_finer_grids():
     value = s.solve(jobs, discounts(month), GRID_FINER, False)[0]
     decide = DecisionPass(s, OptimalWithCost(), MONTHS)
     for gap, code in ((0.05, 1), (0.003, 2), (0.00003, 3)):
-        found, by = decide.continuations(month, 6, u, np.array([0]), value + gap, discounts(month))
-        assert by[0] == code
-        assert found[0] == pytest.approx(value[0], abs=0.002)
+        for side in (gap, -gap):
+            found, by = decide.continuations(month, 6, u, np.array([0]), value + side, discounts(month))
+            assert by[0] == code
+            assert found[0] == pytest.approx(value[0], abs=0.002)
+    coarse, fine, finer = (
+        s.solve(jobs, discounts(month), g, False)[0] for g in (GRID_HALF_YEAR, GRID_FINE, GRID_FINER)
+    )
+    assert len({coarse[0], fine[0], finer[0]}) == 3
+    for gap, grid in ((0.05, coarse), (0.003, fine), (0.00003, finer)):
+        found, _ = decide.continuations(month, 6, u, np.array([0]), finer + gap, discounts(month))
+        assert found[0] == grid[0]  # and by that very grid
+
+
+def test_limit_the_tie_band_of_monthly_grids_is_narrower():
+    s, u, p = solver(), np.array([1]), np.array([0])
+    value = s.solve(Jobs(24, 1, 1, u, p), discounts(24), GRID_FINER, False)[0]
+    decide = DecisionPass(s, OptimalWithCost(), MONTHS)
+    for gap, code in ((0.05, 1), (0.003, 1), (0.001, 2), (0.00003, 3)):
+        assert decide.continuations(24, 1, u, p, value + gap, discounts(24))[1][0] == code
 
 
 def test_order_a_called_security_is_asked_no_more_and_is_called_once():
@@ -191,6 +210,14 @@ def test_order_a_called_security_is_asked_no_more_and_is_called_once():
     last = frame.groupby(["unit", "path"])["month"].max()
     assert (last.loc[called.min().index] == called.min()).all()
     assert (events.share == 1.0).all()
+
+
+def test_limit_nothing_is_decided_in_the_month_of_maturity():
+    s = solver()
+    clean = s.bonds.clean_price.copy()
+    clean[np.arange(4), s.bonds.maturity] = 1.0
+    late = replace(s, bonds=replace(s.bonds, clean_price=clean, dirty_price=clean + s.bonds.accrued))
+    assert (run(late).months() == run(s).months()).all()
 
 
 def test_order_ties_call():
@@ -218,6 +245,32 @@ def test_limit_no_volatility_calls_as_the_forward_curve_says():
     assert (run(s).months() == tiny).all()
 
 
+@pytest.mark.parametrize(("month", "cost"), [(12, 0.5), (14, 0.5), (29, 0.0)])
+def test_order_values_on_paths_are_the_plain_twin_s_on_their_own_dates(month, cost):
+    """Before, between and after rights: the holder's value on the issuer's policy, ex coupon."""
+    s = replace(solver(cost), spreads=replace(spreads(), residual=np.array([0.0, 0.002, -0.004, 0.001])))
+    b, units, discount = s.bonds, np.arange(4), discounts(month)
+    wanted = np.ones((4, 5), dtype=np.bool_)
+    wanted[1, 3] = False
+    found = s.values(month, units, discount, wanted)
+    assert found[1, 3] == 0.0
+    for u, p in ((0, 0), (0, 3), (1, 1), (2, 3), (2, 2), (3, 0)):
+        step = int(b.step[u])
+        offset = int((b.maturity[u] - month - 1) % step + 1)
+        ahead = np.arange(month + offset, b.maturity[u] + 1, step)
+        tau = np.concatenate([[0], ahead - month])
+        held = 0.012 + float(s.spreads.residual[u])
+        rows = []
+        for spread in (0.01, held):
+            d = discount[tau, p] * np.exp(-spread * tau / 12.0)
+            rows.append(np.append(d[1:] / d[:-1], 1.0))
+        price = np.concatenate([[np.inf], b.dirty_price[u, ahead]])
+        flow = np.concatenate([[0.0], b.flow[u, ahead]])
+        twin = plain_values(ShortRateModel(A, SIGMA), step, offset, production_grid(step), ahead.size, *rows, flow,
+                            price, price + cost)[1]  # fmt: skip
+        assert found[u, p] == pytest.approx(twin, rel=1e-10), (u, p)
+
+
 def price_today(cost: float = COST, follows: bool = False) -> PriceToday:
     return PriceToday(bonds(), spreads(), ExerciseModel(A, SIGMA, cost), discounts(0)[:, :1].copy(), follows)
 
@@ -229,6 +282,9 @@ def test_order_calibration_gives_every_price_back(follows):
     fitted = calibrate(price, clean, np.full(4, np.nan), np.full(4, 0.01))
     assert fitted.origin == ("price",) * 4
     assert fitted.model_price == pytest.approx(clean, abs=1e-8)
+    assert (price.bonds.accrued[2:, 0] > 0.5).all()
+    again = price(np.arange(4), fitted.spread)
+    assert again == pytest.approx(clean + price.bonds.accrued[:, 0], abs=1e-8)
 
 
 def test_order_a_stated_spread_is_kept_and_priced():
@@ -248,6 +304,17 @@ def test_limit_a_price_no_spread_can_give_falls_back_to_the_class_spread():
     low = calibrate(price_today(), np.array([101.0, 99.0, 97.0, 20.0]), np.full(4, np.nan), np.full(4, 0.01))
     assert low.origin[3] == "rating_spread"
     assert (low.spread < HIGHEST).all()
+
+
+def test_limit_spreads_down_to_minus_two_hundred_basis_points_are_found():
+    price = price_today()
+    stated = np.array([0.01, -0.004, -0.015, -0.0195])
+    clean = price(np.arange(4), stated) - price.bonds.accrued[:, 0]
+    fitted = calibrate(price, clean, np.full(4, np.nan), np.full(4, 0.01))
+    assert fitted.origin == ("price",) * 4
+    assert fitted.spread == pytest.approx(stated, abs=1e-9)
+    beyond = clean + np.array([0.0, 0.0, 0.0, 1.0])
+    assert calibrate(price, beyond, np.full(4, np.nan), np.full(4, 0.01)).origin[3] == "rating_spread"
 
 
 def callable_next_month() -> tuple[MappedBonds, np.ndarray]:

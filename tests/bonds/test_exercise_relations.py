@@ -8,6 +8,7 @@ from __future__ import annotations
 
 from dataclasses import replace
 
+import mpmath
 import numpy as np
 import pytest
 
@@ -358,6 +359,25 @@ def test_pinned_thirty_year_five_per_cent_at_par_on_a_flat_curve(cost, issuer, h
     price[[0, n]] = np.inf
     found = cost_and_value(Problem(np.array([n]), ratio, ratio, flow, price, price + cost), grid=GRID_FINER)
     assert (found[0][0], found[1][0]) == pytest.approx((issuer, holder), abs=6e-5)
+
+
+@pytest.mark.parametrize("a", [0.0, 1e-9, 1e-6, 1e-4, 0.03, 0.3, -0.01])
+def test_known_closed_forms_of_the_model_are_the_integrals_they_stand_for(a):
+    """What kernel and twin share, against 30 digits: responses are integrals, and mean discounts are today's."""
+    model, sigma = ShortRateModel(a, 0.012), mpmath.mpf(0.012)
+    close = 1e-7 if abs(a) < 1e-8 else 1e-12  # below 1e-8 the limit a = 0 stands in
+    with mpmath.workdps(30):
+        for t, tau in ((1.0 / 12.0, 0.5), (7.5, 1.0), (29.0, 21.0)):
+            g = mpmath.quad(lambda s: mpmath.exp(-a * s), [0, tau])
+            variance = sigma**2 * mpmath.quad(lambda s: mpmath.exp(-2 * a * s), [0, t])
+            drift = -(sigma**2) * mpmath.quad(lambda s: mpmath.exp(-a * s), [0, t]) ** 2 / 2
+            assert model.g(tau) == pytest.approx(float(g), rel=close)
+            assert model.variance(t) == pytest.approx(float(variance), rel=close)
+            assert model.mean(t) == pytest.approx(float(drift), rel=2 * close)
+            # the mean over x(t) of the discount from t on, under the measure of t, is the ratio of today's discounts
+            assert model.convexity(t, tau) == pytest.approx(
+                float(mpmath.exp(g * drift - g**2 * variance / 2)), rel=close
+            )
 
 
 @pytest.mark.parametrize("a", [1e-9, 1e-6, 1e-4])

@@ -137,6 +137,17 @@ def test_order_the_holder_s_recursion_changes_no_bit_of_the_issuer_s():
     assert holder == pytest.approx(issuer, rel=1e-8)
 
 
+def test_limit_a_price_at_maturity_or_today_is_no_right():
+    problem = random_problem(np.random.default_rng(10), 20, 20, 0.5, 0.01)
+    price, bar = problem.price.copy(), problem.bar.copy()
+    for row in (np.zeros(20, dtype=np.int64), problem.steps):
+        price[row, np.arange(20)] = 90.0
+        bar[row, np.arange(20)] = 90.5
+    op = operator_for(0.03, 0.01, 6, 6, 20, GRID_HALF_YEAR)
+    for with_them, without in zip(solve(op, replace(problem, price=price, bar=bar)), solve(op, problem)):
+        assert with_them.tobytes() == without.tobytes()
+
+
 def test_order_one_solve_alone_and_sixteen_together_give_the_same_bits():
     problem = random_problem(np.random.default_rng(5), 37, 30, 0.5, 0.01)
     op = operator_for(0.03, 0.01, 6, 6, 30, GRID_HALF_YEAR)

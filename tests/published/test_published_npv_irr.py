@@ -9,7 +9,6 @@ from __future__ import annotations
 import math
 import random
 from datetime import date
-from time import perf_counter
 
 import numpy as np
 import numpy_financial as npf
@@ -202,17 +201,6 @@ def test_limit_forty_years_of_months_are_solved_to_the_last_digits():
     two = np.convolve([1.0, -1.0041], [1.0, -1.0141])  # rates 0.41 % and 1.41 % a month
     flows = np.convolve(two, [1.0] * 470)
     assert_allclose(internal_rates(flows).rates, [0.0041, 0.0141], atol=1e-11)
-
-
-@pytest.mark.bench
-def test_limit_forty_years_of_months_with_many_changes_of_sign_take_milliseconds():
-    flows = np.random.default_rng(3).normal(size=481)
-    taken = []
-    for _ in range(5):
-        start = perf_counter()
-        internal_rates(flows)
-        taken.append(perf_counter() - start)
-    print(f"internal rates of 480 months, scanned: {1000 * min(taken):.2f} ms")
 
 
 def test_known_annual_effective_rates():

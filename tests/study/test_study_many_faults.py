@@ -1,8 +1,8 @@
-"""Tables with a fault in every row: as much is told as is read, the rest is counted, and it does not take long."""
+"""Tables with a fault in every row: as much is told as is read, and the rest is counted, not built."""
 
 from __future__ import annotations
 
-import time
+from collections import Counter
 from typing import Any
 
 import pandas as pd
@@ -12,8 +12,6 @@ from projector.study.errors import SHOWN_AT_MOST, LocatedError, StudyRefused, fi
 from projector.study.ratechecks import rate_table_errors
 from projector.study.reading import read_study
 from projector.study.streamchecks import check_stream_scenarios
-
-SECONDS = 8.0  # for what takes one or two, on a busy machine
 
 
 def _error(at: int) -> LocatedError:
@@ -31,10 +29,10 @@ def test_limit_errors_beyond_twenty_are_counted_not_kept() -> None:
 
 def _refusal(small: Any) -> StudyRefused:
     folder = small.write()
-    start = time.perf_counter()
     with pytest.raises(StudyRefused) as refusal:
         read_study(folder)
-    assert time.perf_counter() - start < SECONDS
+    kept = Counter((error.code, error.file, error.column) for error in refusal.value.errors)
+    assert max(kept.values()) <= SHOWN_AT_MOST  # what takes the time is building them
     return refusal.value
 
 
@@ -98,10 +96,9 @@ def _streams(blocks: int, months: list[int]) -> pd.DataFrame:
 
 
 def test_limit_streams_with_a_fault_in_every_block_are_told_soon() -> None:
-    start = time.perf_counter()
     errors = check_stream_scenarios(_streams(20_000, [0, 2, 2]), (), ("S1", "S2"), 12, "s.csv")
     errors += check_stream_scenarios(_streams(2, [0]), tuple(f"x{at}" for at in range(20_000)), ("S1",), 0, "s.csv")
-    assert time.perf_counter() - start < SECONDS
+    assert len(errors) <= 4 * SHOWN_AT_MOST
     found = {error.code: error for error in errors if error.more}
     assert {code: error.more + SHOWN_AT_MOST for code, error in found.items()} == dict.fromkeys(
         ("E440", "E441", "E442", "E448"), 20_000

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import io
-import time
 import zipfile
 
 import pytest
@@ -97,11 +96,9 @@ def test_limit_many_error_cells_are_counted() -> None:
 
 
 def _too_large(file: InputFile, code: str, limits: Limits) -> None:
-    start = time.perf_counter()
     with pytest.raises(StudyTooLarge) as refusal:
         read_sheet(file, "lots", limits)
     assert [error.code for error in refusal.value.errors] == [code]
-    assert time.perf_counter() - start < 20
 
 
 def test_limit_rows_and_cells_without_a_name_are_counted_too() -> None:
