@@ -212,14 +212,6 @@ def test_order_a_called_security_is_asked_no_more_and_is_called_once():
     assert (events.share == 1.0).all()
 
 
-def test_limit_nothing_is_decided_in_the_month_of_maturity():
-    s = solver()
-    clean = s.bonds.clean_price.copy()
-    clean[np.arange(4), s.bonds.maturity] = 1.0
-    late = replace(s, bonds=replace(s.bonds, clean_price=clean, dirty_price=clean + s.bonds.accrued))
-    assert (run(late).months() == run(s).months()).all()
-
-
 def test_order_ties_call():
     told = Opportunity(1, np.array([100.0, 99.999]), np.array([100.0, 100.0]))
     assert OptimalWithCost().share_called(told).tolist() == [1.0, 0.0]
