@@ -25,7 +25,7 @@ IntArray = npt.NDArray[np.int64]
 
 LOCAL_POINTS = 41
 LOCAL_WIDTH = 5.0
-RESOLVED = 0.95  # below this many h of standard deviation the first sum needs its own, finer grid
+RESOLVED = 2.0  # below this many h of standard deviation the first sum needs its own, finer grid
 
 
 @dataclass(frozen=True)
@@ -42,8 +42,8 @@ class Grid:
 
 
 # Worst errors per 100 promised for the issuer's value: 0.01, 0.002, 0.0003; the last two settle near ties and tests.
-GRID_MONTHLY = Grid(1.0, 4.0, 4.0)
-GRID_HALF_YEAR = Grid(0.8, 4.5, 4.0)
+GRID_MONTHLY = Grid(1.0, 4.0, 4.5)
+GRID_HALF_YEAR = Grid(0.8, 4.5, 4.5)
 GRID_FINE = Grid(0.5, 5.0, 5.0)
 GRID_FINER = Grid(0.25, 6.0, 6.0)
 GRID_REFERENCE = Grid(0.12, 8.0, 8.0)
