@@ -48,6 +48,8 @@ def street_redemptions(row: dict[str, Any], rights: list[dict[str, Any]], settle
 
 def street_yield(bond: DatedBond, redemptions: list[Redemption], settlement: date, price: float) -> float:
     """Yield to worst at a clean price on exact dates, bond-equivalent. [1/year]; nan where none within 100 %"""
+    if price <= 100.0 and all(r.price >= 100.0 for r in redemptions):
+        redemptions = []  # bought at a discount: being repaid sooner at par or more only yields more
     try:
         found = yield_to_worst(bond, settlement, price, redemptions, "street")
     except ValueError:
