@@ -13,12 +13,12 @@ def step_back_9(
     value: Floats, flow: Floats, factor: Floats, out: Floats,
 ) -> None:  # fmt: skip
     """One step of the recursion, band of 9 nodes: out = factor x sum of W (V + flow), all nodes and lanes."""
-    n = np.uint64(lanes)
+    n = np.uint64(16)  # lanes: a constant, so that the compiler needs no remainder
     for i in range(lo, hi + 1):
         r = np.uint64(i - row)
         s = np.uint64(band_start[r] - base) * n
         o = np.uint64(i - base) * n
-        total = growth[r, np.uint64(1)]  # the row's weights add up to it
+        total = growth[np.uint64(1), r]  # the row's weights add up to it
         w0 = weights[r, np.uint64(0)]
         w1 = weights[r, np.uint64(1)]
         w2 = weights[r, np.uint64(2)]
@@ -49,12 +49,12 @@ def step_back_13(
     value: Floats, flow: Floats, factor: Floats, out: Floats,
 ) -> None:  # fmt: skip
     """One step of the recursion, band of 13 nodes: out = factor x sum of W (V + flow), all nodes and lanes."""
-    n = np.uint64(lanes)
+    n = np.uint64(16)  # lanes: a constant, so that the compiler needs no remainder
     for i in range(lo, hi + 1):
         r = np.uint64(i - row)
         s = np.uint64(band_start[r] - base) * n
         o = np.uint64(i - base) * n
-        total = growth[r, np.uint64(1)]  # the row's weights add up to it
+        total = growth[np.uint64(1), r]  # the row's weights add up to it
         w0 = weights[r, np.uint64(0)]
         w1 = weights[r, np.uint64(1)]
         w2 = weights[r, np.uint64(2)]
@@ -93,12 +93,12 @@ def step_back_21(
     value: Floats, flow: Floats, factor: Floats, out: Floats,
 ) -> None:  # fmt: skip
     """One step of the recursion, band of 21 nodes: out = factor x sum of W (V + flow), all nodes and lanes."""
-    n = np.uint64(lanes)
+    n = np.uint64(16)  # lanes: a constant, so that the compiler needs no remainder
     for i in range(lo, hi + 1):
         r = np.uint64(i - row)
         s = np.uint64(band_start[r] - base) * n
         o = np.uint64(i - base) * n
-        total = growth[r, np.uint64(1)]  # the row's weights add up to it
+        total = growth[np.uint64(1), r]  # the row's weights add up to it
         w0 = weights[r, np.uint64(0)]
         w1 = weights[r, np.uint64(1)]
         w2 = weights[r, np.uint64(2)]

@@ -27,12 +27,12 @@ def step_back_{band}(
     value: Floats, flow: Floats, factor: Floats, out: Floats,
 ) -> None:  # fmt: skip
     """One step of the recursion, band of {band} nodes: out = factor x sum of W (V + flow), all nodes and lanes."""
-    n = np.uint64(lanes)
+    n = np.uint64(16)  # lanes: a constant, so that the compiler needs no remainder
     for i in range(lo, hi + 1):
         r = np.uint64(i - row)
         s = np.uint64(band_start[r] - base) * n
         o = np.uint64(i - base) * n
-        total = growth[r, np.uint64(1)]  # the row's weights add up to it
+        total = growth[np.uint64(1), r]  # the row's weights add up to it
 {loads}
         for lane in range(n):
             out[o + lane] = factor[lane] * (

@@ -73,54 +73,69 @@ def straight_values(
 
 @kernel
 def first_and_last(
-    month: int, offset: int, step: int, steps: int, maturity: int, price: Floats
+    month: int, offset: int, step: int, maturity: int, unit: int, price: Floats
 ) -> tuple[int, int]:  # fmt: skip
     """First and last step with a right before maturity, 0 and 0 where there is none."""
     first = 0
     last = 0
-    for k in range(1, steps):
-        t = month + offset + (k - 1) * step
-        if t < maturity and price[t] < np.inf:
-            if first == 0:
-                first = k
+    k = 1
+    for t in range(month + offset, maturity, step):
+        if price[unit, t] < np.inf:
+            first = k if first == 0 else first
             last = k
+        k += 1
     return first, last
 
 
 @kernel
-def fill_lane(
-    lane: int, month: int, offset: int, step: int, begin: int, steps: int, maturity: int, path: int, flow: Floats,
-    price: Floats, cost: float, issuer_spread: float, holder_spread: float, discount: Floats, ratio: Floats,
-    holder_ratio: Floats, flows: Floats, prices: Floats, bars: Floats, lead: Floats,
+def fill_lead(
+    lane: int, month: int, offset: int, step: int, first: int, maturity: int, unit: int, path: int, flow: Floats,
+    issuer_spread: float, holder_spread: float, discount: Floats, lead: Floats,
 ) -> None:  # fmt: skip
-    """Lays one job out in its lane; what comes up to step `begin` is collapsed into the lead, by the same operations
-    in the same order as if it stood in the tables, so that a lane's bits do not depend on its neighbours' rights.
+    """Discount to the first right, value of the payments up to it, and of all of them, for both spreads.
+
+    first  step of the first right, 0: none, and only the last of the three is meant
     """
-    decay_first, decay = exp_one(-issuer_spread * offset / 12.0), exp_one(-issuer_spread * step / 12.0)
-    held_first, held = exp_one(-holder_spread * offset / 12.0), exp_one(-holder_spread * step / 12.0)
-    before = 1.0
-    d, paid, e, held_paid = 1.0, 0.0, 1.0, 0.0
-    for k in range(1, steps + 1):
+    issuer, decay = exp_one(-issuer_spread * offset / 12.0), exp_one(-issuer_spread * step / 12.0)
+    holder, held = exp_one(-holder_spread * offset / 12.0), exp_one(-holder_spread * step / 12.0)
+    stop = month + offset + (first - 1) * step
+    paid, kept = 0.0, 0.0
+    for t in range(month + offset, maturity + 1, step):
+        amount = flow[unit, t]
+        if amount != 0.0:
+            value = amount * discount[t - month, path]
+            paid += value * issuer
+            kept += value * holder
+        if t == stop:
+            here = discount[t - month, path]
+            lead[0, lane], lead[1, lane] = here * issuer, paid
+            lead[3, lane], lead[4, lane] = here * holder, kept
+        issuer = issuer * decay
+        holder = holder * held
+    lead[2, lane], lead[5, lane] = paid, kept
+
+
+@kernel
+def fill_lane(
+    lane: int, month: int, offset: int, step: int, begin: int, steps: int, maturity: int, unit: int, path: int,
+    flow: Floats, price: Floats, cost: float, issuer_spread: float, holder_spread: float, discount: Floats,
+    ratio: Floats, holder_ratio: Floats, flows: Floats, prices: Floats, bars: Floats,
+) -> None:  # fmt: skip
+    """Lays one job out in its lane from step `begin` on; a lane's bits do not depend on its neighbours' rights."""
+    decay, held = exp_one(-issuer_spread * step / 12.0), exp_one(-holder_spread * step / 12.0)
+    t = month + offset + (begin - 1) * step
+    before = discount[t - month, path] if begin > 0 else 1.0
+    for k in range(begin + 1, steps + 1):
         t = month + offset + (k - 1) * step
         here = discount[t - month, path]
-        forward = here / before
-        before = here
-        a = forward * (decay_first if k == 1 else decay)
-        b = forward * (held_first if k == 1 else held)
-        if k <= begin:
-            d = d * a
-            paid += flow[t] * d
-            e = e * b
-            held_paid += flow[t] * e
-            continue
         n = k - begin
-        ratio[n - 1, lane] = a
-        holder_ratio[n - 1, lane] = b
-        flows[n, lane] = flow[t]
-        if t < maturity and price[t] < np.inf:
-            prices[n, lane] = price[t]
-            bars[n, lane] = price[t] + cost
-    lead[0, lane], lead[1, lane], lead[2, lane], lead[3, lane] = d, paid, e, held_paid
+        ratio[n - 1, lane] = here / before * decay
+        holder_ratio[n - 1, lane] = here / before * held
+        before = here
+        flows[n, lane] = flow[unit, t]
+        if t < maturity and price[unit, t] < np.inf:
+            prices[n, lane] = price[unit, t]
+            bars[n, lane] = price[unit, t] + cost
 
 
 @kernel
@@ -147,19 +162,23 @@ def run_jobs(
         for lane in range(LANES):
             u = job_unit[start + min(lane, count - 1)]  # a short batch is filled with copies of its last job
             steps[lane] = (maturity[u] - month - offset) // step + 1
-            first[lane], last[lane] = first_and_last(month, offset, step, steps[lane], maturity[u], price[u])
+            first[lane], last[lane] = first_and_last(month, offset, step, maturity[u], u, price)
             top = max(top, steps[lane])
             begin = min(begin, max(first[lane] if first[lane] > 0 else steps[lane], 1) - 1)
         rows = top - begin + 1
         ratio, holder_ratio = np.ones((rows, LANES)), np.ones((rows, LANES))
-        flows, lead = np.zeros((rows, LANES)), np.empty((4, LANES))
+        flows, lead = np.zeros((rows, LANES)), np.empty((6, LANES))
         prices, bars = np.full((rows, LANES), np.inf), np.full((rows, LANES), np.inf)
         for lane in range(LANES):
             job = start + min(lane, count - 1)
+            u, p = job_unit[job], job_path[job]
+            fill_lead(
+                lane, month, offset, step, first[lane], maturity[u], u, p, flow, issuer_spread[job],
+                holder_spread[job], discount, lead,
+            )  # fmt: skip
             fill_lane(
-                lane, month, offset, step, begin, steps[lane], maturity[job_unit[job]], job_path[job],
-                flow[job_unit[job]], price[job_unit[job]], cost, issuer_spread[job], holder_spread[job], discount,
-                ratio, holder_ratio, flows, prices, bars, lead,
+                lane, month, offset, step, begin, steps[lane], maturity[u], u, p, flow, price, cost,
+                issuer_spread[job], holder_spread[job], discount, ratio, holder_ratio, flows, prices, bars,
             )  # fmt: skip
         cost_out = np.empty(LANES)
         value_out = np.empty(LANES)

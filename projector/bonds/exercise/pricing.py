@@ -7,7 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 import numpy.typing as npt
 
-from projector.bonds.exercise.solver_kernels import LANES, solve_lanes
+from projector.bonds.exercise.solver_kernels import LANES, leads, solve_lanes
 from projector.bonds.exercise.step_operator import Grid, Operator, build_operator
 
 Array = npt.NDArray[np.float64]
@@ -52,11 +52,6 @@ def operator_arguments(op: Operator) -> tuple[object, ...]:
     )  # fmt: skip
 
 
-def no_lead(lanes: int) -> Array:
-    """Nothing collapsed before the first row: discount one, nothing paid, for issuer and holder."""
-    return np.repeat(np.array([[1.0], [0.0], [1.0], [0.0]]), lanes, axis=1)
-
-
 def solve(op: Operator, problem: Problem, both: bool = True) -> tuple[Array, Array]:
     """Issuer's cost and holder's value today, ex coupon. [per 100], shape (solve,)
 
@@ -67,17 +62,19 @@ def solve(op: Operator, problem: Problem, both: bool = True) -> tuple[Array, Arr
     first, last = first_and_last_right(problem.bar, problem.steps)
     arguments = operator_arguments(op)
     lanes = LANES if count > 1 else 1
-    out_issuer, out_holder = np.empty(lanes), np.empty(lanes)
+    lead = np.empty((6, count))
+    leads(problem.steps, first, problem.ratio, problem.holder_ratio, problem.flow, lead)
+    given = (problem.ratio, problem.holder_ratio, problem.flow, problem.price, problem.bar)
     if count == lanes:  # already one full batch
-        given = (problem.ratio, problem.holder_ratio, problem.flow, problem.price, problem.bar)
-        solve_lanes(*arguments, 0, no_lead(lanes), problem.steps, first, last, *given, both, issuer, holder)
+        solve_lanes(*arguments, 0, lead, problem.steps, first, last, *given, both, issuer, holder)
         return issuer, holder
+    out_issuer, out_holder = np.empty(lanes), np.empty(lanes)
     for start in range(0, count, lanes):
         take = np.minimum(np.arange(start, start + lanes), count - 1)
+        tables = (table[:, take] for table in given)
         solve_lanes(
-            *arguments, 0, no_lead(lanes), problem.steps[take], first[take], last[take],
-            problem.ratio[:, take], problem.holder_ratio[:, take], problem.flow[:, take], problem.price[:, take],
-            problem.bar[:, take], both, out_issuer, out_holder,
+            *arguments, 0, lead[:, take], problem.steps[take], first[take], last[take], *tables, both, out_issuer,
+            out_holder,
         )  # fmt: skip
         stop = min(start + lanes, count)
         issuer[start:stop] = out_issuer[: stop - start]

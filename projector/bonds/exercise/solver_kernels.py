@@ -8,12 +8,13 @@ from __future__ import annotations
 
 import numpy as np
 
-from projector.arithmetic.kernels import Flags, Floats, Integers, kernel
+from projector.arithmetic.kernels import Flags, Floats, Integers, inlined, kernel
 from projector.bonds.exercise.band_kernels import step_back_9, step_back_13, step_back_21
 from projector.bonds.exercise.kink_kernels import crossing, kink_corrections, quintic
 
 LANES = 16
 GHOSTS = 3
+MARGIN = 4  # rows beyond the ghosts
 
 
 @kernel
@@ -22,15 +23,18 @@ def straight_columns(
     growth: Floats, row: int, lo: int, hi: int, base: int, column: Floats,
 ) -> None:  # fmt: skip
     """Value at step k of the payments after it, on every node of one lane: closed form, no right is left."""
-    for i in range(lo, hi + 1):
-        column[(i - base) * lanes + lane] = 0.0
+    n, at = np.uint64(lanes), np.uint64((lo - base) * lanes + lane)
+    nodes, low = np.uint64(hi + 1 - lo), np.uint64(lo - row)
+    for i in range(nodes):
+        column[at + i * n] = 0.0
     forward = 1.0
     for j in range(k + 1, steps + 1):
         forward = forward * ratio[j - 1 - begin, lane]
         weight = flow[j - begin, lane] * forward * straight_conv[k, j - k]
         if weight != 0.0:
-            for i in range(lo, hi + 1):
-                column[(i - base) * lanes + lane] += weight * growth[i - row, j - k]
+            ahead = np.uint64(j - k)
+            for i in range(nodes):
+                column[at + i * n] += weight * growth[ahead, low + i]
 
 
 @kernel
@@ -48,7 +52,7 @@ def step_back_any(
             total = weights[r, np.uint64(0)] * value[s + lane]
             for j in range(np.uint64(1), np.uint64(band)):
                 total += weights[r, j] * value[s + lane + j * n]
-            out[o + lane] = factor[lane] * (total + growth[r, np.uint64(1)] * flow[lane])
+            out[o + lane] = factor[lane] * (total + growth[np.uint64(1), r] * flow[lane])
 
 
 @kernel
@@ -57,11 +61,11 @@ def step_back(
     growth: Floats, value: Floats, flow: Floats, factor: Floats, out: Floats,
 ) -> None:  # fmt: skip
     """One step of the recursion by the form for its band width; flow [lane] is paid at the step come from."""
-    if band == 9:
+    if lanes == LANES and band == 9:
         step_back_9(lo, hi, base, row, lanes, band_start, weights, growth, value, flow, factor, out)
-    elif band == 13:
+    elif lanes == LANES and band == 13:
         step_back_13(lo, hi, base, row, lanes, band_start, weights, growth, value, flow, factor, out)
-    elif band == 21:
+    elif lanes == LANES and band == 21:
         step_back_21(lo, hi, base, row, lanes, band_start, weights, growth, value, flow, factor, out)
     else:
         step_back_any(lo, hi, base, row, lanes, band, band_start, weights, growth, value, flow, factor, out)
@@ -106,15 +110,16 @@ def exercise(
     for lane in range(n):
         flat_low[lane] = 0.0
     for i in range(np.uint64(lo - base), np.uint64(hi + 1 - base)):
+        at = i * n
         for lane in range(n):
-            x = c[i * n + lane]
+            x = c[at + lane]
             called = x >= bar[lane]
-            v[i * n + lane] = bar[lane] if called else x
+            v[at + lane] = bar[lane] if called else x
             flat_low[lane] += 1.0 if called else 0.0
-    if both:
-        for i in range(np.uint64(lo - base), np.uint64(hi + 1 - base)):
+        if both:
             for lane in range(n):
-                w[i * n + lane] = price[lane] if c[i * n + lane] >= bar[lane] else h[i * n + lane]
+                paid, kept = price[lane], h[at + lane]  # both are read, so that lanes run side by side
+                w[at + lane] = paid if c[at + lane] >= bar[lane] else kept
     for lane in range(n):
         count = flat_low[lane]  # C decreases in x: exercised below the kink, kept above
         kink[lane] = lo - 1 + int(count)
@@ -122,11 +127,14 @@ def exercise(
         flat_high[lane] = 1.0 if count > hi - lo else 0.0
 
 
-@kernel
-def gather_six(lane: int, at: int, lanes: int, source: Floats, first: int, work: Floats) -> None:
-    """Six values around a kink into rows first .. first + 5 of the work space."""
-    for q in range(6):
-        work[(first + q) * 16 + lane] = source[(at - 2 + q) * lanes + lane]
+@inlined
+def gather_six(lane: int, start: int, lanes: int, source: Floats, first: int, work: Floats) -> None:
+    """Six values around a kink, from place `start` of the source, into rows first .. first + 5 of the work space."""
+    n, o = np.uint64(start), np.uint64(first * 16 + lane)
+    for _ in range(6):
+        work[o] = source[n]
+        n += np.uint64(lanes)
+        o += np.uint64(16)
 
 
 @kernel
@@ -165,9 +173,11 @@ def scatter_six(lanes: int, base: int, kink: Integers, work: Floats, value: Floa
     """Adds the corrections at the six nodes of every lane whose kink is inside the range (row 18)."""
     for lane in range(lanes):
         if work[18 * 16 + lane] > 0.0:
-            at = kink[lane] - base
-            for q in range(6):
-                value[(at - 2 + q) * lanes + lane] += work[(12 + q) * 16 + lane]
+            n, o = np.uint64((kink[lane] - 2 - base) * lanes + lane), np.uint64(192 + lane)
+            for _ in range(6):
+                value[n] += work[o]
+                n += np.uint64(lanes)
+                o += np.uint64(16)
 
 
 @kernel
@@ -182,10 +192,10 @@ def correct(
         inside = i - 2 >= lo and i + 3 <= hi
         any_kink = any_kink or inside
         work[18 * 16 + lane] = 1.0 if inside else 0.0
-        at = (i if inside else lo + 2) - base
-        gather_six(lane, at, lanes, c, 0, work)
+        start = ((i if inside else lo + 2) - 2 - base) * lanes + lane
+        gather_six(lane, start, lanes, c, 0, work)
         if both:
-            gather_six(lane, at, lanes, h, 6, work)
+            gather_six(lane, start, lanes, h, 6, work)
     if not any_kink:
         return
     lane_corrections(lanes, 0, bar, False, work)
@@ -196,65 +206,46 @@ def correct(
 
 
 @kernel
-def interpolate_local(
-    lane: int, lanes: int, lo: int, hi: int, base: int, local_x: Floats, source: Floats, which: int, local: Floats
-) -> None:  # fmt: skip
-    """Values on the local grid by quintic interpolation between nodes."""
-    for n in range(local_x.shape[0]):
-        x = local_x[n]
-        i = min(max(int(np.floor(x)), lo + 2), hi - 3)
-        t = x - i
-        at = (i - base) * lanes + lane
-        b0, b1, b2, b3, b4, b5 = quintic(
-            source[at - 2 * lanes], source[at - lanes], source[at], source[at + lanes], source[at + 2 * lanes],
-            source[at + 3 * lanes],
-        )  # fmt: skip
-        local[which, n] = b0 + t * (b1 + t * (b2 + t * (b3 + t * (b4 + t * b5))))
+def interpolate_local(lo: int, hi: int, base: int, lanes: int, local_x: Floats, source: Floats, local: Floats) -> None:
+    """Values [point, lane] on the local grid by quintic interpolation between nodes."""
+    n = np.uint64(lanes)
+    for q in range(local_x.shape[0]):
+        i = min(max(int(np.floor(local_x[q])), lo + 2), hi - 3)
+        t = local_x[q] - i
+        at, out = np.uint64(i - 2 - base) * n, np.uint64(q) * n
+        for lane in range(n):
+            s = at + lane
+            b0, b1, b2, b3, b4, b5 = quintic(
+                source[s], source[s + n], source[s + np.uint64(2) * n], source[s + np.uint64(3) * n],
+                source[s + np.uint64(4) * n], source[s + np.uint64(5) * n],
+            )  # fmt: skip
+            local[out + lane] = b0 + t * (b1 + t * (b2 + t * (b3 + t * (b4 + t * b5))))
 
 
 @kernel
-def first_sum_local(local_weights: Floats, bar: float, price: float, local: Floats) -> tuple[float, float, bool]:
-    """The first sum on its own finer grid [2, point]: min, kink correction, weights; issuer, holder, any call."""
-    points = local_weights.shape[0]
-    below = -1
-    while below + 1 < points and local[0, below + 1] >= bar:
-        below += 1
-    issuer = 0.0
-    holder = 0.0
-    for n in range(points):
-        issuer += local_weights[n] * (bar if n <= below else local[0, n])
-        holder += local_weights[n] * (price if n <= below else local[1, n])
-    if below >= 2 and below + 3 < points:
-        k = below
-        b0, b1, b2, b3, b4, b5 = quintic(
-            local[0, k - 2], local[0, k - 1], local[0, k], local[0, k + 1], local[0, k + 2], local[0, k + 3]
-        )
-        t = crossing(b0, b1, b2, b3, b4, b5, bar)
-        d = kink_corrections(t, b1, b2, b3, b4, b5, 0.0)
-        h0, h1, h2, h3, h4, h5 = quintic(
-            local[1, k - 2], local[1, k - 1], local[1, k], local[1, k + 1], local[1, k + 2], local[1, k + 3]
-        )
-        jump = h0 + t * (h1 + t * (h2 + t * (h3 + t * (h4 + t * h5)))) - price
-        e = kink_corrections(t, h1, h2, h3, h4, h5, jump)
-        for q in range(6):
-            issuer += local_weights[k - 2 + q] * d[q]
-            holder += local_weights[k - 2 + q] * e[q]
-    return issuer, holder, below >= 0
+def weighted_sum(begin: int, lanes: int, weights: Floats, count: int, value: Floats, total: Floats) -> None:
+    """Sum over nodes from row `begin` in their order, lane by lane."""
+    n = np.uint64(lanes)
+    for lane in range(n):
+        total[lane] = 0.0
+    for i in range(np.uint64(count)):
+        at, weight = (np.uint64(begin) + i) * n, weights[i]
+        for lane in range(n):
+            total[lane] += weight * value[at + lane]
 
 
 @kernel
-def finish(
-    lane: int, begin: int, lead_discount: float, lead_paid: float, steps: Integers, first: Integers, ratio: Floats,
-    flow: Floats, touched: bool, value: Floats,
-) -> None:  # fmt: skip
-    """Discounts the first sum to today and adds the payments up to it; the plain bond where no right was ever used."""
-    discount = lead_discount
-    total = lead_paid
-    stop = first[lane] if touched else steps[lane]
-    for k in range(begin + 1, stop + 1):
-        discount = discount * ratio[k - 1 - begin, lane]
-        total += flow[k - begin, lane] * discount
-    value[lane] = total + discount * value[lane] if touched else total
+def leads(steps: Integers, first: Integers, ratio: Floats, holder_ratio: Floats, flow: Floats, lead: Floats) -> None:
+    """Fills `lead` of `solve_lanes` from tables that begin at step 0."""
+    for lane in range(steps.shape[0]):
+        for row in range(0, 6, 3):
+            discount, paid = 1.0, 0.0
+            for k in range(1, steps[lane] + 1):
+                discount *= ratio[k - 1, lane] if row == 0 else holder_ratio[k - 1, lane]
+                paid += flow[k, lane] * discount
+                if k == first[lane]:
+                    lead[row, lane], lead[row + 1, lane] = discount, paid
+            lead[row + 2, lane] = paid
 
 
 @kernel
@@ -268,8 +259,9 @@ def solve_lanes(
     """Issuer's cost and holder's value today of up to sixteen securities per 100 of par (C4).
 
     steps, first, last  [lane] last payment, first and last step with a right (first = 0: no right)
-    begin, lead         rows of the tables below start at step `begin`, before every lane's first right; lead [4, lane]:
-                        the issuer's discount to it and value of payments up to it, then the holder's (1, 0, 1, 0 at 0)
+    begin               rows of the tables below start at step `begin`, before every lane's first right
+    lead                [6, lane] by the issuer's spread and then by the holder's: discount to the first right, value of
+                        the payments up to it, value of all payments (the plain bond, where no right is ever used)
     ratio               [k - begin, lane] P0(t_(k+1)) / P0(t_k) on the issuer's curve
     holder_ratio        the same on the curve with the valuation spread
     flow                [k - begin, lane] promised payment at step k, redemption included
@@ -285,17 +277,20 @@ def solve_lanes(
         if first[lane] > 0:
             top = max(top, last[lane])
             bottom = min(bottom, first[lane])
-    base = row - reach - 2
-    width = band_start.shape[0] + 2 * reach + 4
-    c = np.ones(width * lanes)
-    v = np.ones(width * lanes)
-    # the holder's arrays are not touched unless both recursions run
-    h = np.ones(width * lanes if both else 0)
-    w = np.ones(width * lanes if both else 0)
+    low_node, high_node = (lo[top], hi[top]) if top > 0 else (0, 0)
+    for k in range(bottom, top):
+        low_node, high_node = min(low_node, lo[k]), max(high_node, hi[k])
+    base = low_node - reach - MARGIN
+    width = (high_node + reach + MARGIN - base + 1) * lanes
+    points = local_weights.shape[0]
+    other = 1 if both else 0  # the holder's arrays are not touched unless both recursions run
+    c, v, h, w = np.ones(width), np.ones(width), np.ones(width * other), np.ones(width * other)
+    near, near_v = np.empty(points * lanes), np.empty(points * lanes)
+    near_h, near_w = np.empty(points * lanes * other), np.empty(points * lanes * other)
     work = np.zeros(20 * 16)
-    local = np.zeros((2, local_weights.shape[0]))
-    kink = np.zeros(lanes, dtype=np.int64)
+    kink, near_kink = np.zeros(lanes, dtype=np.int64), np.zeros(lanes, dtype=np.int64)
     flat_low, flat_high = np.zeros(lanes), np.zeros(lanes)
+    sums, sums_h = np.zeros(lanes), np.zeros(lanes)
     touched = np.zeros(lanes, dtype=np.bool_)
     bars, prices, factor, factor_h = np.empty(lanes), np.empty(lanes), np.empty(lanes), np.empty(lanes)
     for lane in range(lanes):
@@ -303,25 +298,21 @@ def solve_lanes(
         holder_value[lane] = 0.0
     for k in range(top, bottom - 1, -1):
         a, b = lo[k], hi[k]
-        if k < top:
-            for lane in range(lanes):
-                live = first[lane] > 0 and k >= first[lane] and k < last[lane]
-                factor[lane] = ratio[k - begin, lane] * conv[k] if live else 1.0
-                factor_h[lane] = holder_ratio[k - begin, lane] * conv[k] if live else 1.0
+        ends = False
+        for lane in range(lanes):
+            live = first[lane] > 0 and k >= first[lane] and k <= last[lane]
+            bars[lane] = bar[k - begin, lane] if live else np.inf
+            prices[lane] = price[k - begin, lane] if live else np.inf
+            factor[lane] = ratio[k - begin, lane] * conv[k] if live else 1.0
+            factor_h[lane] = holder_ratio[k - begin, lane] * conv[k] if live else 1.0
+            ends = ends or first[lane] == k
+        if k < top:  # lanes not live run along on harmless numbers
             paid = flow[k + 1 - begin]
             step_back(a, b, base, row, lanes, band, band_start, weights, growth, v, paid, factor, c)
             if both:
                 step_back(a, b, base, row, lanes, band, band_start, weights, growth, w, paid, factor_h, h)
         for lane in range(lanes):
-            live = first[lane] > 0 and k >= first[lane] and k <= last[lane]
-            bars[lane] = bar[k - begin, lane] if live else np.inf
-            prices[lane] = price[k - begin, lane] if live else np.inf
-            if not live:
-                for i in range(a - base, b - base + 1):
-                    c[i * lanes + lane] = 1.0
-                    if both:
-                        h[i * lanes + lane] = 1.0
-            elif k == last[lane]:
+            if first[lane] > 0 and k == last[lane]:
                 n = steps[lane]
                 straight_columns(k, begin, lane, lanes, n, flow, ratio, straight_conv, growth, row, a, b, base, c)
                 if both:
@@ -331,28 +322,35 @@ def solve_lanes(
         exercise(a, b, base, lanes, bars, prices, both, c, h, v, w, kink, flat_low, flat_high)
         for lane in range(lanes):
             touched[lane] = touched[lane] or kink[lane] >= a
-            if first[lane] == k and first_local[k]:
-                interpolate_local(lane, lanes, a, b, base, local_x[k], c, 0, local)
-                interpolate_local(lane, lanes, a, b, base, local_x[k], h if both else c, 1, local)
-                issuer, holder, hit = first_sum_local(local_weights, bars[lane], prices[lane], local)
-                issuer_cost[lane] = issuer
-                holder_value[lane] = holder
-                touched[lane] = touched[lane] or hit
         extend(a, b, base, lanes, reach, flat_low, flat_high, v, work)
         if both:
             extend(a, b, base, lanes, reach, flat_low, flat_high, w, work)
         correct(a, b, base, lanes, bars, prices, both, c, h, kink, v, w, work)
+        if not ends:
+            continue
+        if first_local[k]:
+            interpolate_local(a, b, base, lanes, local_x[k], c, near)
+            if both:
+                interpolate_local(a, b, base, lanes, local_x[k], h, near_h)
+            end = points - 1
+            exercise(0, end, 0, lanes, bars, prices, both, near, near_h, near_v, near_w, near_kink, flat_low, flat_high)
+            correct(0, end, 0, lanes, bars, prices, both, near, near_h, near_kink, near_v, near_w, work)
+            weighted_sum(0, lanes, local_weights, points, near_v, sums)
+            if both:
+                weighted_sum(0, lanes, local_weights, points, near_w, sums_h)
+        else:
+            weighted_sum(a - base, lanes, first_weights[k], b - a + 1, v, sums)
+            if both:
+                weighted_sum(a - base, lanes, first_weights[k], b - a + 1, w, sums_h)
         for lane in range(lanes):
-            if first[lane] == k and not first_local[k]:
-                for i in range(b - a + 1):
-                    issuer_cost[lane] += first_weights[k, i] * v[(a + i - base) * lanes + lane]
-                    if both:
-                        holder_value[lane] += first_weights[k, i] * w[(a + i - base) * lanes + lane]
+            if first[lane] == k:
+                issuer_cost[lane] = sums[lane]
+                holder_value[lane] = sums_h[lane]
+                touched[lane] = touched[lane] or (first_local[k] and near_kink[lane] >= 0)
     for lane in range(lanes):
-        finish(lane, begin, lead[0, lane], lead[1, lane], steps, first, ratio, flow, touched[lane], issuer_cost)
+        used = touched[lane]
+        issuer_cost[lane] = lead[1, lane] + lead[0, lane] * issuer_cost[lane] if used else lead[2, lane]
         if both:
-            finish(
-                lane, begin, lead[2, lane], lead[3, lane], steps, first, holder_ratio, flow, touched[lane], holder_value
-            )
+            holder_value[lane] = lead[4, lane] + lead[3, lane] * holder_value[lane] if used else lead[5, lane]
         else:
             holder_value[lane] = issuer_cost[lane]

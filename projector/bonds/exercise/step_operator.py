@@ -67,7 +67,7 @@ class Operator:
     first_row: int  # lowest node of the weight table
     band_start: IntArray  # [row] first column node of a row
     weights: Array  # [row, band] normalised weights times exp(-G(step) x_row)
-    growth: Array  # [row, ahead] exp(-G(ahead x step) x_row), for straight values at the last right
+    growth: Array  # [ahead, row] exp(-G(ahead x step) x_row), for straight values at the last right
     straight_conv: Array  # [step, ahead] convexity factor over `ahead` steps from step k
     first_weights: Array  # [step, node from lo] weights of the first sum, zero where unused
     first_local: npt.NDArray[np.bool_]  # [step] the first sum uses a local grid
@@ -117,7 +117,7 @@ def build_operator(a: float, sigma: float, step_months: int, offset_months: int,
     weights = w / w.sum(axis=1)[:, None] * exp_array(-g * rows * h)[:, None]
     conv = np.array([1.0] + [model.convexity(t, step) for t in times[1:]])
     ahead = np.array([model.g(j * step) for j in range(steps + 1)])
-    growth = exp_array(-ahead[None, :] * (rows * h)[:, None])
+    growth = exp_array(-ahead[:, None] * (rows * h)[None, :])
     spread_out = np.outer(variances(model, times), ahead**2) + np.outer(drifts(model, times), ahead)
     straight = exp_array(-0.5 * spread_out)
     return Operator(
