@@ -6,12 +6,16 @@ to the error stream and is silent when that is not a terminal.
 
 from __future__ import annotations
 
+import os
 import sys
 from collections.abc import Callable
 from pathlib import Path
 from typing import Annotated, Any
 
 import typer
+
+# Before numpy is imported: no result rests on a linear algebra library (C15), and its idle threads burn time.
+os.environ.setdefault("OPENBLAS_NUM_THREADS", "1")
 
 app = typer.Typer(
     rich_markup_mode=None, pretty_exceptions_enable=False, add_completion=True, no_args_is_help=True,

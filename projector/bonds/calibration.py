@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 import numpy.typing as npt
@@ -11,7 +11,7 @@ import numpy.typing as npt
 from projector.bonds.exercise.path_kernels import straight_values
 from projector.bonds.exercise.step_operator import GRID_FINE
 from projector.bonds.mapped import MappedBonds
-from projector.bonds.solving import ExerciseModel, Jobs, MonthSolver
+from projector.bonds.solving import ExerciseModel, Jobs, MonthSolver, production_grid
 from projector.bonds.spreads import SpreadPath
 
 Array = npt.NDArray[np.float64]
@@ -20,6 +20,7 @@ BoolArray = npt.NDArray[np.bool_]
 
 LOWEST, HIGHEST = -0.02, 0.20
 PRICE_TOLERANCE = 1e-9  # per 100
+NEAR_TOLERANCE = 1e-4  # per 100, on the coarser grid
 LEAST_SLOPE = 0.2  # per 100 of price for 100 bp
 USUAL_SLOPE = 0.0025  # spread for one point of price, for the first step only [1/year]
 MOST_TURNS = 80
@@ -49,6 +50,7 @@ class PriceToday:
     model: ExerciseModel
     discount: Array  # [tau, 1] of month 0
     refunding_is_valuation: bool
+    fine: bool = True  # on the fine grid, or on the coarser one of the paths
 
     def __call__(self, units: IntArray, spread: Array) -> Array:
         """Holder's value of every security at its spread. [per 100], shape (unit,)"""
@@ -79,39 +81,63 @@ class PriceToday:
         both = self.model.cost != 0.0 or not self.refunding_is_valuation
         solver = MonthSolver(self.bonds, path, self.model)
         jobs = Jobs(0, step, offset, units, np.zeros(units.size, dtype=np.int64))
-        return solver.solve(jobs, self.discount, GRID_FINE, both, holder_spread=spread)[1]
+        grid = GRID_FINE if self.fine else production_grid(step)
+        return solver.solve(jobs, self.discount, grid, both, holder_spread=spread)[1]
+
+
+@dataclass(frozen=True)
+class Roots:
+    """Where prices meet their targets: the spread (nan: none between -200 and 2,000 bp) and what it gave on the way.
+
+    slope  spread for one point of price at the last step [1/year]
+    """
+
+    spread: Array
+    slope: Array
 
 
 def spread_roots(
-    price: Callable[[IntArray, Array], Array], units: IntArray, target: Array, start: Array
-) -> tuple[Array, BoolArray]:
+    price: Callable[[IntArray, Array], Array], units: IntArray, target: Array, start: Array, slope: Array,
+    tolerance: float = PRICE_TOLERANCE,
+) -> Roots:  # fmt: skip
     """Spread at which each price meets its target, by a secant kept inside a bracket. [1/year]
 
-    The second result says where a root lies between -200 and 2,000 bp; elsewhere the spread is nan.
+    start, slope  where to begin, and the spread to add for one point of price too high on the first step
     """
     low, high = np.full(units.size, LOWEST), np.full(units.size, HIGHEST)
-    x = np.clip(start, LOWEST, HIGHEST)
-    before, miss_before = x + USUAL_SLOPE, np.zeros(units.size)  # the first step is replaced below
+    x, slope = np.clip(start, LOWEST, HIGHEST), slope.copy()
+    before, miss_before = x.copy(), np.zeros(units.size)
     root = np.full(units.size, np.nan)
     open_ = np.arange(units.size)
     for turn in range(MOST_TURNS):
         if open_.size == 0:
             break
         miss = price(units[open_], x[open_]) - target[open_]
-        done = np.abs(miss) <= PRICE_TOLERANCE
+        done = np.abs(miss) <= tolerance
         root[open_[done]] = x[open_[done]]
         above = miss > 0.0
         low[open_[above]] = x[open_[above]]
         high[open_[~above]] = x[open_[~above]]
-        rise = miss - miss_before[open_]
-        secant = miss * (x[open_] - before[open_]) / np.where(rise == 0.0, 1.0, rise)
-        step = x[open_] + miss * USUAL_SLOPE if turn == 0 else x[open_] - secant
+        if turn > 0:
+            rise = miss - miss_before[open_]
+            slope[open_] = (before[open_] - x[open_]) / np.where(rise == 0.0, 1.0, rise)
+        step = x[open_] + miss * slope[open_]
         inside = (step > low[open_]) & (step < high[open_])
         before[open_], miss_before[open_] = x[open_], miss
         shut = high[open_] - low[open_] < 1e-14  # the bracket closed on an end: no root in the range
         x[open_] = np.where(inside, step, 0.5 * (low[open_] + high[open_]))
         open_ = open_[~(done | shut)]
-    return root, ~np.isnan(root)
+    return Roots(root, slope)
+
+
+def roots_by_two_grids(price: PriceToday, units: IntArray, target: Array, start: Array) -> Array:
+    """Spreads on the fine grid, begun from those of the coarser one: most turns are spent where they cost little."""
+    usual = np.full(units.size, USUAL_SLOPE)
+    near = spread_roots(replace(price, fine=False), units, target, start, usual, NEAR_TOLERANCE)
+    found = ~np.isnan(near.spread)
+    return spread_roots(
+        price, units, target, np.where(found, near.spread, start), np.where(found, near.slope, usual)
+    ).spread
 
 
 def calibrate(price: PriceToday, clean_price: Array, given_spread: Array, class_spread: Array) -> Calibrated:
@@ -121,7 +147,8 @@ def calibrate(price: PriceToday, clean_price: Array, given_spread: Array, class_
     priced = np.flatnonzero(~np.isnan(clean_price))
     spread = given_spread.copy()
     origin = np.full(clean_price.size, "given", dtype=object)
-    root, found = spread_roots(price, priced, clean_price[priced] + accrued[priced], class_spread[priced])
+    root = roots_by_two_grids(price, priced, clean_price[priced] + accrued[priced], class_spread[priced])
+    found = ~np.isnan(root)
     spread[priced] = np.where(found, root, class_spread[priced])
     value = price(units, spread)
     slope = (price(units, spread + 1e-4) - value) * 100.0

@@ -15,6 +15,7 @@ from typing import NamedTuple
 
 from projector.bonds.schedule import DatedBond, coupon_times, coupons_between, periods_between, periods_left
 from projector.bonds.yields import (
+    VALUE_CAP,
     Redemption,
     accrued_interest,
     broken_stretch,
@@ -63,9 +64,14 @@ class _Endings:
     def values(self, rate: float) -> list[float]:
         """Dirty price of each redemption at a rate a period. [per 100]"""
         discount = 1.0 / (1.0 + rate)
-        paid = [0.0]  # value of the first n coupons, every period compounded
-        for time, amount in zip(self.times, self.amounts, strict=True):
-            paid.append(paid[-1] + amount * growth(discount, time))
+        paid, total = [0.0], 0.0  # value of the first n coupons, every period compounded
+        power = growth(discount, self.times[0]) if self.times else 1.0
+        for amount in self.amounts:  # they stand a whole period apart
+            total += amount * power
+            paid.append(total)
+            power *= discount
+            if power > VALUE_CAP:  # not min(): this loop runs for every trial rate of every security
+                power = VALUE_CAP
         # Coupons before the end share its simple stretch w: v^t becomes v^(t - w) / (1 + w i).
         return [
             (paid[end.coupons] * (1.0 + rate) ** end.broken + end.amount * growth(discount, end.whole))

@@ -6,30 +6,41 @@ import numpy as np
 import numpy.typing as npt
 import pandas as pd
 
+from projector.bonds.schedule import coupons_between
 from projector.bonds.yields import accrued_interest
 from projector.run.prepare import Prepared, start_discount
 
 Array = npt.NDArray[np.float64]
+IntArray = npt.NDArray[np.int64]
 
 LISTED_OVER_BP = 5.0
 DAYS_A_YEAR = 365.25
 MOST_STEPS = 100
 
 
-def spread_of(times: Array, amounts: Array, log_discount: Array, price: float, start: float = -0.5) -> float:
-    """Continuously compounded spread at which payments are worth a dirty price, by Newton. [1/year]; nan: not found
+def spreads_of(times: Array, amounts: Array, log_discount: Array, owner: IntArray, price: Array, start: Array) -> Array:
+    """Continuously compounded spread at which each owner's payments are worth its dirty price, by Newton. [1/year]
+
+    times, amounts, log_discount  [payment], the payments of one owner side by side, every owner with at least one
+    owner                         [payment] 0, 1, 2, ... in order
+    price, start                  [owner] per 100; where Newton begins
 
     The value is falling and convex in the spread, so Newton from the left of the root never passes it, and from the
-    right it passes it once; `start` near the root saves steps.
+    right it passes it once. nan where it is not found.
     """
-    base, spread = amounts * np.exp(log_discount), start
+    firsts = np.flatnonzero(np.diff(owner, prepend=-1))
+    base, spread = amounts * np.exp(log_discount), start.copy()
+    root = np.full(price.size, np.nan)
     for _ in range(MOST_STEPS):
-        value = base * np.exp(-spread * times)
-        miss = float(value.sum()) - price
-        if abs(miss) < 1e-10:
-            return spread
-        spread += miss / float((value * times).sum())
-    return float("nan")
+        value = base * np.exp(-spread[owner] * times)
+        miss = np.add.reduceat(value, firsts) - price
+        met = np.isnan(root) & (np.abs(miss) < 1e-10)
+        root[met] = spread[met]
+        open_ = np.isnan(root)
+        if not open_.any():
+            break
+        spread[open_] += (miss / np.add.reduceat(value * times, firsts))[open_]
+    return root
 
 
 def mapping_differences(prepared: Prepared) -> pd.DataFrame:
@@ -41,16 +52,23 @@ def mapping_differences(prepared: Prepared) -> pd.DataFrame:
     bonds, valuation = prepared.bonds, prepared.study.valuation_date
     discount = np.log(start_discount(prepared.paths, bonds.last_month + 2)[:, 0])
     months = np.arange(discount.size) / 12.0
-    out = []
-    for u, (name, bond) in enumerate(zip(bonds.ids, prepared.dated_bonds)):
-        ahead = [(c.payment, c.amount) for c in bond.coupons if c.payment > valuation] + [(bond.maturity, 100.0)]
-        times = np.array([(day - valuation).days / DAYS_A_YEAR for day, _ in ahead])
-        amounts = np.array([amount for _, amount in ahead])
-        clean = float(prepared.calibrated.clean_price[u])
-        near = float(prepared.calibrated.spread[u])
-        dirty = clean + accrued_interest(bond, valuation)
-        exact = spread_of(times, amounts, np.interp(times, months, discount), dirty, near)
-        at = np.flatnonzero(bonds.flow[u])
-        mapped = spread_of(at / 12.0, bonds.flow[u, at], discount[at], clean + float(bonds.accrued[u, 0]), near)
-        out.append((name, 1e4 * exact, 1e4 * mapped, 1e4 * (mapped - exact)))
-    return pd.DataFrame(out, columns=["security_id", "exact_bp", "mapped_bp", "difference_bp"])
+    clean, near = prepared.calibrated.clean_price, prepared.calibrated.spread
+    days, amounts, owner = [], [], []
+    for u, bond in enumerate(prepared.dated_bonds):
+        ahead = coupons_between(bond, valuation, bond.maturity)
+        days += [(c.payment - valuation).days for c in ahead] + [(bond.maturity - valuation).days]
+        amounts += [c.amount for c in ahead] + [100.0]
+        owner += [u] * (len(ahead) + 1)
+    times, of = np.array(days) / DAYS_A_YEAR, np.array(owner)
+    accrued = np.array([accrued_interest(bond, valuation) for bond in prepared.dated_bonds])
+    exact = spreads_of(times, np.array(amounts), np.interp(times, months, discount), of, clean + accrued, near)
+    u, at = np.nonzero(bonds.flow)
+    mapped = spreads_of(at / 12.0, bonds.flow[u, at], discount[at], u, clean + bonds.accrued[:, 0], near)
+    return pd.DataFrame(
+        {
+            "security_id": bonds.ids,
+            "exact_bp": 1e4 * exact,
+            "mapped_bp": 1e4 * mapped,
+            "difference_bp": 1e4 * (mapped - exact),
+        }
+    )

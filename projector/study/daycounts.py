@@ -38,6 +38,9 @@ ISO_20022 = MappingProxyType(
 )
 
 
+MONTH_LENGTHS = (31, 28, 31, 30, 31, 30, 31, 31, 30, 31, 30, 31)
+
+
 def day_count_named(text: str) -> str:
     """The FpML name for a name or an ISO 20022 code; ValueError when it is neither."""
     name = ISO_20022.get(text, text)
@@ -48,7 +51,12 @@ def day_count_named(text: str) -> str:
 
 def is_month_end(day: date) -> bool:
     """Whether the day is the last of its month."""
-    return day.day == calendar.monthrange(day.year, day.month)[1]
+    return day.day == month_length(day.year, day.month)
+
+
+def month_length(year: int, month: int) -> int:
+    """Days of a month; asked for every payment of every security, where the calendar module is slow. [day]"""
+    return 29 if month == 2 and calendar.isleap(year) else MONTH_LENGTHS[month - 1]
 
 
 def months_before(day: date, months: int, *, month_end: bool) -> date:
@@ -57,7 +65,7 @@ def months_before(day: date, months: int, *, month_end: bool) -> date:
     month_end  whether a last day of the month stays the last day
     """
     year, month = divmod(day.year * 12 + day.month - 1 - months, 12)
-    last = calendar.monthrange(year, month + 1)[1]
+    last = month_length(year, month + 1)
     return date(year, month + 1, last if month_end and is_month_end(day) else min(day.day, last))
 
 
