@@ -62,8 +62,8 @@ def mapping_differences(prepared: Prepared) -> pd.DataFrame:
     times, of = np.array(days) / DAYS_A_YEAR, np.array(owner)
     accrued = np.array([accrued_interest(bond, valuation) for bond in prepared.dated_bonds])
     exact = spreads_of(times, np.array(amounts), np.interp(times, months, discount), of, clean + accrued, near)
-    u, at = np.nonzero(bonds.flow)
-    mapped = spreads_of(at / 12.0, bonds.flow[u, at], discount[at], u, clean + bonds.accrued[:, 0], near)
+    of, at = np.nonzero(bonds.flow)
+    mapped = spreads_of(at / 12.0, bonds.flow[of, at], discount[at], of, clean + bonds.accrued[:, 0], near)
     return pd.DataFrame(
         {
             "security_id": bonds.ids,
