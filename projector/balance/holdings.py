@@ -12,7 +12,7 @@ import numpy as np
 import numpy.typing as npt
 import pandas as pd
 
-from projector.balance.holdings_kernels import ITEMS, add_holdings
+from projector.balance.holdings_kernels import ITEMS, HeldTerms, Left, add_holdings
 from projector.balance.statement_kernels import statement_paths
 from projector.bonds.decisions import CallEvents
 from projector.bonds.mapped import MappedBonds
@@ -139,6 +139,11 @@ def build_holdings(
     interest = np.zeros(count)
     growth0, worst0 = np.empty(par.size), np.empty(par.size, dtype=np.int64)
     kept_growth, kept_worst = [], []
+    last = bonds.principal[np.arange(len(bonds.ids)), bonds.maturity] * (bonds.redemption / 100.0)
+    flow = bonds.coupon + bonds.principal
+    flow[np.arange(len(bonds.ids)), bonds.maturity] -= bonds.principal[np.arange(len(bonds.ids)), bonds.maturity]
+    priced = np.isfinite(bonds.clean_price)
+    price = np.where(priced, np.where(priced, bonds.clean_price, 0.0) * bonds.outstanding, np.inf)
     for a in range(0, par.size, LOTS_AT_A_TIME):
         b = min(a + LOTS_AT_A_TIME, par.size)
         shape = (b - a, months + 1)
@@ -146,7 +151,7 @@ def build_holdings(
             np.zeros(shape), np.zeros(shape), np.ones(shape), np.zeros(shape, dtype=np.int64)
         )  # fmt: skip
         statement_paths(
-            security[a:b], value[a:b], bonds.maturity, months, bonds.clean_price, bonds.accrued, bonds.coupon,
+            security[a:b], value[a:b], bonds.maturity, months, last, price, bonds.accrued, bonds.coupon, flow,
             lot_book, lot_accretion, growth, worst,
         )  # fmt: skip
         weight = par[a:b] / total[holding[a:b]]
@@ -194,15 +199,19 @@ def group_items(
     paths = events.start.shape[1] - 1
     rated = bonds.with_rights()[holdings.security]
     recovery = np.array([terms.recovery[r] for r in bonds.ratings])
-    coupon, accrued = to_months(bonds.coupon, last_month), to_months(bonds.accrued, last_month)
-    price = to_months(bonds.clean_price, last_month)
+    coupon, accrued, principal, outstanding = (
+        to_months(x, last_month) for x in (bonds.coupon, bonds.accrued, bonds.principal, bonds.outstanding)
+    )
+    held = HeldTerms(
+        bonds.maturity, survival, recovery, coupon, accrued, principal, outstanding, bonds.redemption, bonds.announced
+    )
     out = np.zeros((ITEMS, last_month + 1, holdings.groups.count, paths))
     one = np.zeros((ITEMS, last_month + 1, holdings.groups.count, 1))
     no_events = np.zeros((len(bonds.ids), 2), dtype=np.int64)
     for rows, start, target in ((~rated, no_events, one), (rated, events.start, out)):
         n = np.flatnonzero(rows)
         add_holdings(
-            last_month, holdings.security[n], holdings.group[n], holdings.par[n], bonds.maturity, survival, recovery,
-            coupon, accrued, price, holdings.book[n], holdings.accretion[n], events.month, events.share, start, target,
+            last_month, holdings.security[n], holdings.group[n], holdings.par[n], held, holdings.book[n],
+            holdings.accretion[n], Left(events.month, events.part, events.kind, events.price, start), target,
         )  # fmt: skip
     return out + one

@@ -19,14 +19,18 @@ BoolArray = npt.NDArray[np.bool_]
 
 
 def outstanding(events: CallEvents, month: int) -> Array:
-    """Share of each security not called up to and including a month. [-], shape (security, path)"""
+    """Share of each security on which nothing was decided up to and including a month. [-], shape (security, path)"""
     shape = (events.start.shape[0], events.start.shape[1] - 1)
     left = np.ones(shape)
-    count = (events.start[:, 1:] - events.start[:, :-1]).ravel()
-    cell = np.repeat(np.arange(count.size), count)
-    past = events.month <= month
-    np.multiply.at(left.reshape(-1), cell[past], 1.0 - events.share[past])
+    past = events.decided <= month
+    np.subtract.at(left.reshape(-1), event_cells(events)[past], events.part[past])
     return left
+
+
+def event_cells(events: CallEvents) -> IntArray:
+    """Security x paths + path of every event. shape (event,)"""
+    count = (events.start[:, 1:] - events.start[:, :-1]).ravel()
+    return np.repeat(np.arange(count.size), count)
 
 
 @dataclass
@@ -68,10 +72,29 @@ class GroupValues:
         left = outstanding(self.events, month)[units]
         asked = np.zeros((units.size, discount.shape[1]), dtype=np.bool_)
         np.logical_or.at(asked, at, wanted[self.holdings.segment[rows]])
-        unit_value = self.unit_values(month, units, discount, asked & (left > 0.0))
+        unit_value = self.unit_values(month, units, discount, asked & (left > 0.0)) * left
+        unit_value += self.announced(month, units, discount, asked)
         scale = self.holdings.par[rows] / 100.0 * self.survival[self.holdings.security[rows], month]
-        group_values(at, self.holdings.group[rows], scale, unit_value, left, out)
+        group_values(at, self.holdings.group[rows], scale, unit_value, out)
         return out
+
+    def announced(self, month: int, units: IntArray, discount: Array, wanted: BoolArray) -> Array:
+        """Value of what has been called or put and is not yet paid. [per 100], [unit, path]"""
+        out, events, paths = np.zeros(wanted.shape), self.events, wanted.shape[1]
+        cell = event_cells(events)
+        due = np.flatnonzero((events.decided <= month) & (events.month > month))
+        if due.size == 0:
+            return out
+        unit, path = cell[due] // paths, cell[due] % paths
+        row = np.searchsorted(units, unit)
+        mine = (row < units.size) & (units[np.minimum(row, units.size - 1)] == unit)
+        due, unit, path, row = due[mine], unit[mine], path[mine], row[mine]
+        bonds, effect = self.solver.bonds, events.month[due]
+        amount = events.price[due] * bonds.outstanding[unit, effect] + bonds.accrued[unit, effect]
+        spread = self.solver.spreads.valuation(unit, month)
+        value = self.solver.settled(month, unit, path, effect, amount, spread, discount)
+        np.add.at(out, (row, path), value * events.part[due])
+        return np.where(wanted, out, 0.0)
 
     def unit_values(self, month: int, units: IntArray, discount: Array, wanted: BoolArray) -> Array:
         """Values of securities, from the store where it holds them. [per 100 dirty], [unit, path]"""

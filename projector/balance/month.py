@@ -24,7 +24,7 @@ IntArray = npt.NDArray[np.int64]
 
 # flow categories beside those of the liabilities (C12); the first column says whose they are
 ASSET_CATEGORIES = (
-    "coupon", "principal", "call_par", "call_premium", "recovery", "sale",
+    "coupon", "principal", "call_par", "call_premium", "put", "recovery", "sale",
 )  # fmt: skip
 BOUGHT_CATEGORIES = ("coupon", "principal", "recovery", "sale", "purchase")
 SEGMENT_CATEGORIES = (
@@ -153,7 +153,7 @@ def month_step(
     borrowing_interest, shortfall_interest = state.borrowing * rate, state.shortfall * rate
     cash = (
         state.cash + cash_interest + start["coupon"] + start["principal"] + start["call_par"] + start["call_premium"]
-        + recovered_start + bought.coupon + bought.principal + recovered_bought + liability - expense
+        + start["put"] + recovered_start + bought.coupon + bought.principal + recovered_bought + liability - expense
         - borrowing_interest - shortfall_interest
     )  # fmt: skip
     repaid = np.minimum(np.maximum(cash, 0.0), state.borrowing)
@@ -201,6 +201,7 @@ def month_step(
             ("start", "principal"): start["principal"],
             ("start", "call_par"): start["call_par"],
             ("start", "call_premium"): start["call_premium"],
+            ("start", "put"): start["put"],
             ("start", "recovery"): recovered_start,
             ("start", "sale"): sale.start,
             ("bought", "coupon"): bought.coupon,
@@ -220,6 +221,7 @@ def month_step(
         par={
             "scheduled": start["principal"] + bought.principal,
             "called": start["call_par"],
+            "put": start["put_par"],
             "defaulted": start["default_par"] + bought.default_par,
             "bought": spent,
             "sold": (par_start + par_bought) * sale.share,
@@ -229,6 +231,7 @@ def month_step(
             "accretion": start["accretion"],
             "principal": start["principal_book"] + bought.principal,
             "called": start["called_book"],
+            "put": start["put_book"],
             "defaulted": start["default_book"] + bought.default_par,
             "sold": sold_book_start + sold_book_bought,
             "sold_accrued": sold_accrued,
@@ -245,6 +248,9 @@ START_ITEMS = {
     "call_par": item.CALL_PAR,
     "call_premium": item.CALL_PREMIUM,
     "called_book": item.CALLED_BOOK,
+    "put": item.PUT_CASH,
+    "put_par": item.PUT_PAR,
+    "put_book": item.PUT_BOOK,
     "default_par": item.DEFAULT_PAR,
     "default_book": item.DEFAULT_BOOK,
     "default_accrued": item.DEFAULT_ACCRUED,

@@ -53,15 +53,16 @@ def growth_to(start: int, end: int, redemption: float, flow: Floats, value: floa
 
 @kernel
 def worst_date(
-    start: int, maturity: int, price: Floats, accrued: Floats, flow: Floats, value: float
+    start: int, maturity: int, last: float, price: Floats, accrued: Floats, flow: Floats, value: float
 ) -> tuple[int, float]:
     """Month with the lowest yield among rights after `start` and maturity, and its monthly growth factor.
 
-    flow   coupons; price  clean call prices (inf = no right); value  dirty value at `start` [per 100]
+    flow   coupons and scheduled repayments before maturity; last  repaid at maturity
+    price  clean call prices on the par left (inf = no right); value  dirty value at `start` [per 100]
     Starts at maturity; one pass over all rights at the yield found so far shows which of them yields less.
     """
     month = maturity
-    growth = growth_to(start, maturity, 100.0, flow, value)
+    growth = growth_to(start, maturity, last, flow, value)
     for _ in range(100):
         v = 1.0 / growth
         factor = 1.0
@@ -88,19 +89,20 @@ def worst_date(
 
 @kernel
 def statement_path(
-    maturity: int, last_month: int, price: Floats, accrued: Floats, coupon: Floats, value: float,
-    book: Floats, accretion: Floats, growth_at: Floats, worst: Integers,
+    maturity: int, last_month: int, last: float, price: Floats, accrued: Floats, coupon: Floats, flow: Floats,
+    value: float, book: Floats, accretion: Floats, growth_at: Floats, worst: Integers,
 ) -> None:  # fmt: skip
     """Clean statement value of one lot, per 100 of par, at months 0..last_month, as long as it is not called.
 
     value      clean statement value at month 0
+    flow       coupons and scheduled repayments before maturity; last  repaid at maturity
     accretion  income from discount or premium in each month: effective interest less coupon earned
     growth_at  monthly growth factor in force over the month that ends there (index 0: in force at the start)
     worst      month to which the lot is amortised, seen from each month end
 
     When the month it was amortised to passes without a call, it goes on from the value then and is re-solved.
     """
-    month, growth = worst_date(0, maturity, price, accrued, coupon, value + accrued[0])
+    month, growth = worst_date(0, maturity, last, price, accrued, flow, value + accrued[0])
     book[0] = value
     growth_at[0] = growth
     worst[0] = month
@@ -117,26 +119,26 @@ def statement_path(
         earned = coupon[m] + accrued[m] - accrued[m - 1]
         accretion[m] = interest - earned
         growth_at[m] = growth
-        dirty = dirty + interest - coupon[m]
+        dirty = dirty + interest - flow[m]
         book[m] = dirty - accrued[m]
         if m == maturity:
             book[m] = 0.0
         elif m == month:
             book[m] = price[m]  # amortised to it exactly; sheds the rounding of the roll
             dirty = price[m] + accrued[m]
-            month, growth = worst_date(m, maturity, price, accrued, coupon, dirty)
+            month, growth = worst_date(m, maturity, last, price, accrued, flow, dirty)
         worst[m] = month
 
 
 @kernel
 def statement_paths(
-    security: Integers, value: Floats, maturity: Integers, last_month: int, price: Floats, accrued: Floats,
-    coupon: Floats, book: Floats, accretion: Floats, growth_at: Floats, worst: Integers,
+    security: Integers, value: Floats, maturity: Integers, last_month: int, last: Floats, price: Floats,
+    accrued: Floats, coupon: Floats, flow: Floats, book: Floats, accretion: Floats, growth_at: Floats, worst: Integers,
 ) -> None:  # fmt: skip
     """`statement_path` for every lot; tables of terms are [security, month], results [lot, month]."""
     for n in range(security.shape[0]):
         s = security[n]
         statement_path(
-            maturity[s], last_month, price[s], accrued[s], coupon[s], value[n], book[n], accretion[n], growth_at[n],
-            worst[n],
+            maturity[s], last_month, last[s], price[s], accrued[s], coupon[s], flow[s], value[n], book[n],
+            accretion[n], growth_at[n], worst[n],
         )  # fmt: skip

@@ -8,7 +8,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 import numpy.typing as npt
 
-from projector.bonds.exercise.path_kernels import straight_values
+from projector.bonds.exercise.path_kernels import Dates, straight_values
 from projector.bonds.exercise.step_operator import GRID_FINE
 from projector.bonds.mapped import MappedBonds
 from projector.bonds.solving import ExerciseModel, Jobs, MonthSolver, production_grid
@@ -55,23 +55,23 @@ class PriceToday:
     def __call__(self, units: IntArray, spread: Array) -> Array:
         """Holder's value of every security at its spread. [per 100], shape (unit,)"""
         out = np.empty(units.size)
-        callable_now = np.isfinite(self.bonds.clean_price[units]).any(axis=1)
-        for s in sorted(set(self.bonds.coupon_step[units[~callable_now]].tolist())):
-            rows = np.flatnonzero(~callable_now & (self.bonds.coupon_step[units] == s))
+        with_rights = self.bonds.last_decision[units] > 0
+        for s in sorted(set(self.bonds.coupon_step[units[~with_rights]].tolist())):
+            rows = np.flatnonzero(~with_rights & (self.bonds.coupon_step[units] == s))
             value = np.empty((rows.size, 1))
             straight_values(
                 0, int(s), units[rows], self.bonds.maturity, self.bonds.flow, spread[rows], self.discount,
                 np.ones((rows.size, 1), dtype=np.bool_), value,
             )  # fmt: skip
             out[rows] = value[:, 0]
-        offset = (self.bonds.maturity[units] - 1) % self.bonds.step[units] + 1
-        for s, o in sorted({(int(a), int(b)) for a, b in zip(self.bonds.step[units], offset)}):
-            rows = np.flatnonzero(callable_now & (self.bonds.step[units] == s) & (offset == o))
-            if rows.size:
-                out[rows] = self.solved(units[rows], spread[rows], s, o)
+        solver = MonthSolver(self.bonds, self.spreads, self.model)
+        rights = np.flatnonzero(with_rights)
+        for at, part in solver.groups(0, units[rights]):
+            rows = rights[part]
+            out[rows] = self.solved(units[rows], spread[rows], at)
         return out
 
-    def solved(self, units: IntArray, spread: Array, step: int, offset: int) -> Array:
+    def solved(self, units: IntArray, spread: Array, at: Dates) -> Array:
         """Holder's value of securities with rights, on one grid. [per 100], shape (unit,)"""
         refunding = self.spreads.refunding
         if self.refunding_is_valuation:
@@ -80,8 +80,8 @@ class PriceToday:
         path = SpreadPath(self.spreads.class_spread, self.spreads.fade, self.spreads.residual, refunding)
         both = self.model.cost != 0.0 or not self.refunding_is_valuation
         solver = MonthSolver(self.bonds, path, self.model)
-        jobs = Jobs(0, step, offset, units, np.zeros(units.size, dtype=np.int64))
-        grid = GRID_FINE if self.fine else production_grid(step)
+        jobs = Jobs(at, units, np.zeros(units.size, dtype=np.int64))
+        grid = GRID_FINE if self.fine else production_grid(at.step)
         return solver.solve(jobs, self.discount, grid, both, holder_spread=spread)[1]
 
 

@@ -24,7 +24,8 @@ class Coupon(NamedTuple):
 
     start: date
     payment: date
-    amount: float  # [per 100 of par]
+    amount: float  # [per 100 of par held at the valuation date]
+    principal: float = 0.0  # scheduled repayment on the same day, the last one left out [the same]
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -38,12 +39,25 @@ class DatedBond:
     issue: date
     maturity: date
     coupons: tuple[Coupon, ...]  # all of them, from issue to maturity
+    steps: tuple[tuple[date, float], ...] = ()  # coupon rates that follow, in order of their first day
+    sunk: bool = False  # repaid in parts
     payment_dates: tuple[date, ...] = field(repr=False)  # of the coupons, for look-ups
 
     @property
     def periods_a_year(self) -> int:
         """Regular periods a year: the coupon frequency, half-years for a zero coupon bond."""
         return self.frequency or ZERO_COUPON_PERIODS
+
+    def rate_on(self, day: date) -> float:
+        """Coupon rate earned from a day on. [1/year]"""
+        place = bisect_right([start for start, _ in self.steps], day)
+        return self.steps[place - 1][1] if place else self.coupon_rate
+
+    def left_on(self, day: date) -> float:
+        """Share of the par held at the valuation date left after the payments of a day. [-]"""
+        if not self.sunk:
+            return 1.0
+        return 1.0 - sum(c.principal for c in self.coupons if c.payment <= day) / 100.0
 
     def regular_date(self, periods: int) -> date:
         """The date so many regular periods before maturity."""
@@ -59,6 +73,8 @@ def dated_bond(
     issue: date,
     maturity: date,
     first_coupon: date | None = None,
+    steps: tuple[tuple[date, float], ...] = (),
+    sinking: tuple[tuple[date, float], ...] = (),
 ) -> DatedBond:
     """Lay out the coupons of a bond.
 
@@ -69,6 +85,9 @@ def dated_bond(
     first_coupon  None: the first coupon is a full regular one, earned from the last regular date on or before issue.
                   A date of the regular schedule: interest runs from issue, and the first coupon is short or long unless
                   issue is the regular date before it.
+
+    steps         coupon rates that follow, each from a coupon date on
+    sinking       coupon dates with the share repaid of the par held at the valuation date
 
     Every regular coupon is 100 x rate / frequency whatever the day count; only an odd first one is counted in days.
     ValueError when the terms contradict each other.
@@ -83,9 +102,23 @@ def dated_bond(
         maturity=maturity,
         coupons=(),
         payment_dates=(),
+        steps=tuple(sorted(steps)),
     )
     coupons = _coupons(bare, first_coupon) if frequency else ()
-    return DatedBond(**{**vars(bare), "coupons": coupons, "payment_dates": tuple(c.payment for c in coupons)})
+    if sinking:
+        coupons = _sunk(coupons, dict(sinking))
+    days = tuple(c.payment for c in coupons)
+    return DatedBond(**{**vars(bare), "coupons": coupons, "payment_dates": days, "sunk": bool(sinking)})
+
+
+def _sunk(coupons: tuple[Coupon, ...], shares: dict[date, float]) -> tuple[Coupon, ...]:
+    """The coupons on the par still left, and the repayments of their days."""
+    out, left = [], 1.0
+    for coupon in coupons:
+        repaid = shares.get(coupon.payment, 0.0)
+        out.append(coupon._replace(amount=coupon.amount * left, principal=100.0 * repaid))
+        left -= repaid
+    return tuple(out)
 
 
 def _refuse_contradictions(rate: float, frequency: int, issue: date, maturity: date, first: date | None) -> None:
@@ -106,6 +139,8 @@ def _coupons(bond: DatedBond, first_coupon: date | None) -> tuple[Coupon, ...]:
         dates.append(bond.regular_date(len(dates)))
     dates.reverse()
     regular = 100.0 * bond.coupon_rate / bond.frequency
+    if bond.steps and first_coupon is None:
+        return tuple(Coupon(a, b, 100.0 * bond.rate_on(a) / bond.frequency) for a, b in pairwise(dates))
     if first_coupon is None:
         return tuple(Coupon(start, end, regular) for start, end in pairwise(dates))
     if dates[0] != first_coupon:
@@ -116,7 +151,7 @@ def _coupons(bond: DatedBond, first_coupon: date | None) -> tuple[Coupon, ...]:
         if opening == bond.issue
         else interest_earned(bond, bond.issue, first_coupon, (bond.issue, first_coupon))
     )
-    later = (Coupon(start, end, regular) for start, end in pairwise(dates))
+    later = (Coupon(a, b, 100.0 * bond.rate_on(a) / bond.frequency) for a, b in pairwise(dates))
     return (Coupon(bond.issue, first_coupon, amount), *later)
 
 
@@ -130,11 +165,12 @@ def interest_earned(bond: DatedBond, start: date, end: date, period: tuple[date,
 
     Source: ICMA Rule 251.1(iii); 31 CFR 356, Appendix B, section I.C (both cited from memory).
     """
+    rate = bond.rate_on(start)
     if bond.day_count != "ACT/ACT.ICMA":
         fraction = year_fraction(
             bond.day_count, start, end, period=period, frequency=bond.frequency, termination=bond.maturity
         )
-        return 100.0 * bond.coupon_rate * fraction
+        return 100.0 * rate * fraction
     fraction = 0.0
     index = whole_periods_left(bond, start)
     while True:
@@ -142,7 +178,7 @@ def interest_earned(bond: DatedBond, start: date, end: date, period: tuple[date,
         inside = max(start, opening), min(end, closing)
         fraction += actual_days(*inside) / (bond.frequency * actual_days(opening, closing))
         if closing >= end:
-            return 100.0 * bond.coupon_rate * fraction
+            return 100.0 * rate * fraction
         index -= 1
 
 

@@ -8,8 +8,10 @@ import numpy as np
 import numpy.typing as npt
 
 from projector.arithmetic.elementary import exp_array
-from projector.bonds.exercise.path_kernels import run_jobs, straight_values, upper_bounds
-from projector.bonds.exercise.pricing import operator_arguments, operator_for
+from projector.bonds.exercise.path_kernels import Dates, announced_values, run_jobs, straight_values, upper_bounds
+from projector.bonds.exercise.pricing import operator_for, operator_tables
+from projector.bonds.exercise.settle_kernels import NEVER_PUT
+from projector.bonds.exercise.solver_kernels import Rights
 from projector.bonds.exercise.step_operator import GRID_FINE, GRID_FINER, GRID_HALF_YEAR, GRID_MONTHLY, Grid
 from projector.bonds.mapped import MappedBonds
 from projector.bonds.spreads import SpreadPath
@@ -35,11 +37,9 @@ def production_grid(step: int) -> Grid:
 
 @dataclass(frozen=True)
 class Jobs:
-    """Solves of one month that share a grid step and the months to its next date."""
+    """Solves of one month of securities whose decisions fall on the same months, with the same notice."""
 
-    month: int
-    step: int
-    offset: int
+    at: Dates
     units: IntArray
     paths: IntArray
 
@@ -57,79 +57,124 @@ class MonthSolver:
         valuation = self.spreads.valuation(units, month)
         return self.model.cost != 0.0 or bool((valuation != self.spreads.refunding[units, month]).any())
 
+    def groups(self, month: int, units: IntArray) -> list[tuple[Dates, IntArray]]:
+        """Securities whose decisions fall on the same months, with the same notice: dates and rows of `units`."""
+        bonds = self.bonds
+        step, call_lag, put_lag = bonds.step[units], bonds.call_lag[units], bonds.put_lag[units]
+        offset = (bonds.maturity[units] - call_lag - month - 1) % step + 1
+        keys = np.stack([step, offset, call_lag, put_lag])
+        return [
+            (Dates(month, int(o), int(s), int(c), int(p)), np.flatnonzero((keys == [[s], [o], [c], [p]]).all(axis=0)))
+            for s, o, c, p in sorted({tuple(int(x) for x in key) for key in keys.T})
+        ]
+
     def solve(
         self, jobs: Jobs, discount: Array, grid: Grid, both: bool, holder_spread: Array | None = None
     ) -> tuple[Array, Array]:
-        """Issuer's cost and holder's value of every job, ex coupon of `jobs.month`. [per 100], shape (job,)
+        """Issuer's cost and holder's value of every job, ex coupon of its month. [per 100], shape (job,)
 
         discount  P(tau) of that month [tau, path]
-        With no volatility the issuer's cost is the least over policies fixed in advance, and the holder has what
-        that policy pays (`deterministic`).
+        With no volatility the curve is all there is to know and both sides act on it (`deterministic`).
         """
-        month = jobs.month
-        held = self.spreads.valuation(jobs.units, month) if holder_spread is None else holder_spread
-        refunding = self.spreads.refunding[jobs.units, month]
+        at = jobs.at
+        held = self.spreads.valuation(jobs.units, at.month) if holder_spread is None else holder_spread
+        refunding = self.spreads.refunding[jobs.units, at.month]
         if self.model.normal_volatility == 0.0:
             return self.deterministic(jobs, discount, refunding, held)
-        steps = int((self.bonds.maturity[jobs.units].max() - month - jobs.offset) // jobs.step + 1)
-        op = operator_for(self.model.mean_reversion, self.model.normal_volatility, jobs.step, jobs.offset, steps, grid)
+        longest = int(self.bonds.maturity[jobs.units].max())
+        steps = (longest - at.month - at.offset) // at.step + 1
+        lag = at.call_lag % at.step
+        op = operator_for(self.model.mean_reversion, self.model.normal_volatility, at.step, at.offset, steps, grid, lag)
+        puts = bool(self.bonds.puttable[jobs.units].any())
+        doubles = bool(self.bonds.may_double[jobs.units].any())
+        rights = Rights(at.call_lag // at.step, at.put_lag // at.step, both or puts, at.call_lag > 0, puts, doubles)
         # lanes of one batch work as long as its longest: jobs with like spans of rights go together
-        order = np.argsort(self.bonds.rights_left(month)[jobs.units], kind="stable")
+        order = np.argsort(self.bonds.rights_left(at.month)[jobs.units], kind="stable")
         units, paths = jobs.units[order], jobs.paths[order]
         issuer, holder = np.empty(units.size), np.empty(units.size)
         run_jobs(
-            *operator_arguments(op), month, jobs.offset, jobs.step, units, paths, self.bonds.maturity, self.bonds.flow,
-            self.bonds.dirty_price, self.model.cost, refunding[order], held[order], discount, both, issuer, holder,
+            operator_tables(op), at, units, paths, self.bonds.tables, self.model.cost, refunding[order], held[order],
+            discount, rights, issuer, holder,
         )  # fmt: skip
         back = np.empty_like(order)
         back[order] = np.arange(order.size)
         return issuer[back], holder[back]
 
     def deterministic(self, jobs: Jobs, discount: Array, refunding: Array, held: Array) -> tuple[Array, Array]:
-        """The zero-volatility limit: the issuer takes the cheapest date on the forward curve, the later of equals."""
+        """The zero-volatility limit: both sides act on the forward curve; the issuer waits where it costs the same."""
         issuer, holder = np.empty(jobs.units.size), np.empty(jobs.units.size)
         for j, (u, p) in enumerate(zip(jobs.units, jobs.paths)):
-            tau = np.arange(1, int(self.bonds.maturity[u]) - jobs.month + 1)
-            months = jobs.month + tau
-            flow, price = self.bonds.flow[u, months], self.bonds.dirty_price[u, months]
-            stops: list[Array] = []
-            for spread, bar in ((refunding[j], price + self.model.cost), (held[j], price)):
-                d = discount[tau, p] * exp_array(-spread * tau / 12.0)
-                paid = np.cumsum(flow * d)
-                stop = paid + bar * d
-                stop[-1] = paid[-1]
-                stops.append(stop)
-            k = stops[0].size - 1 - int(np.argmin(stops[0][::-1]))
-            issuer[j], holder[j] = stops[0][k], stops[1][k]
+            tau = np.arange(int(self.bonds.maturity[u]) - jobs.at.month + 1)
+            curves = [discount[tau, p] * exp_array(-spread * tau / 12.0) for spread in (refunding[j], held[j])]
+            issuer[j], holder[j] = self.certain(int(u), jobs.at, curves)
         return issuer, holder
 
-    def bounds(self, month: int, step: int, units: IntArray, discount: Array, alive: BoolArray) -> Array:
+    def certain(self, unit: int, at: Dates, curves: list[Array]) -> tuple[float, float]:
+        """Cost and value of one security when the curve comes true, by backward steps over months. [per 100]
+
+        curves  P(tau) of issuer and holder, tau 0..life
+        """
+        bonds, cost, life = self.bonds, self.model.cost, int(self.bonds.maturity[unit]) - at.month
+        flow = bonds.flow[unit, at.month : at.month + life + 1]
+        paid = [np.cumsum(np.where(np.arange(life + 1) > 0, flow, 0.0) * curve) for curve in curves]
+        # from each month on, discounted to today, without what is paid up to it
+        going = [float(total[-1]) for total in paid]
+        for tau in range(life - 1, 0, -1):
+            month = at.month + tau
+            on = [g - float(total[tau]) for g, total in zip(going, paid)]
+            share, effect = bonds.tables.double_share[unit, month], min(tau + at.call_lag, life)
+            price = bonds.tables.price[unit, at.month + effect] if effect < life else np.inf
+            left = bonds.tables.outstanding[unit, min(at.month + effect, int(bonds.maturity[unit]))]
+            due = [float(total[effect] - total[tau]) for total in paid]
+            here = bonds.tables.outstanding[unit, month]
+            after = on
+            if share > 0.0 and on[0] > (100.0 + cost) * here * curves[0][tau]:
+                bars = ((100.0 + cost) * here, 100.0 * here)
+                after = [share * bar * float(c[tau]) + (1.0 - share) * x for bar, c, x in zip(bars, curves, on)]
+            if price < np.inf and after[0] > due[0] + (price + cost * left) * curves[0][effect]:
+                bars = (price + cost * left, price)
+                after = [d + bar * float(c[effect]) for d, bar, c in zip(due, bars, curves)]
+            else:
+                effect = min(tau + at.put_lag, life)
+                put = bonds.tables.put[unit, at.month + effect] if effect < life else NEVER_PUT
+                due = [float(total[effect] - total[tau]) for total in paid]
+                if put > NEVER_PUT and after[1] <= due[1] + put * curves[1][effect]:
+                    after = [d + put * float(c[effect]) for d, c in zip(due, curves)]
+            going = [x + float(total[tau]) for x, total in zip(after, paid)]
+        return going[0], going[1]
+
+    def bounds(self, at: Dates, units: IntArray, discount: Array, alive: BoolArray) -> Array:
         """Upper bound of the issuer's continuation on every path, -inf where gone. [per 100], [unit, path]"""
         out = np.empty((units.size, discount.shape[1]))
-        spread = self.spreads.refunding[units, month]
-        upper_bounds(
-            month, step, units, self.bonds.maturity, self.bonds.flow, self.bonds.dirty_price, self.model.cost, spread,
-            discount, alive, out,
-        )  # fmt: skip
+        spread = self.spreads.refunding[units, at.month]
+        upper_bounds(at, units, self.bonds.tables, self.model.cost, spread, discount, alive, out)
+        return out
+
+    def settled(
+        self, month: int, units: IntArray, paths: IntArray, effect: IntArray, amount: Array, spread: Array,
+        discount: Array,
+    ) -> Array:  # fmt: skip
+        """Value of payments up to month `effect` and an amount on it. [per 100], shape (job,)"""
+        out = np.empty(units.size)
+        announced_values(month, units, effect, amount, self.bonds.flow, spread, discount, paths, out)
         return out
 
     def values(self, month: int, units: IntArray, discount: Array, wanted: BoolArray) -> Array:
         """Holder's value, ex coupon, of securities not yet matured. [per 100 dirty], [unit, path], 0 where not wanted.
 
-        Securities with a right left are solved on their own dates, the rest discounted.
+        Securities with a right left to be decided are solved on their own dates, the rest discounted.
         """
         out = np.zeros((units.size, discount.shape[1]))
-        later = np.asarray(np.isfinite(self.bonds.clean_price[units, month + 1 :]).any(axis=1))
+        later = self.bonds.last_decision[units] > month
         self.add_straight(month, units, np.flatnonzero(~later), discount, wanted, out)
-        step = self.bonds.step[units]
-        offset = (self.bonds.maturity[units] - month - 1) % step + 1
-        for s, o in sorted({(int(a), int(b)) for a, b in zip(step[later], offset[later])}):
-            rows = np.flatnonzero(later & (step == s) & (offset == o))
+        with_rights = np.flatnonzero(later)
+        for at, part in self.groups(month, units[with_rights]):
+            rows = with_rights[part]
             n, p = np.nonzero(wanted[rows])
             if n.size:
-                jobs = Jobs(month, s, o, units[rows[n]], p.astype(np.int64))
+                jobs = Jobs(at, units[rows[n]], p.astype(np.int64))
                 both = self.needs_holder(month, units[rows])
-                out[rows[n], p] = self.solve(jobs, discount, production_grid(s), both)[1]
+                out[rows[n], p] = self.solve(jobs, discount, production_grid(at.step), both)[1]
         return out
 
     def add_straight(

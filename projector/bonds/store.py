@@ -7,6 +7,7 @@ with another price, spread, rule, model or path set has other keys and finds not
 from __future__ import annotations
 
 from dataclasses import dataclass, field
+from typing import Any
 
 import numpy as np
 import numpy.typing as npt
@@ -21,11 +22,10 @@ Place = tuple[str, int, int]  # key, first path, stop path
 
 @dataclass(frozen=True)
 class UnitDecisions:
-    """One security's calls on a range of paths: path, month, share in order; and its rows of decisions, if kept."""
+    """One security's events on a range of paths: path, and columns of `CallEvents` in order; and rows, if kept."""
 
     path: IntArray
-    month: IntArray
-    share: Array
+    columns: tuple[npt.NDArray[Any], ...]  # month, decided, share, kind, price
     rows: pd.DataFrame | None
 
 

@@ -101,7 +101,7 @@ def _endings(bond: DatedBond, settlement: date, ways: tuple[Redemption, ...], co
         redemptions=ways,
         endings=tuple(_ending(bond, settlement, now, way, convention) for way in ways),
         times=coupon_times(bond, settlement, bond.maturity),
-        amounts=tuple(coupon.amount for coupon in coupons),
+        amounts=tuple(coupon.amount + coupon.principal for coupon in coupons),
     )
 
 
@@ -109,7 +109,7 @@ def _ending(bond: DatedBond, settlement: date, now: float, way: Redemption, conv
     before = coupons_between(bond, settlement, way.day)
     amount = redemption_amount(bond, way)
     if before and before[-1].payment == way.day:
-        amount += before[-1].amount
+        amount += before[-1].amount + before[-1].principal
         before = before[:-1]
     last = periods_between(bond, settlement, way.day)
     broken = broken_stretch(convention, now, last, alone=not before)

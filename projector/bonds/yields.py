@@ -65,7 +65,7 @@ def accrued_interest(bond: DatedBond, settlement: date) -> float:
     if coupon is None:
         return 0.0
     earned = interest_earned(bond, coupon.start, settlement, (coupon.start, coupon.payment))
-    return min(earned, coupon.amount)
+    return min(earned * bond.left_on(settlement), coupon.amount)
 
 
 def _refuse_settlement(bond: DatedBond, settlement: date) -> None:
@@ -89,9 +89,9 @@ def remaining_payments(
     now = periods_left(bond, settlement)
     coupons = coupons_between(bond, settlement, end.day)
     times = list(coupon_times(bond, settlement, end.day))
-    amounts = [coupon.amount for coupon in coupons]
+    amounts = [coupon.amount + coupon.principal for coupon in coupons]
     if coupons and coupons[-1].payment == end.day:
-        amounts[-1] += end.price
+        amounts[-1] += end.price * bond.left_on(end.day)
     else:
         times.append(periods_between(bond, settlement, end.day))
         amounts.append(redemption_amount(bond, end))
@@ -107,7 +107,7 @@ def remaining_payments(
 def redemption_amount(bond: DatedBond, redemption: Redemption) -> float:
     """The redemption price with the interest accrued on its date. [per 100]"""
     accrued = accrued_interest(bond, redemption.day) if redemption.day < bond.maturity else 0.0
-    return redemption.price + accrued
+    return redemption.price * bond.left_on(redemption.day) + accrued
 
 
 def broken_stretch(convention: str, periods_to_maturity: float, last: float, *, alone: bool) -> float:

@@ -42,9 +42,9 @@ BALANCES = (
     "cash", "statement_start", "statement_bought", "accrued", "recoveries", "borrowing", "shortfall", "reserve",
     "surrender", "earned_rate", "interest_earned", "default_cost",
 )  # fmt: skip
-PAR_ITEMS = ("scheduled", "called", "defaulted", "bought", "sold", "close")
+PAR_ITEMS = ("scheduled", "called", "put", "defaulted", "bought", "sold", "close")
 BOOK_ITEMS = (
-    "accretion", "principal", "called", "defaulted", "sold", "sold_accrued", "recoverable",
+    "accretion", "principal", "called", "put", "defaulted", "sold", "sold_accrued", "recoverable",
 )  # fmt: skip
 
 
@@ -255,7 +255,7 @@ def close_run_off(prepared: Prepared, result: BlockResult, items: Array, values:
     due = np.zeros((last + lag + 1, *result.runoff.shape[1:]))
     for m in range(1, last + 1):
         total = np.zeros(result.runoff.shape[1:])
-        for which in (item.COUPON, item.PRINCIPAL, item.CALL_PAR, item.CALL_PREMIUM):
+        for which in (item.COUPON, item.PRINCIPAL, item.CALL_PAR, item.CALL_PREMIUM, item.PUT_CASH):
             total = total + segment_sum(items[which, m], one, segment, segments)
         due[m + lag] += segment_sum(items[item.RECOVERABLE, m], one, segment, segments)
         opening = segment_sum(items[item.BOOK, m - 1], one, segment, segments)

@@ -6,6 +6,7 @@ import numpy as np
 import numpy.typing as npt
 import pandas as pd
 
+from projector.bonds.decisions import CALL, KINDS
 from projector.run.block import BlockResult
 from projector.run.prepare import Prepared
 from projector.run.results import COLUMNS
@@ -29,16 +30,6 @@ def default_cost(prepared: Prepared) -> Array:
     return (1.0 - year) * (1.0 - recovered)
 
 
-def share_before(block: BlockResult) -> Array:
-    """Share outstanding just before each event of a block. [-], shape (event,)"""
-    out = np.ones(block.events.month.size)
-    shares, starts = block.events.share, set(block.events.start[:, :-1].ravel().tolist())
-    for e in range(1, out.size):
-        if e not in starts:
-            out[e] = out[e - 1] * (1.0 - shares[e - 1])
-    return out
-
-
 def call_rows(prepared: Prepared, block: BlockResult) -> pd.DataFrame:
     """One row per event and lot, then added up to security and segment."""
     events, lots = block.events, prepared.lots
@@ -55,7 +46,7 @@ def call_rows(prepared: Prepared, block: BlockResult) -> pd.DataFrame:
     lot = lots.callable_rows[row]
     month = events.month[e]
     group = group_of_lot(prepared)[lot]
-    share = (events.share * share_before(block))[e] * block.held[month, group, path[e]]
+    share = events.part[e] * prepared.bonds.outstanding[unit[e], month] * block.held[month, group, path[e]]
     par = lots.par[lot] * prepared.survival[unit[e], month] * share
     book_yield = bond_equivalent_of_growth(lots.growth_at[row, month]) - default_cost(prepared)[unit[e]]
     years = np.maximum(lots.worst[row, month - 1] - month, 0) / 12.0
@@ -66,14 +57,48 @@ def call_rows(prepared: Prepared, block: BlockResult) -> pd.DataFrame:
             "security_id": np.array(prepared.bonds.ids)[unit[e]],
             "segment": np.array(prepared.segment_names)[lots.segment[lot]],
             "month": month,
-            "right": np.where(prepared.stated_rights[unit[e]], "stated price", "par call"),
+            "decided": events.decided[e],
+            "right": np.where(
+                events.kind[e] == CALL,
+                np.where(prepared.stated_rights[unit[e]], "stated price", "par call"),
+                np.array(KINDS)[events.kind[e]],
+            ),
             "par_called": par,
-            "price": prepared.bonds.clean_price[unit[e], month],
-            "premium": par * (prepared.bonds.clean_price[unit[e], month] / 100.0 - 1.0),
+            "price": events.price[e],
+            "premium": par * (events.price[e] / 100.0 - 1.0),
             "book_yield": book_yield,
             "purchase_yield": purchase,
             "years_to_worst": years,
             "yield_given_up": par * (book_yield - purchase) * years + 0.0,
+        }
+    )
+
+
+def announced_rows(prepared: Prepared, block: BlockResult) -> pd.DataFrame:
+    """The same of calls announced by the valuation date: what they give up was given up before."""
+    bonds, lots = prepared.bonds, prepared.lots
+    lot = np.flatnonzero(bonds.announced[lots.security] & (bonds.maturity[lots.security] <= prepared.months))
+    paths = block.path_hi - block.path_lo
+    row, path = np.repeat(lot, paths), np.tile(np.arange(paths), lot.size)
+    unit = lots.security[row]
+    month = bonds.maturity[unit]
+    par = lots.par[row] * prepared.survival[unit, month] * bonds.principal[unit, month] / 100.0
+    par = par * block.held[month, group_of_lot(prepared)[row], path]
+    return pd.DataFrame(
+        {
+            "scenario": np.array(prepared.paths.ids)[block.path_lo + path],
+            "security_id": np.array(bonds.ids)[unit],
+            "segment": np.array(prepared.segment_names)[lots.segment[row]],
+            "month": month,
+            "decided": 0,
+            "right": "announced before",
+            "par_called": par,
+            "price": bonds.redemption[unit],
+            "premium": par * (bonds.redemption[unit] / 100.0 - 1.0),
+            "book_yield": bond_equivalent_of_growth(lots.growth_at_start[row]) - default_cost(prepared)[unit],
+            "purchase_yield": block.net_yield[month, path],
+            "years_to_worst": 0.0,
+            "yield_given_up": 0.0,
         }
     )
 
@@ -87,14 +112,14 @@ def group_of_lot(prepared: Prepared) -> npt.NDArray[np.int64]:
 
 def calls_frame(prepared: Prepared, blocks: list[BlockResult]) -> pd.DataFrame:
     """The calls table: lots of one security and segment added up, yields and years weighted by par."""
-    rows = pd.concat([call_rows(prepared, b) for b in blocks], ignore_index=True)
+    rows = pd.concat([f(prepared, b) for b in blocks for f in (call_rows, announced_rows)], ignore_index=True)
     rows = rows[rows["par_called"] > 0.0]
     weighted = rows.assign(
         book_yield=rows["book_yield"] * rows["par_called"], years_to_worst=rows["years_to_worst"] * rows["par_called"]
     )
-    keys = ["scenario", "security_id", "segment", "month"]
+    keys = ["scenario", "security_id", "segment", "month", "right"]
     out = weighted.groupby(keys, sort=False, as_index=False).agg(
-        right=("right", "first"),
+        decided=("decided", "first"),
         par_called=("par_called", "sum"), price=("price", "first"), premium=("premium", "sum"),
         book_yield=("book_yield", "sum"), purchase_yield=("purchase_yield", "first"),
         years_to_worst=("years_to_worst", "sum"), yield_given_up=("yield_given_up", "sum"),
@@ -102,5 +127,5 @@ def calls_frame(prepared: Prepared, blocks: list[BlockResult]) -> pd.DataFrame:
     out["book_yield"] /= out["par_called"]
     out["years_to_worst"] /= out["par_called"]
     order = {s: i for i, s in enumerate(prepared.paths.ids)}
-    out = out.assign(o=out["scenario"].map(order)).sort_values(["o", "month", "security_id", "segment"])
+    out = out.assign(o=out["scenario"].map(order)).sort_values(["o", "month", "security_id", "segment", "right"])
     return out[list(COLUMNS["calls"])].reset_index(drop=True)

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable
+from typing import Any
 
 import numpy as np
 import numpy.typing as npt
@@ -59,10 +60,14 @@ def keep(
         path = np.repeat(np.arange(start.size - 1), np.diff(start))
         span = slice(int(start[0]), int(start[-1]))
         part = by_unit.get(int(u))
-        store.decisions[places[int(u)]] = UnitDecisions(path, events.month[span], events.share[span], part)
+        store.decisions[places[int(u)]] = UnitDecisions(
+            path, tuple(c[span] for c in (events.month, events.decided, events.share, events.kind, events.price)), part
+        )
 
 
 def together(known: dict[int, UnitDecisions], shape: tuple[int, int]) -> CallEvents:
     """Events of every security in one."""
-    parts = [(np.full(k.path.size, u, dtype=np.int64), k.path, k.month, k.share) for u, k in known.items()]
+    parts: list[tuple[npt.NDArray[Any], ...]] = [
+        (np.full(k.path.size, u, dtype=np.int64), k.path, *k.columns) for u, k in known.items()
+    ]
     return ordered_events(parts, shape)

@@ -7,14 +7,17 @@ A failed identity stops the run: no report is written. Tolerance: |left - right|
 from __future__ import annotations
 
 from collections.abc import Iterable
+from datetime import date
 
 import numpy as np
 import numpy.typing as npt
 import pandas as pd
 
+from projector.bonds.mapped import Terms
 from projector.liabilities.streams import SuppliedStream
 from projector.run.block import BlockResult
 from projector.run.prepare import Prepared
+from projector.study.clock import month_of
 from projector.study.errors import IdentityFailed
 
 Array = npt.NDArray[np.float64]
@@ -89,7 +92,7 @@ def cash_terms(r: BlockResult) -> list[Array]:
 def par_terms(r: BlockResult) -> list[Array]:
     """I2: opening par - redeemed - called - sold - defaulted + bought = closing par."""
     p = r.par
-    return [p["close"][:-1], -p["scheduled"][1:], -p["called"][1:], -p["sold"][1:], -p["defaulted"][1:],
+    return [p["close"][:-1], -p["scheduled"][1:], -p["called"][1:], -p["put"][1:], -p["sold"][1:], -p["defaulted"][1:],
             p["bought"][1:], -p["close"][1:]]  # fmt: skip
 
 
@@ -104,7 +107,7 @@ def book_terms(r: BlockResult) -> list[Array]:
     close = r.balances["statement_start"] + r.balances["statement_bought"]
     b = r.book
     return [close[:-1], -r.flows[("bought", "purchase")][1:], b["accretion"][1:], -b["principal"][1:], -b["called"][1:],
-            -b["defaulted"][1:], -b["sold"][1:], -close[1:]]  # fmt: skip
+            -b["put"][1:], -b["defaulted"][1:], -b["sold"][1:], -close[1:]]  # fmt: skip
 
 
 def value_terms(r: BlockResult) -> list[Array]:
@@ -125,7 +128,7 @@ def surplus_terms(r: BlockResult) -> list[Array]:
     b, f = r.balances, r.flows
     assets = b["statement_start"] + b["statement_bought"] + b["accrued"] + b["recoveries"] + b["cash"]
     surplus = assets - b["borrowing"] - b["shortfall"] - b["reserve"]
-    call_gain = f[("start", "call_par")] - r.book["called"]
+    call_gain = f[("start", "call_par")] - r.book["called"] + f[("start", "put")] - r.book["put"]
     sale_gain = f[("start", "sale")] + f[("bought", "sale")] - r.book["sold"] - r.book["sold_accrued"]
     own = ("investment_expense", "cash_interest", "borrowing_interest", "shortfall_interest")
     movements = ("borrowed", "repaid", "shortfall_drawn", "shortfall_repaid")
@@ -135,11 +138,28 @@ def surplus_terms(r: BlockResult) -> list[Array]:
     return [surplus[:-1], -surplus[1:], *(t[1:] for t in income), -(b["reserve"][1:] - b["reserve"][:-1])]
 
 
+def promised_coupons(terms: Terms, valuation: date) -> float:
+    """Coupons after the valuation date by the dated schedule, up to a call already announced. [per 100]
+
+    What such a call pays between two coupons counts mapped months of the coupon then earned (C1).
+    """
+    coupons = [c for c in terms.dated().coupons if c.payment > valuation]
+    if terms.announced is None:
+        return sum(c.amount for c in coupons)
+    end = month_of(terms.announced["payment_date"], valuation)
+    total = sum(c.amount for c in coupons if month_of(c.payment, valuation) <= end)
+    broken = [c for c in coupons if month_of(c.start, valuation) < end < month_of(c.payment, valuation)]
+    for c in broken:
+        start, paid = month_of(c.start, valuation), month_of(c.payment, valuation)
+        total += c.amount * (end - start) / (paid - start)
+    return total
+
+
 def coupon_sums(prepared: Prepared) -> Sums:
     """I5: what each security pays on mapped months is what its dated schedule promises after the valuation date."""
     check = Sums("I5", "coupons over life: mapped months = dated schedule, per 100 of par")
     valuation = prepared.study.valuation_date
-    promised = np.array([sum(c.amount for c in b.coupons if c.payment > valuation) for b in prepared.dated_bonds])
+    promised = np.array([promised_coupons(prepared.terms_of[s], valuation) for s in prepared.bonds.ids])
     check.add([prepared.bonds.coupon.sum(axis=1)[None, :], -promised[None, :]], (prepared.bonds.ids,), 0)
     return check
 

@@ -7,7 +7,7 @@ import numpy.typing as npt
 import pandas as pd
 
 from projector.bonds.schedule import coupons_between
-from projector.bonds.yields import accrued_interest
+from projector.bonds.yields import Redemption, accrued_interest, redemption_amount
 from projector.run.prepare import Prepared, start_discount
 
 Array = npt.NDArray[np.float64]
@@ -54,10 +54,12 @@ def mapping_differences(prepared: Prepared) -> pd.DataFrame:
     months = np.arange(discount.size) / 12.0
     clean, near = prepared.calibrated.clean_price, prepared.calibrated.spread
     days, amounts, owner = [], [], []
-    for u, bond in enumerate(prepared.dated_bonds):
-        ahead = coupons_between(bond, valuation, bond.maturity)
-        days += [(c.payment - valuation).days for c in ahead] + [(bond.maturity - valuation).days]
-        amounts += [c.amount for c in ahead] + [100.0]
+    for u, (name, bond) in enumerate(zip(bonds.ids, prepared.dated_bonds)):
+        called = prepared.terms_of[name].announced
+        last = Redemption(called["payment_date"], called["price"]) if called else Redemption(bond.maturity, 100.0)
+        ahead = coupons_between(bond, valuation, last.day)
+        days += [(c.payment - valuation).days for c in ahead] + [(last.day - valuation).days]
+        amounts += [c.amount + c.principal for c in ahead] + [redemption_amount(bond, last)]
         owner += [u] * (len(ahead) + 1)
     times, of = np.array(days) / DAYS_A_YEAR, np.array(owner)
     accrued = np.array([accrued_interest(bond, valuation) for bond in prepared.dated_bonds])

@@ -20,7 +20,7 @@ from projector.balance.month import Strategy
 from projector.balance.purchases import Mix
 from projector.bonds.calibration import Calibrated, PriceToday, calibrate
 from projector.bonds.call_rules import CallRule, OptimalWithCost
-from projector.bonds.mapped import MappedBonds, dated, map_bonds, plain_records
+from projector.bonds.mapped import MappedBonds, Terms, map_bonds, security_terms
 from projector.bonds.schedule import DatedBond
 from projector.bonds.solving import ExerciseModel, MonthSolver
 from projector.bonds.spreads import BP, ClassSpreads, SpreadPath, class_spread_table, residual_fade
@@ -41,6 +41,7 @@ class Prepared:
 
     study: Study
     paths: PathSet
+    terms_of: dict[str, Terms]  # by security id
     bonds: MappedBonds
     asset_class: tuple[str, ...]  # by security
     solver: MonthSolver
@@ -58,15 +59,15 @@ class Prepared:
         """Securities callable at a stated price, apart from those whose only right is the par call of a make-whole."""
         return stated_rights(self.study, self.bonds)
 
-    @cached_property
+    @property
     def security_rows(self) -> dict[str, dict[str, Any]]:
         """Rows of the securities table by identifier, dates as `datetime.date`."""
-        return {r["security_id"]: r for r in plain_records(self.study.tables.securities)}
+        return {name: t.row for name, t in self.terms_of.items()}
 
     @cached_property
     def dated_bonds(self) -> tuple[DatedBond, ...]:
         """Every security on its exact dates, in the order of the mapped ones."""
-        return tuple(dated(self.security_rows[name]) for name in self.bonds.ids)
+        return tuple(self.terms_of[name].dated() for name in self.bonds.ids)
 
     @property
     def months(self) -> int:
@@ -127,7 +128,8 @@ def exercise_model(study: Study) -> ExerciseModel:
 def prepare(study: Study, paths: PathSet | None = None) -> Prepared:
     """Lays out a checked study; the path set may be handed in when it was built before."""
     paths = paths or build_paths(study)
-    bonds = map_bonds(study.tables.securities, study.tables.call_rights, study.valuation_date)
+    security = security_terms(study.tables)
+    bonds = map_bonds(security, study.valuation_date)
     spreads, calibrated = spreads_and_prices(study, paths, bonds)
     terms = DefaultTerms.from_study(study.defaults, study.tables.default_costs)
     mix = Mix.from_study(study.purchases, terms)
@@ -143,6 +145,7 @@ def prepare(study: Study, paths: PathSet | None = None) -> Prepared:
     return Prepared(
         study=study,
         paths=paths,
+        terms_of=security,
         bonds=bonds,
         asset_class=asset_class,
         solver=MonthSolver(bonds, spreads, exercise_model(study)),

@@ -108,7 +108,12 @@ COLUMNS: dict[str, dict[str, tuple[str, str]]] = {
         "security_id": ("-", "security"),
         "segment": ("-", "segment"),
         "month": ("month", "month of payment"),
-        "right": ("-", "stated price, or par call of a make-whole security"),
+        "decided": ("month", "month of the decision: before the payment where notice is due; 0 = before the valuation"),
+        "right": (
+            "-",
+            "stated price, par call of a make-whole security, sinking payment doubled, put (by the holder), or a call"
+            " announced before",
+        ),
         "par_called": ("currency", "par called, after defaults and sales"),
         "price": ("per 100", "clean call price"),
         "premium": ("currency", "paid above par"),

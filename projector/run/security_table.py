@@ -8,10 +8,10 @@ from typing import Any
 import numpy as np
 import pandas as pd
 
-from projector.bonds.mapped import plain_records
+from projector.bonds.mapped import Terms
 from projector.bonds.schedule import DatedBond
 from projector.bonds.worst import yield_to_worst
-from projector.bonds.yields import Redemption, accrued_interest, bond_equivalent
+from projector.bonds.yields import Redemption, accrued_interest, bond_equivalent, yield_from_clean
 from projector.run.call_table import bond_equivalent_of_growth
 from projector.run.mapping_check import mapping_differences
 from projector.run.prepare import Prepared
@@ -58,17 +58,23 @@ def street_yield(bond: DatedBond, redemptions: list[Redemption], settlement: dat
     return equivalent if abs(equivalent) < BELIEVABLE else float("nan")
 
 
+def announced_yield(bond: DatedBond, terms: Terms, settlement: date, price: float) -> float:
+    """Yield to the day a call already announced is paid, bond-equivalent. [1/year]; nan where none within 100 %"""
+    assert terms.announced is not None
+    way = Redemption(terms.announced["payment_date"], float(terms.announced["price"]))
+    equivalent = bond_equivalent(yield_from_clean(bond, settlement, price, "street", way), bond.periods_a_year)
+    return equivalent if abs(equivalent) < BELIEVABLE else float("nan")
+
+
 def securities_frame(prepared: Prepared) -> pd.DataFrame:
     """The securities table in the order of their identifiers."""
     study, bonds, fitted = prepared.study, prepared.bonds, prepared.calibrated
     rows = prepared.security_rows
-    rights: dict[str, list[dict[str, Any]]] = {}
-    for r in plain_records(study.tables.call_rights):
-        rights.setdefault(r["security_id"], []).append(r)
     sums, mapping = lot_sums(prepared), mapping_differences(prepared)["difference_bp"].to_numpy()
     out = []
     for u, name in enumerate(bonds.ids):
-        row, mine = rows[name], rights.get(name, [])
+        terms = prepared.terms_of[name]
+        row, mine = rows[name], list(terms.calls)
         live = np.flatnonzero(np.isfinite(bonds.clean_price[u]))
         par = float(sums["par"][u])
         clean = float(fitted.clean_price[u])
@@ -95,7 +101,9 @@ def securities_frame(prepared: Prepared) -> pd.DataFrame:
                 "spread_from": fitted.origin[u],
                 "book_yield": float(sums["yield"][u]),
                 "worst_date": month_end(int(sums["worst"][u]), study.valuation_date).isoformat(),
-                "yield_to_worst": street_yield(
+                "yield_to_worst": announced_yield(prepared.dated_bonds[u], terms, study.valuation_date, clean)
+                if terms.announced is not None
+                else street_yield(
                     prepared.dated_bonds[u],
                     street_redemptions(row, mine, study.valuation_date),
                     study.valuation_date,

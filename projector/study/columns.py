@@ -19,6 +19,8 @@ RATINGS = (
     *("B+", "B", "B-", "CCC+", "CCC", "CCC-", "CC", "C", "D"),
 )
 CALL_STYLES = ("european", "bermudan", "american", "make_whole")
+PUT_STYLES = CALL_STYLES[:3]
+NOTICE_DAYS_AT_MOST = 90
 FLOW_ITEMS = (
     *("premium", "death_benefit", "surrender_benefit", "withdrawal"),
     *("annuity_payment", "maturity_benefit", "expense", "commission"),
@@ -54,6 +56,7 @@ class RefusedColumn:
     code: str
     what: str  # with its verb: puts are, notice is
     harmless: tuple[str, ...] = ()  # beside empty, 0, none, no and false
+    elsewhere: str = ""  # the optional table in which this version honours it
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -119,6 +122,7 @@ def _identifier(name: str, meaning: str) -> Column:
 
 _RATING = _choice("rating", RATINGS, "rating class")
 _TENOR = _whole("tenor_months", "month", "tenor of the quoted yield", 1, 360)
+_NOTICE = _whole("notice_days", "day", "days between notice and payment, 0 to 90", 0, NOTICE_DAYS_AT_MOST)
 _SEGMENT = _identifier("segment", "segment named in study.toml")
 
 SECURITIES = Table(
@@ -145,12 +149,19 @@ SECURITIES = Table(
         _date("par_call_date", "callable at 100 on any month end from here to maturity; empty is never", filled=False),
     ),
     refused=(
-        RefusedColumn(name="put_date", code="E502", what="puts are"),
-        RefusedColumn(name="sinking_fund", code="E503", what="sinking funds are"),
-        RefusedColumn(name="step_up", code="E504", what="step-up coupons are"),
+        RefusedColumn(name="put_date", code="E502", what="puts in this table are", elsewhere="put_rights"),
+        RefusedColumn(
+            name="sinking_fund", code="E503", what="sinking funds in this table are", elsewhere="sinking_payments"
+        ),
+        RefusedColumn(name="step_up", code="E504", what="step-up coupons in this table are", elsewhere="coupon_steps"),
         RefusedColumn(name="coupon_type", code="E505", what="coupons other than fixed are", harmless=("fixed",)),
         RefusedColumn(name="floating_index", code="E506", what="floating coupons are"),
-        RefusedColumn(name="announced_call_date", code="E507", what="calls already announced are"),
+        RefusedColumn(
+            name="announced_call_date",
+            code="E507",
+            what="announced calls in this table are",
+            elsewhere="announced_calls",
+        ),
     ),
 )
 
@@ -182,9 +193,63 @@ CALL_RIGHTS = Table(
         _number(
             "make_whole_spread_bp", "bp", "make-whole spread; only for make_whole", 0, 500, filled=False, present=False
         ),
+        _NOTICE,
     ),
-    refused=(RefusedColumn(name="notice_days", code="E501", what="notice before a call is"),),
 )
+
+PUT_RIGHTS = Table(
+    name="put_rights",
+    meaning="The holder's rights to put: one row is one price over first_date to last_date, both included.",
+    key=("security_id", "first_date", "style", "last_date"),
+    may_be_empty=True,
+    columns=(
+        _text("security_id", "security that may be put"),
+        _date("first_date", "first day of the right"),
+        _date("last_date", "last day of the right"),
+        _choice("style", PUT_STYLES, "european: one day; bermudan: coupon dates; american: month ends"),
+        _number("price", "per 100 of par", "clean put price", 50, 150),
+        _NOTICE,
+    ),
+)
+
+SINKING_PAYMENTS = Table(
+    name="sinking_payments",
+    meaning="Scheduled repayments of par at 100, pro rata over all holders, on coupon dates before maturity.",
+    key=("security_id", "payment_date"),
+    may_be_empty=True,
+    columns=(
+        _text("security_id", "security repaid in parts"),
+        _date("payment_date", "coupon date after the valuation date"),
+        _number("share_of_par", "-", "share of the par held at the valuation date", 0, 1, above_least=True),
+        Column(name="may_double", kind="flag", unit="-", meaning="the issuer may retire as much again at 100"),
+    ),
+)
+
+COUPON_STEPS = Table(
+    name="coupon_steps",
+    meaning="Coupon rates that follow the one of the securities table, each from a coupon date on.",
+    key=("security_id", "start_date"),
+    may_be_empty=True,
+    columns=(
+        _text("security_id", "security whose coupon changes"),
+        _date("start_date", "coupon date from which the new rate is earned"),
+        _number("coupon_rate", "1/year", "annual coupon rate from then on", 0, 0.20),
+    ),
+)
+
+ANNOUNCED_CALLS = Table(
+    name="announced_calls",
+    meaning="Calls of all par announced by the valuation date and not yet paid.",
+    key=("security_id",),
+    may_be_empty=True,
+    columns=(
+        _text("security_id", "security called"),
+        _date("payment_date", "day on which it is repaid"),
+        _number("price", "per 100 of par", "clean price paid", 50, 200),
+    ),
+)
+
+OPTIONAL_TABLES = {table.name: table for table in (PUT_RIGHTS, SINKING_PAYMENTS, COUPON_STEPS, ANNOUNCED_CALLS)}
 
 YIELD_CURVE = Table(
     name="yield_curve",

@@ -13,7 +13,7 @@ from pydantic import BaseModel
 from pydantic.fields import FieldInfo
 
 from projector.study.cells import figure
-from projector.study.columns import Column, Table, study_tables
+from projector.study.columns import OPTIONAL_TABLES, Column, Table, study_tables
 from projector.study.errors import echo
 from projector.study.files import STUDY_FILE, refused
 from projector.study.schema import Sourced, StudyForm, TablesSection
@@ -109,7 +109,7 @@ def _section_lines(name: str, model: type[BaseModel], repeated: bool) -> Iterato
 
 def _key_line(key: str, field: FieldInfo, model: type[BaseModel]) -> str:
     comment = f"  # {field.description}" if field.description else ""
-    if model is TablesSection:
+    if model is TablesSection and field.is_required():
         return f'{key} = "{key}.csv"{comment}'
     if not field.is_required():
         return f"# {key} = {_default_text(field)}{comment}, optional"
@@ -123,6 +123,8 @@ def _default_text(field: FieldInfo) -> str:
     default = field.get_default(call_default_factory=True)
     if isinstance(default, int):
         return str(default)
+    if default is None:
+        return '"..."'
     return '["..."]' if isinstance(default, list) else f'"{default or "..."}"'
 
 
@@ -134,6 +136,12 @@ def _table_lines() -> Iterator[str]:
         yield f"# {name}: {table.meaning}"
         yield from (f"#   {_column_text(column)}" for column in table.columns)
         yield from _refused_text(table)
+    yield "#"
+    yield "# Optional tables, for securities with such terms; name the file in [tables] to have it read."
+    for name, table in OPTIONAL_TABLES.items():
+        yield "#"
+        yield f"# {name}: {table.meaning}"
+        yield from (f"#   {_column_text(column)}" for column in table.columns)
     yield "#"
     yield '# With defaults.form = "rate_recovery_lag" default_costs has rating, annual_rate [1/year] and recovery [-].'
 

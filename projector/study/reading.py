@@ -14,7 +14,7 @@ from typing import Any, TypeVar
 import pandas as pd
 
 from projector.study.building import digest_choices, study_choices
-from projector.study.columns import RATE_TABLES, Table, study_tables
+from projector.study.columns import OPTIONAL_TABLES, RATE_TABLES, Table, study_tables
 from projector.study.crosscheck import control_errors, lot_errors, rating_errors, segment_errors
 from projector.study.digest import input_digest
 from projector.study.errors import LocatedError, StudyRefused, StudyTooLarge
@@ -24,8 +24,9 @@ from projector.study.ratechecks import curve_errors, rate_table_errors
 from projector.study.rawtables import RawTable, read_raw_table
 from projector.study.records import FileDigest, Study, Tables
 from projector.study.schema import StudyForm
+from projector.study.specialterms import special_term_errors
 from projector.study.streamchecks import reserves_at_start, stream_errors
-from projector.study.tablecheck import Checked, check_table, sorted_by_key
+from projector.study.tablecheck import Checked, check_table, empty_table, sorted_by_key
 from projector.study.termchecks import check_call_rights, price_and_coupon_errors, security_date_errors
 from projector.study.tomlfile import check_form, parse_toml
 
@@ -88,8 +89,10 @@ def read_study(folder: Path, limits: Limits = LIMITS) -> tuple[Study, tuple[str,
     warnings = _check_together(form, named)
     by_name = {key: entry.canonical() for key, entry in named.items()}
     listed = study_tables(form.defaults.form)
-    rate_tables = {named[key].file: by_name[key] for key in named if key not in listed}
-    tables = Tables(**{name: by_name[name] for name in listed}, rate_tables=rate_tables)
+    rate_tables = {named[key].file: by_name[key] for key in named if key not in (listed | OPTIONAL_TABLES)}
+    own = {name: by_name[name] for name in listed}
+    own |= {name: by_name[name] if name in by_name else empty_table(table) for name, table in OPTIONAL_TABLES.items()}
+    tables = Tables(**own, rate_tables=rate_tables)
     digest = input_digest(digest_choices(form), [(named[key].table, by_name[key]) for key in named])
     study = Study(**study_choices(form), tables=tables, input_digest=digest, files=(*digests, *more))
     return study, warnings
@@ -123,6 +126,7 @@ def _wanted(form: StudyForm) -> dict[str, tuple[Table, str]]:
     """Each table's columns and file; a table of paths goes by its place in the list of sources."""
     files = form.tables.model_dump()
     wanted = {name: (table, files[name]) for name, table in study_tables(form.defaults.form).items()}
+    wanted |= {name: (table, files[name]) for name, table in OPTIONAL_TABLES.items() if files[name] is not None}
     for at, source in enumerate(form.rates.paths):
         if source.kind in RATE_TABLES:
             wanted[f"paths {at + 1}"] = (RATE_TABLES[source.kind], source.model_dump()["file"])
@@ -167,6 +171,7 @@ def _check_together(form: StudyForm, named: dict[str, NamedTable]) -> tuple[str,
     stage.errors += security_date_errors(securities, valuation, files["securities"])
     stage.errors += lot_errors(lots, securities, segments, files["lots"])
     stage.errors += rights.errors
+    stage.errors += special_term_errors(frames, files, valuation)
     stage.errors += curve_errors(frames["yield_curve"], files["yield_curve"])
     stage.errors += _rating_errors(form, frames, files)
     stage.errors += segment_errors(streams, segments, files["liability_streams"])

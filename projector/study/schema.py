@@ -72,6 +72,10 @@ class TablesSection(Form):
     default_costs: str = Field(description="default costs by rating")
     liability_streams: str = Field(description="liability flows by block, scenario, month")
     control_totals: str = Field(description="totals from the ledger")
+    put_rights: str | None = Field(default=None, description="holders' rights to put")
+    sinking_payments: str | None = Field(default=None, description="scheduled repayments before maturity")
+    coupon_steps: str | None = Field(default=None, description="coupon rates that change on a date")
+    announced_calls: str | None = Field(default=None, description="calls announced and not yet paid")
 
 
 class SegmentSection(Form):

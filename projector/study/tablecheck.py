@@ -36,6 +36,12 @@ class Checked:
     sound: dict[str, NDArray[np.bool_]]
 
 
+def empty_table(table: Table) -> pd.DataFrame:
+    """The typed table without rows."""
+    none = np.array([], dtype=object)
+    return pd.DataFrame({c.name: _typed(c, none) for c in table.columns} | {"row": np.array([], dtype=np.int64)})
+
+
 def check_table(raw: RawTable, table: Table) -> Checked:
     """The table with typed columns, and every fault that can be seen in it alone.
 
@@ -257,6 +263,9 @@ def _refused_errors(raw: RawTable, refused: RefusedColumn, cells: NDArray[Any]) 
     """Cells that ask for what this version cannot do."""
     problem = f"{refused.what} not honoured by this version"
     remedy = "leave the cell empty only where the terms do not have it; otherwise this security cannot be modelled"
+    if refused.elsewhere:
+        problem = f"{refused.what} not read"
+        remedy = f"leave the column out and write them in the table {refused.elsewhere}"
     harmless = _HARMLESS + refused.harmless
     texts = [cell if isinstance(cell, str) else plain_text(cell) for cell in cells.tolist()]
     asking = [at for at, text in enumerate(texts) if text.strip(" ").lower() not in harmless]

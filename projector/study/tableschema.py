@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from typing import Any
 
-from projector.study.columns import DEFAULT_COSTS, RATE_TABLES, Column, Table, study_tables
+from projector.study.columns import DEFAULT_COSTS, OPTIONAL_TABLES, RATE_TABLES, Column, Table, study_tables
 from projector.study.names import TEXT_AT_MOST
 
 _TYPES = {"number": "number", "whole": "integer", "date": "date", "flag": "boolean"}  # others: string
@@ -15,7 +15,7 @@ def table_schemas() -> dict[str, dict[str, Any]]:
     named: dict[str, Table] = dict(study_tables("net_annual_cost"))
     del named["default_costs"]
     named |= {f"default_costs {form}": table for form, table in DEFAULT_COSTS.items()}
-    return {name: _schema(table) for name, table in (named | RATE_TABLES).items()}
+    return {name: _schema(table) for name, table in (named | OPTIONAL_TABLES | RATE_TABLES).items()}
 
 
 def _schema(table: Table) -> dict[str, Any]:

@@ -32,8 +32,8 @@ class Path:
         self.book, self.accretion, self.growth = np.zeros(last + 1), np.zeros(last + 1), np.ones(last + 1)
         self.worst = np.zeros(last + 1, dtype=np.int64)
         statement_path(
-            maturity, last, self.price, self.accrued, self.coupon, value, self.book, self.accretion, self.growth,
-            self.worst,
+            maturity, last, 100.0, self.price, self.accrued, self.coupon, self.coupon, value, self.book, self.accretion,
+            self.growth, self.worst,
         )  # fmt: skip
 
     def yields(self) -> np.ndarray:
@@ -118,7 +118,7 @@ def test_known_with_later_calls_the_next_worst_date_follows() -> None:
 @pytest.mark.parametrize("value", [105.0, 101.3, 100.0, 97.0, 80.0])
 def test_order_the_worst_date_has_the_lowest_yield_of_all(value: float) -> None:
     path = Path(value, CALLS)
-    month, growth = worst_date(0, TEN_YEARS, path.price, path.accrued, path.coupon, value)
+    month, growth = worst_date(0, TEN_YEARS, 100.0, path.price, path.accrued, path.coupon, value)
     each = {m: growth_to(0, m, k, path.coupon, value) for m, k in (CALLS | {TEN_YEARS: 100.0}).items()}
     lowest = min(each.values())
     assert growth == pytest.approx(lowest, abs=1e-12)

@@ -17,7 +17,9 @@ from projector.bonds.calibration import HIGHEST, PriceToday, calibrate
 from projector.bonds.call_rules import Opportunity, OptimalWithCost
 from projector.bonds.decisions import DecisionPass, DecisionRows, unit_key
 from projector.bonds.exercise.model import ShortRateModel
+from projector.bonds.exercise.path_kernels import Dates
 from projector.bonds.exercise.plain import plain_values
+from projector.bonds.exercise.settle_kernels import NEVER_PUT
 from projector.bonds.exercise.step_operator import GRID_FINE, GRID_FINER, GRID_HALF_YEAR
 from projector.bonds.mapped import MappedBonds
 from projector.bonds.solving import ExerciseModel, Jobs, MonthSolver, production_grid
@@ -39,7 +41,7 @@ def bonds() -> MappedBonds:
     last = 60
     coupon, accrued = np.zeros((4, last + 1)), np.zeros((4, last + 1))
     price = np.full((4, last + 1), np.inf)
-    flow = np.zeros((4, last + 1))
+    principal, outstanding = np.zeros((4, last + 1)), np.ones((4, last + 1))
     for u, (maturity, _, rate, rights) in enumerate(terms):
         for m in range(maturity, 0, -6):
             coupon[u, m] = rate / 2.0
@@ -47,13 +49,15 @@ def bonds() -> MappedBonds:
         accrued[u, :maturity] = rate / 2.0 * ((months - maturity) % 6) / 6.0
         for i, m in enumerate(rights):
             price[u, m] = max(100.0, 102.0 - 0.5 * i) if u == 0 else 100.0
-        flow[u] = coupon[u]
-        flow[u, maturity] += 100.0
+        principal[u, maturity] = 100.0
+        outstanding[u, maturity:] = 0.0
     maturity = np.array([t[0] for t in terms])
     return MappedBonds(
         ids=("A", "B", "C", "D"), ratings=("A",) * 4, maturity=maturity, step=np.array([t[1] for t in terms]),
-        coupon_step=np.full(4, 6), coupon=coupon, accrued=accrued, clean_price=price, flow=flow,
-        dirty_price=price + accrued,
+        coupon_step=np.full(4, 6), coupon=coupon, accrued=accrued, clean_price=price,
+        put_price=np.full((4, last + 1), NEVER_PUT), outstanding=outstanding, principal=principal,
+        redemption=np.full(4, 100.0), double_share=np.zeros((4, last + 1)), call_lag=np.zeros(4, dtype=np.int64),
+        put_lag=np.zeros(4, dtype=np.int64), announced=np.zeros(4, dtype=np.bool_),
     )  # fmt: skip
 
 
@@ -117,14 +121,15 @@ def test_order_what_the_bound_settles_solving_settles_alike():
     assert len(held) > 20
     for row in held.itertuples():
         u, m = int(row.unit), int(row.month)
-        jobs = Jobs(m, int(s.bonds.step[u]), int(s.bonds.step[u]), np.array([u]), np.array([int(row.path)]))
+        step = int(s.bonds.step[u])
+        jobs = Jobs(Dates(m, step, step, 0, 0), np.array([u]), np.array([int(row.path)]))
         value = s.solve(jobs, discounts(m), GRID_FINER, False)[0][0]
         assert value <= row.upper_bound + 1e-6
         assert value < row.bar
         assert row.share == 0.0
 
 
-def no_bound(s: MonthSolver, month: int, step: int, units: np.ndarray, discount: np.ndarray, alive: np.ndarray) -> Any:
+def no_bound(s: MonthSolver, at: Dates, units: np.ndarray, discount: np.ndarray, alive: np.ndarray) -> Any:
     """In place of the deterministic bound: everything alive is solved."""
     return np.where(alive, np.inf, -np.inf)
 
@@ -173,15 +178,23 @@ def test_order_every_row_says_what_its_figures_say():
     assert (off[~monthly & (solved["by"] == 1)] >= 0.005).all()
 
 
+def going_on(decide: DecisionPass, at: Dates, units: np.ndarray, bar: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+    """Issuer's cost of going on on the first path, solved against a bar, and which grid settled it."""
+    sure, no_put = np.full((1, 1), np.inf), np.full((1, 1), -np.inf)
+    discount = discounts(at.month)[:, :1].copy()
+    cost, _, by = decide.continuations(at, units, sure, bar[:, None], no_put, discount)
+    return cost[0], by[0]
+
+
 def test_limit_a_near_tie_is_solved_again_on_finer_grids():
     s = solver()
     month, u = 24, np.array([0])
-    jobs = Jobs(month, 6, 6, u, np.array([0]))
+    jobs = Jobs(Dates(month, 6, 6, 0, 0), u, np.array([0]))
     value = s.solve(jobs, discounts(month), GRID_FINER, False)[0]
     decide = DecisionPass(s, OptimalWithCost(), MONTHS)
     for gap, code in ((0.05, 1), (0.003, 2), (0.00003, 3)):
         for side in (gap, -gap):
-            found, by = decide.continuations(month, 6, u, np.array([0]), value + side, discounts(month))
+            found, by = going_on(decide, jobs.at, u, value + side)
             assert by[0] == code
             assert found[0] == pytest.approx(value[0], abs=0.002)
     coarse, fine, finer = (
@@ -189,16 +202,17 @@ def test_limit_a_near_tie_is_solved_again_on_finer_grids():
     )
     assert len({coarse[0], fine[0], finer[0]}) == 3
     for gap, grid in ((0.05, coarse), (0.003, fine), (0.00003, finer)):
-        found, _ = decide.continuations(month, 6, u, np.array([0]), finer + gap, discounts(month))
+        found, _ = going_on(decide, jobs.at, u, finer + gap)
         assert found[0] == grid[0]  # and by that very grid
 
 
 def test_limit_the_tie_band_of_monthly_grids_is_narrower():
     s, u, p = solver(), np.array([1]), np.array([0])
-    value = s.solve(Jobs(24, 1, 1, u, p), discounts(24), GRID_FINER, False)[0]
+    at = Dates(24, 1, 1, 0, 0)
+    value = s.solve(Jobs(at, u, p), discounts(24), GRID_FINER, False)[0]
     decide = DecisionPass(s, OptimalWithCost(), MONTHS)
     for gap, code in ((0.05, 1), (0.003, 1), (0.001, 2), (0.00003, 3)):
-        assert decide.continuations(24, 1, u, p, value + gap, discounts(24))[1][0] == code
+        assert going_on(decide, at, u, value + gap)[1][0] == code
 
 
 def test_order_a_called_security_is_asked_no_more_and_is_called_once():
@@ -317,9 +331,7 @@ def callable_next_month() -> tuple[MappedBonds, np.ndarray]:
     accrued, clean = b.accrued.copy(), b.clean_price.copy()
     accrued[1] *= 12.0 / 5.5
     clean[1, 1:48] = 100.0
-    flow = coupon.copy()
-    flow[np.arange(4), b.maturity] += 100.0
-    changed = replace(b, coupon=coupon, accrued=accrued, clean_price=clean, flow=flow, dirty_price=clean + accrued)
+    changed = replace(b, coupon=coupon, accrued=accrued, clean_price=clean)
     return changed, np.full(4, 0.02)
 
 
@@ -390,7 +402,7 @@ def test_order_the_key_holds_terms_spreads_rule_model_and_set_and_nothing_of_par
     s, rule = solver(), OptimalWithCost()
     key = unit_key(s, rule, 0, "set", MONTHS)
     assert key == unit_key(solver(), OptimalWithCost(), 0, "set", MONTHS)
-    price = s.bonds.dirty_price.copy()
+    price = s.bonds.clean_price.copy()
     price[0, 24] += 0.01
     others = [
         unit_key(s, rule, 1, "set", MONTHS),
@@ -402,7 +414,7 @@ def test_order_the_key_holds_terms_spreads_rule_model_and_set_and_nothing_of_par
         unit_key(replace(s, model=ExerciseModel(A, SIGMA, 0.6)), rule, 0, "set", MONTHS),
         unit_key(replace(s, spreads=spreads(refunding=0.011)), rule, 0, "set", MONTHS),
         unit_key(replace(s, spreads=spreads(valuation=0.013)), rule, 0, "set", MONTHS),
-        unit_key(replace(s, bonds=replace(s.bonds, dirty_price=price)), rule, 0, "set", MONTHS),
+        unit_key(replace(s, bonds=replace(s.bonds, clean_price=price)), rule, 0, "set", MONTHS),
     ]
     assert key not in others
     assert len(set(others)) == len(others)

@@ -31,7 +31,7 @@ out += [v.hex() for v in monthly_discounts(nodes[0], 14)[:, 0]]
 price = np.full(13, np.inf); price[6] = 101.0
 coupon, accrued = np.zeros(13), np.zeros(13); coupon[[6, 12]] = 2.5; accrued[:12] = 2.5 * (np.arange(12) % 6) / 6
 book, accretion, growth, worst = np.zeros(13), np.zeros(13), np.ones(13), np.zeros(13, dtype=np.int64)
-statement_path(12, 12, price, accrued, coupon, 102.0, book, accretion, growth, worst)
+statement_path(12, 12, 100.0, price, accrued, coupon, coupon, 102.0, book, accretion, growth, worst)
 out += [float(v).hex() for v in (*book, *accretion, *growth)]
 print(" ".join(out))
 """

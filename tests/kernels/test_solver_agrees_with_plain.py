@@ -17,9 +17,11 @@ import projector
 from projector.arithmetic.elementary import exp_array, exp_one, log_one
 from projector.bonds.exercise import plain
 from projector.bonds.exercise.model import ShortRateModel
-from projector.bonds.exercise.path_kernels import run_jobs, straight_values, upper_bounds
+from projector.bonds.exercise.path_kernels import Dates, UnitTables, run_jobs, straight_values, upper_bounds
 from projector.bonds.exercise.plain import plain_straight_value, plain_upper_bound, plain_values
-from projector.bonds.exercise.pricing import Problem, operator_arguments, operator_for, solve
+from projector.bonds.exercise.pricing import Problem, operator_for, operator_tables, solve
+from projector.bonds.exercise.settle_kernels import NEVER_PUT
+from projector.bonds.exercise.solver_kernels import Rights
 from projector.bonds.exercise.step_operator import GRID_FINE, GRID_FINER, GRID_HALF_YEAR, GRID_MONTHLY
 
 EXERCISE = Path(projector.__file__).parent / "bonds" / "exercise"
@@ -185,6 +187,14 @@ def path_tables(rng: np.random.Generator, units: int, months: int) -> tuple[np.n
     return maturity, flow, price
 
 
+CALLS_ONLY = Rights(0, 0, True, False, False, False)
+
+
+def plain_tables(maturity: np.ndarray, flow: np.ndarray, price: np.ndarray) -> UnitTables:
+    """Securities with calls and nothing else."""
+    return UnitTables(maturity, flow, price, np.full(flow.shape, NEVER_PUT), np.ones(flow.shape), np.zeros(flow.shape))
+
+
 def job_problem(
     u: int, p: int, tables: tuple[np.ndarray, ...], dates: tuple[int, int, int], cost: float,
     spreads: tuple[float, float], discount: np.ndarray,
@@ -216,8 +226,9 @@ def test_order_jobs_on_paths_keep_their_bits_alone_and_are_the_solves_of_their_o
 
     def on_paths(jobs: np.ndarray) -> np.ndarray:
         out = np.empty((2, jobs.size))
-        run_jobs(*operator_arguments(op), month, offset, 6, unit[jobs], path[jobs], maturity, flow, price, 0.5,
-                 mine[jobs], theirs[jobs], discount, True, out[0], out[1])  # fmt: skip
+        run_jobs(operator_tables(op), Dates(month, offset, 6, 0, 0), unit[jobs], path[jobs],
+                 plain_tables(maturity, flow, price), 0.5, mine[jobs], theirs[jobs], discount, CALLS_ONLY, out[0],
+                 out[1])  # fmt: skip
         return out
 
     together = on_paths(np.arange(unit.size))
@@ -239,8 +250,9 @@ def test_order_jobs_in_another_order_keep_their_bits():
 
     def run(order: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
         out = np.empty(100), np.empty(100)
-        run_jobs(*operator_arguments(op), 0, 6, 6, unit[order], path[order], maturity, flow, price, 0.5,
-                 np.full(100, 0.01), np.full(100, 0.02), discount, True, *out)  # fmt: skip
+        run_jobs(operator_tables(op), Dates(0, 6, 6, 0, 0), unit[order], path[order],
+                 plain_tables(maturity, flow, price), 0.5, np.full(100, 0.01), np.full(100, 0.02), discount,
+                 CALLS_ONLY, *out)  # fmt: skip
         return out
 
     order = rng.permutation(100)
@@ -255,7 +267,8 @@ def test_order_bounds_and_straight_values_agree_with_plain_sums():
     units, spread, alive = np.arange(12), rng.uniform(0.0, 0.02, 12), np.ones((12, 4), dtype=np.bool_)
     alive[3, 2] = False
     bounds, values = np.empty((12, 4)), np.zeros((12, 4))
-    upper_bounds(0, 6, units, maturity, flow, price, 0.5, spread, discount, alive, bounds)
+    tables = plain_tables(maturity, flow, price)
+    upper_bounds(Dates(0, 6, 6, 0, 0), units, tables, 0.5, spread, discount, alive, bounds)
     straight_values(0, 6, units, maturity, flow, spread, discount, alive, values)
     for u in range(12):
         m = np.arange(1, maturity[u] + 1)
@@ -288,26 +301,43 @@ def test_order_straight_values_between_payments_agree_with_plain_sums(month):
 
 PATHS_CODE = """
 import numpy as np
-from projector.bonds.exercise.path_kernels import run_jobs, straight_values, upper_bounds
-from projector.bonds.exercise.pricing import operator_arguments, operator_for
+from projector.bonds.exercise.path_kernels import (
+    Dates, UnitTables, announced_values, run_jobs, straight_values, upper_bounds,
+)
+from projector.bonds.exercise.pricing import operator_for, operator_tables
+from projector.bonds.exercise.settle_kernels import NEVER_PUT
+from projector.bonds.exercise.solver_kernels import Rights
 from projector.bonds.exercise.step_operator import GRID_HALF_YEAR, GRID_MONTHLY
 out = []
-for month, offset, step, grid in ((0, 6, 6, GRID_HALF_YEAR), (2, 4, 6, GRID_HALF_YEAR), (4, 1, 6, GRID_MONTHLY)):
+rounds = ((0, 6, 6, GRID_HALF_YEAR, 0, 0), (2, 4, 6, GRID_HALF_YEAR, 0, 0), (4, 1, 6, GRID_MONTHLY, 1, 0),
+          (0, 1, 1, GRID_MONTHLY, 2, 1), (0, 5, 6, GRID_HALF_YEAR, 1, 2), (0, 6, 6, GRID_HALF_YEAR, 0, 3))
+for month, offset, step, grid, lag, kind in rounds:
     maturity = np.array([18, 30, 24])
     flow, price = np.zeros((3, 31)), np.full((3, 31), np.inf)
     for u, m in enumerate(maturity):
         flow[u, 6 : m + 1 : 6] = 2.6 + 0.1 * u
         flow[u, m] += 100.0
     price[0, 6:18:6], price[1, 12:30:6] = 100.0, 101.0
+    put, left, double = np.full((3, 31), NEVER_PUT), np.ones((3, 31)), np.zeros((3, 31))
+    if kind in (1, 2):
+        put[0, 12], put[2, 12:24:6] = 98.0, 99.0
+    if kind == 3:
+        double[1, 12:30:6], left[1, 12:] = 0.2, 0.8
+    tables = UnitTables(maturity, flow, price, put, left, double)
+    at = Dates(month, offset - (1 if offset == 1 and step == 6 else 0) or 6, step, lag, lag)
+    rights = Rights(lag // step, lag // step, True, lag > 0, kind in (1, 2), kind == 3)
     discount = np.exp(-np.array([0.03, 0.06])[None, :] * np.arange(31)[:, None] / 12.0)
     unit, path = np.array([0, 0, 1, 1, 2]), np.array([0, 1, 0, 1, 0])
     issuer, holder, bounds, values = np.empty(5), np.empty(5), np.empty((3, 2)), np.zeros((3, 2))
-    run_jobs(*operator_arguments(operator_for(0.03, 0.01, step, offset, 6, grid)), month, offset, step, unit, path,
-             maturity, flow, price, 0.5, np.full(5, 0.01), np.full(5, 0.012), discount, True, issuer, holder)
+    op = operator_tables(operator_for(0.03, 0.01, step, at.offset, 30, grid, lag % step))
+    run_jobs(op, at, unit, path, tables, 0.5, np.full(5, 0.01), np.full(5, 0.012), discount, rights, issuer, holder)
+    settled = np.empty(5)
+    announced_values(month, unit, np.full(5, month + 2), np.full(5, 101.0), flow, np.full(5, 0.01), discount, path,
+                     settled)
     alive, spread = np.array([[True, True], [True, False], [True, True]]), np.full(3, 0.01)
-    upper_bounds(month, offset, np.arange(3), maturity, flow, price, 0.5, spread, discount, alive, bounds)
+    upper_bounds(at, np.arange(3), tables, 0.5, spread, discount, alive, bounds)
     straight_values(month, step, np.arange(3), maturity, flow, spread, discount, alive, values)
-    out += [float(v).hex() for v in (*issuer, *holder, *bounds.ravel(), *values.ravel())]
+    out += [float(v).hex() for v in (*issuer, *holder, *settled, *bounds.ravel(), *values.ravel())]
 print(" ".join(out))
 """
 
@@ -325,7 +355,7 @@ def path_figures(folder: Path, **extra: str) -> str:
 @pytest.mark.long
 def test_order_path_kernels_as_python_and_with_index_checks_give_the_same_bits(tmp_path):
     compiled = path_figures(tmp_path / "compiled")
-    assert len(compiled.split()) == 66
+    assert len(compiled.split()) == 162
     assert path_figures(tmp_path / "python", NUMBA_DISABLE_JIT="1") == compiled
     assert path_figures(tmp_path / "checked", NUMBA_BOUNDSCHECK="1") == compiled
 

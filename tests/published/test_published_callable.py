@@ -19,6 +19,7 @@ from scipy.stats import norm
 
 from projector.bonds.exercise.model import ShortRateModel
 from projector.bonds.exercise.pricing import Problem, operator_for, solve
+from projector.bonds.exercise.settle_kernels import NEVER_PUT
 from projector.bonds.exercise.step_operator import GRID_FINE, GRID_HALF_YEAR, GRID_MONTHLY, GRID_REFERENCE, Grid
 
 VALUES = json.loads(Path(__file__).with_name("callable_values.json").read_text(encoding="utf-8"))
@@ -42,8 +43,8 @@ def grid_of(months: list[int]) -> tuple[int, int]:
 
 def problem_of(case: dict[str, Any], shift: float = 0.0) -> tuple[int, int, Problem]:
     """Step, offset and arrays of one case."""
-    flows, calls = ({int(m): a for m, a in case[name]} for name in ("flows", "calls"))
-    step, offset = grid_of([*flows, *calls])
+    flows, calls, puts = ({int(m): a for m, a in case.get(name, [])} for name in ("flows", "calls", "puts"))
+    step, offset = grid_of([*flows, *calls, *puts])
     n = (max(flows) - offset) // step + 1
     months = np.array([0] + [offset + k * step for k in range(n)])
     years = months / 12.0
@@ -51,7 +52,8 @@ def problem_of(case: dict[str, Any], shift: float = 0.0) -> tuple[int, int, Prob
     ratio = np.append(discount[1:] / discount[:-1], 1.0)[:, None]
     flow = np.array([flows.get(int(m), 0.0) for m in months])[:, None]
     price = np.array([calls.get(int(m), np.inf) for m in months])[:, None]
-    return step, offset, Problem(np.array([n]), ratio, ratio, flow, price, price)
+    put = np.array([puts.get(int(m), NEVER_PUT) for m in months])[:, None] if puts else None
+    return step, offset, Problem(np.array([n]), ratio, ratio, flow, price, price, put)
 
 
 def price_of(case: dict[str, Any], grid: Grid, shift: float = 0.0) -> float:
@@ -83,7 +85,7 @@ def test_known_the_stored_tree_of_a_general_library_is_near(name: str) -> None:
 
 @pytest.mark.parametrize("name", CASES)
 def test_limit_without_rights_the_straight_value_comes_back(name: str) -> None:
-    case = {**CASES[name], "calls": []}
+    case = {**CASES[name], "calls": [], "puts": []}
     assert price_of(case, GRID_HALF_YEAR) == pytest.approx(CASES[name]["straight"], abs=1e-6)
 
 

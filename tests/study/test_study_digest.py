@@ -74,8 +74,6 @@ def test_order_names_of_files_and_unread_columns_do_not_enter(small: Any) -> Non
     (small.folder / "sub").mkdir()
     (small.folder / "lots.csv").rename(small.folder / "sub" / "holdings.csv")
     small.tables.pop("lots")
-    for row in small.tables["call_rights"]:
-        del row["notice_days"]
     for row in small.tables["securities"]:
         row["put_date"] = "none"
     assert _digest(small.replace('"lots.csv"', '"sub/holdings.csv"').write()) == expected

@@ -75,7 +75,7 @@ def test_limit_a_place_that_is_taken_or_not_there_is_refused(tmp_path: Path, nam
 
 def test_pinned_table_schemas_come_from_the_columns() -> None:
     schemas = table_schemas()
-    assert len(schemas) == 12
+    assert len(schemas) == 16
     for schema in schemas.values():
         assert schema["fields"]
         assert schema["missingValues"] == [""]

@@ -9,7 +9,7 @@ from projector.arithmetic.kernels import Floats, Integers, kernel
 
 @kernel
 def step_back_9(
-    lo: int, hi: int, base: int, row: int, lanes: int, band_start: Integers, weights: Floats, growth: Floats,
+    lo: int, hi: int, base: int, row: int, lanes: int, band_start: Integers, weights: Floats, carried: Floats,
     value: Floats, flow: Floats, factor: Floats, out: Floats,
 ) -> None:  # fmt: skip
     """One step of the recursion, band of 9 nodes: out = factor x sum of W (V + flow), all nodes and lanes."""
@@ -18,7 +18,7 @@ def step_back_9(
         r = np.uint64(i - row)
         s = np.uint64(band_start[r] - base) * n
         o = np.uint64(i - base) * n
-        total = growth[np.uint64(1), r]  # the row's weights add up to it
+        total = carried[r]
         w0 = weights[r, np.uint64(0)]
         w1 = weights[r, np.uint64(1)]
         w2 = weights[r, np.uint64(2)]
@@ -45,7 +45,7 @@ def step_back_9(
 
 @kernel
 def step_back_13(
-    lo: int, hi: int, base: int, row: int, lanes: int, band_start: Integers, weights: Floats, growth: Floats,
+    lo: int, hi: int, base: int, row: int, lanes: int, band_start: Integers, weights: Floats, carried: Floats,
     value: Floats, flow: Floats, factor: Floats, out: Floats,
 ) -> None:  # fmt: skip
     """One step of the recursion, band of 13 nodes: out = factor x sum of W (V + flow), all nodes and lanes."""
@@ -54,7 +54,7 @@ def step_back_13(
         r = np.uint64(i - row)
         s = np.uint64(band_start[r] - base) * n
         o = np.uint64(i - base) * n
-        total = growth[np.uint64(1), r]  # the row's weights add up to it
+        total = carried[r]
         w0 = weights[r, np.uint64(0)]
         w1 = weights[r, np.uint64(1)]
         w2 = weights[r, np.uint64(2)]
@@ -89,7 +89,7 @@ def step_back_13(
 
 @kernel
 def step_back_21(
-    lo: int, hi: int, base: int, row: int, lanes: int, band_start: Integers, weights: Floats, growth: Floats,
+    lo: int, hi: int, base: int, row: int, lanes: int, band_start: Integers, weights: Floats, carried: Floats,
     value: Floats, flow: Floats, factor: Floats, out: Floats,
 ) -> None:  # fmt: skip
     """One step of the recursion, band of 21 nodes: out = factor x sum of W (V + flow), all nodes and lanes."""
@@ -98,7 +98,7 @@ def step_back_21(
         r = np.uint64(i - row)
         s = np.uint64(band_start[r] - base) * n
         o = np.uint64(i - base) * n
-        total = growth[np.uint64(1), r]  # the row's weights add up to it
+        total = carried[r]
         w0 = weights[r, np.uint64(0)]
         w1 = weights[r, np.uint64(1)]
         w2 = weights[r, np.uint64(2)]

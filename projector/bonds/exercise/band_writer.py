@@ -23,7 +23,7 @@ FUNCTION = '''
 
 @kernel
 def step_back_{band}(
-    lo: int, hi: int, base: int, row: int, lanes: int, band_start: Integers, weights: Floats, growth: Floats,
+    lo: int, hi: int, base: int, row: int, lanes: int, band_start: Integers, weights: Floats, carried: Floats,
     value: Floats, flow: Floats, factor: Floats, out: Floats,
 ) -> None:  # fmt: skip
     """One step of the recursion, band of {band} nodes: out = factor x sum of W (V + flow), all nodes and lanes."""
@@ -32,7 +32,7 @@ def step_back_{band}(
         r = np.uint64(i - row)
         s = np.uint64(band_start[r] - base) * n
         o = np.uint64(i - base) * n
-        total = growth[np.uint64(1), r]  # the row's weights add up to it
+        total = carried[r]
 {loads}
         for lane in range(n):
             out[o + lane] = factor[lane] * (

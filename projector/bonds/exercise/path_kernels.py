@@ -6,43 +6,102 @@ there is no right). Discounts are one month's P(tau) [tau, path]; spreads are co
 
 from __future__ import annotations
 
+from typing import NamedTuple
+
 import numpy as np
 
 from projector.arithmetic.elementary import exp_one
 from projector.arithmetic.kernels import Flags, Floats, Integers, kernel
-from projector.bonds.exercise.solver_kernels import LANES, solve_lanes
+from projector.bonds.exercise.settle_kernels import NEVER_PUT
+from projector.bonds.exercise.solver_kernels import LANES, LaneTerms, OperatorTables, Rights, solve_lanes
+
+
+class UnitTables(NamedTuple):
+    """Securities on mapped months, [unit, month] per 100 of the par outstanding at month 0.
+
+    price, put     dirty prices paid in a month; inf and -1e18 where no call or put takes effect in it
+    outstanding    share of that par left after the month's scheduled payment
+    double_share   share of the par left that may be retired at par beside the month's sinking payment
+    """
+
+    maturity: Integers
+    flow: Floats
+    price: Floats
+    put: Floats
+    outstanding: Floats
+    double_share: Floats
+
+
+class Dates(NamedTuple):
+    """One month's solves of securities whose decisions fall on the same months. [month]
+
+    offset    from this month to the first decision; then every `step`
+    call_lag  from the decision to call to its payment; put_lag the same of puts
+    """
+
+    month: int
+    offset: int
+    step: int
+    call_lag: int
+    put_lag: int
 
 
 @kernel
 def upper_bounds(
-    month: int, step: int, units: Integers, maturity: Integers, flow: Floats, price: Floats, cost: float,
-    spread: Floats, discount: Floats, alive: Flags, out: Floats,
+    at: Dates, units: Integers, tables: UnitTables, cost: float, spread: Floats, discount: Floats, alive: Flags,
+    out: Floats,
 ) -> None:  # fmt: skip
     """Cost of the best policy fixed in advance, an upper bound of the issuer's continuation. [per 100], [unit, path]
 
-    The least over later rights k of the payments up to k and the bar at k, and over running to maturity.
-    Paths where the security is gone are given -inf.
+    The least over calls that can still be decided later, of the payments up to it and the bar, and over running to
+    maturity; inf where the holder may put, since his answer to the policy is not known. -inf where it is gone.
     """
     paths = discount.shape[1]
+    flow, price = tables.flow, tables.price
+    pace = at.step if at.call_lag % at.step == 0 else 1
     for n in range(units.shape[0]):
         u = units[n]
-        decay = exp_one(-spread[n] * step / 12.0)
+        decay = exp_one(-spread[n] * pace / 12.0)
+        maturity = tables.maturity[u]
+        puttable = False
+        for t in range(at.month + 1, maturity):
+            puttable = puttable or tables.put[u, t] > NEVER_PUT
         for p in range(paths):
             if not alive[n, p]:
                 out[n, p] = -np.inf
                 continue
+            if puttable:
+                out[n, p] = np.inf
+                continue
             paid = 0.0
             best = np.inf
             factor = 1.0
-            for t in range(month + step, maturity[u] + 1, step):
+            for t in range(at.month + pace, maturity + 1, pace):
                 factor = factor * decay
-                d = discount[t - month, p] * factor
+                d = discount[t - at.month, p] * factor
                 paid += flow[u, t] * d
-                if t < maturity[u] and price[u, t] < np.inf:
-                    stop = paid + (price[u, t] + cost) * d
+                if t < maturity and price[u, t] < np.inf and t - at.call_lag > at.month:
+                    stop = paid + (price[u, t] + cost * tables.outstanding[u, t]) * d
                     if stop < best:
                         best = stop
             out[n, p] = paid if paid < best else best
+
+
+@kernel
+def announced_values(
+    month: int, units: Integers, effect: Integers, amount: Floats, flow: Floats, spread: Floats, discount: Floats,
+    path: Integers, out: Floats,
+) -> None:  # fmt: skip
+    """Value of what is settled: payments after `month` up to month `effect` and `amount` on it. [per 100], (job,)"""
+    for n in range(units.shape[0]):
+        total = 0.0
+        for t in range(month + 1, effect[n] + 1):
+            due = flow[units[n], t] + (amount[n] if t == effect[n] else 0.0)
+            if due != 0.0:
+                total += due * discount[t - month, path[n]] * exp_one(-spread[n] * (t - month) / 12.0)
+        if effect[n] == month:
+            total = amount[n]
+        out[n] = total
 
 
 @kernel
@@ -72,15 +131,16 @@ def straight_values(
 
 
 @kernel
-def first_and_last(
-    month: int, offset: int, step: int, maturity: int, unit: int, price: Floats
-) -> tuple[int, int]:  # fmt: skip
-    """First and last step with a right before maturity, 0 and 0 where there is none."""
+def first_and_last(at: Dates, unit: int, tables: UnitTables) -> tuple[int, int]:
+    """First and last step at which a right can be decided, 0 and 0 where there is none."""
     first = 0
     last = 0
     k = 1
-    for t in range(month + offset, maturity, step):
-        if price[unit, t] < np.inf:
+    maturity = tables.maturity[unit]
+    for d in range(at.month + at.offset, maturity, at.step):
+        live = d + at.call_lag < maturity and tables.price[unit, d + at.call_lag] < np.inf
+        live = live or (d + at.put_lag < maturity and tables.put[unit, d + at.put_lag] > NEVER_PUT)
+        if live or tables.double_share[unit, d] > 0.0:
             first = k if first == 0 else first
             last = k
         k += 1
@@ -89,27 +149,35 @@ def first_and_last(
 
 @kernel
 def fill_lead(
-    lane: int, month: int, offset: int, step: int, first: int, maturity: int, unit: int, path: int, flow: Floats,
-    issuer_spread: float, holder_spread: float, discount: Floats, lead: Floats,
+    lane: int, at: Dates, lag: int, first: int, unit: int, path: int, tables: UnitTables, issuer_spread: float,
+    holder_spread: float, discount: Floats, lead: Floats,
 ) -> None:  # fmt: skip
     """Discount to the first right, value of the payments up to it, and of all of them, for both spreads.
 
+    lag    months from each step's date to its payment
     first  step of the first right, 0: none, and only the last of the three is meant
     """
-    issuer, decay = exp_one(-issuer_spread * offset / 12.0), exp_one(-issuer_spread * step / 12.0)
-    holder, held = exp_one(-holder_spread * offset / 12.0), exp_one(-holder_spread * step / 12.0)
-    stop = month + offset + (first - 1) * step
+    ahead = at.offset + lag - (at.step if at.offset + lag > at.step else 0)  # months to the first payment
+    issuer, decay = exp_one(-issuer_spread * ahead / 12.0), exp_one(-issuer_spread * at.step / 12.0)
+    holder, held = exp_one(-holder_spread * ahead / 12.0), exp_one(-holder_spread * at.step / 12.0)
+    stop = at.month + at.offset + (first - 1) * at.step
     paid, kept = 0.0, 0.0
-    for t in range(month + offset, maturity + 1, step):
-        amount = flow[unit, t]
+    if first > 0 and lag > 0:
+        here = discount[stop - at.month, path]
+        lead[0, lane] = here * exp_one(-issuer_spread * (stop - at.month) / 12.0)
+        lead[3, lane] = here * exp_one(-holder_spread * (stop - at.month) / 12.0)
+        lead[1, lane], lead[4, lane] = 0.0, 0.0
+    for t in range(at.month + ahead, tables.maturity[unit] + 1, at.step):
+        amount = tables.flow[unit, t]
         if amount != 0.0:
-            value = amount * discount[t - month, path]
+            value = amount * discount[t - at.month, path]
             paid += value * issuer
             kept += value * holder
         if t == stop:
-            here = discount[t - month, path]
-            lead[0, lane], lead[1, lane] = here * issuer, paid
-            lead[3, lane], lead[4, lane] = here * holder, kept
+            here = discount[t - at.month, path]
+            lead[0, lane], lead[3, lane] = here * issuer, here * holder
+        if t <= stop:
+            lead[1, lane], lead[4, lane] = paid, kept
         issuer = issuer * decay
         holder = holder * held
     lead[2, lane], lead[5, lane] = paid, kept
@@ -117,41 +185,62 @@ def fill_lead(
 
 @kernel
 def fill_lane(
-    lane: int, month: int, offset: int, step: int, begin: int, steps: int, maturity: int, unit: int, path: int,
-    flow: Floats, price: Floats, cost: float, issuer_spread: float, holder_spread: float, discount: Floats,
-    ratio: Floats, holder_ratio: Floats, flows: Floats, prices: Floats, bars: Floats,
+    lane: int, at: Dates, lag: int, begin: int, steps: int, unit: int, path: int, tables: UnitTables, cost: float,
+    issuer_spread: float, holder_spread: float, discount: Floats, terms: LaneTerms,
 ) -> None:  # fmt: skip
     """Lays one job out in its lane from step `begin` on; a lane's bits do not depend on its neighbours' rights."""
-    decay, held = exp_one(-issuer_spread * step / 12.0), exp_one(-holder_spread * step / 12.0)
-    t = month + offset + (begin - 1) * step
-    before = discount[t - month, path] if begin > 0 else 1.0
+    decay, held = exp_one(-issuer_spread * at.step / 12.0), exp_one(-holder_spread * at.step / 12.0)
+    late, held_late = exp_one(-issuer_spread * lag / 12.0), exp_one(-holder_spread * lag / 12.0)
+    before = discount[at.offset + (begin - 1) * at.step, path] if begin > 0 else 1.0
+    maturity = tables.maturity[unit]
     for k in range(begin + 1, steps + 1):
-        t = month + offset + (k - 1) * step
-        here = discount[t - month, path]
+        d = at.month + at.offset + (k - 1) * at.step
+        here = discount[d - at.month, path]
         n = k - begin
-        ratio[n - 1, lane] = here / before * decay
-        holder_ratio[n - 1, lane] = here / before * held
+        terms.ratio[n - 1, lane] = here / before * decay
+        terms.holder_ratio[n - 1, lane] = here / before * held
         before = here
-        flows[n, lane] = flow[unit, t]
-        if t < maturity and price[unit, t] < np.inf:
-            prices[n, lane] = price[unit, t]
-            bars[n, lane] = price[unit, t] + cost
+        terms.flow[n, lane] = tables.flow[unit, d + lag]
+        if lag > 0:
+            terms.paid_ratio[n, lane] = discount[d + lag - at.month, path] / here * late
+            terms.paid_holder_ratio[n, lane] = discount[d + lag - at.month, path] / here * held_late
+        effect = d + at.call_lag
+        if effect < maturity and tables.price[unit, effect] < np.inf:
+            terms.price[n, lane] = tables.price[unit, effect]
+            terms.bar[n, lane] = tables.price[unit, effect] + cost * tables.outstanding[unit, effect]
+        effect = d + at.put_lag
+        if terms.put.shape[0] > 0 and effect < maturity:
+            terms.put[n, lane] = tables.put[unit, effect]
+        if terms.share.shape[0] > 0 and d < maturity and tables.double_share[unit, d] > 0.0:
+            terms.share[n, lane] = tables.double_share[unit, d]
+            terms.double_price[n, lane] = 100.0 * tables.outstanding[unit, d]
+            terms.double_bar[n, lane] = (100.0 + cost) * tables.outstanding[unit, d]
+
+
+@kernel
+def lane_terms(rows: int, lag: int, rights: Rights) -> LaneTerms:
+    """Tables of sixteen lanes with no right in them."""
+    late, put, share = rows if lag > 0 else 0, rows if rights.puts else 0, rows if rights.doubles else 0
+    return LaneTerms(
+        np.ones((rows, LANES)), np.ones((rows, LANES)), np.ones((late, LANES)), np.ones((late, LANES)),
+        np.zeros((rows, LANES)), np.full((rows, LANES), np.inf), np.full((rows, LANES), np.inf),
+        np.full((put, LANES), NEVER_PUT), np.zeros((share, LANES)), np.full((share, LANES), np.inf),
+        np.full((share, LANES), np.inf),
+    )  # fmt: skip
 
 
 @kernel
 def run_jobs(
-    half_band: int, lo: Integers, hi: Integers, conv: Floats, row: int, band_start: Integers, weights: Floats,
-    growth: Floats, straight_conv: Floats, first_weights: Floats, first_local: Flags, local_x: Floats,
-    local_weights: Floats, month: int, offset: int, step: int, job_unit: Integers, job_path: Integers,
-    maturity: Integers, flow: Floats, price: Floats, cost: float, issuer_spread: Floats, holder_spread: Floats,
-    discount: Floats, both: bool, issuer_cost: Floats, holder_value: Floats,
+    op: OperatorTables, at: Dates, job_unit: Integers, job_path: Integers, tables: UnitTables, cost: float,
+    issuer_spread: Floats, holder_spread: Floats, discount: Floats, rights: Rights, issuer_cost: Floats,
+    holder_value: Floats,
 ) -> None:  # fmt: skip
-    """Solves every job (unit, path) on that path's own curve of `month`, sixteen at a time across units.
+    """Solves every job (unit, path) on that path's own curve of the month, sixteen at a time across units.
 
     issuer_spread, holder_spread  [job]
-    offset                        months to the first step of these units' grids
     """
     jobs = job_unit.shape[0]
+    lag = at.call_lag % at.step if rights.notice else (at.put_lag % at.step if rights.puts else 0)
     for start in range(0, jobs, LANES):
         count = min(LANES, jobs - start)
         steps = np.empty(LANES, dtype=np.int64)
@@ -161,32 +250,23 @@ def run_jobs(
         begin = 1 << 30
         for lane in range(LANES):
             u = job_unit[start + min(lane, count - 1)]  # a short batch is filled with copies of its last job
-            steps[lane] = (maturity[u] - month - offset) // step + 1
-            first[lane], last[lane] = first_and_last(month, offset, step, maturity[u], u, price)
+            steps[lane] = (tables.maturity[u] - lag - at.month - at.offset) // at.step + 1
+            first[lane], last[lane] = first_and_last(at, u, tables)
             top = max(top, steps[lane])
             begin = min(begin, max(first[lane] if first[lane] > 0 else steps[lane], 1) - 1)
-        rows = top - begin + 1
-        ratio, holder_ratio = np.ones((rows, LANES)), np.ones((rows, LANES))
-        flows, lead = np.zeros((rows, LANES)), np.empty((6, LANES))
-        prices, bars = np.full((rows, LANES), np.inf), np.full((rows, LANES), np.inf)
+        terms = lane_terms(top - begin + 1, lag, rights)
+        lead = np.empty((6, LANES))
         for lane in range(LANES):
             job = start + min(lane, count - 1)
             u, p = job_unit[job], job_path[job]
-            fill_lead(
-                lane, month, offset, step, first[lane], maturity[u], u, p, flow, issuer_spread[job],
-                holder_spread[job], discount, lead,
-            )  # fmt: skip
+            fill_lead(lane, at, lag, first[lane], u, p, tables, issuer_spread[job], holder_spread[job], discount, lead)
             fill_lane(
-                lane, month, offset, step, begin, steps[lane], maturity[u], u, p, flow, price, cost,
-                issuer_spread[job], holder_spread[job], discount, ratio, holder_ratio, flows, prices, bars,
+                lane, at, lag, begin, steps[lane], u, p, tables, cost, issuer_spread[job], holder_spread[job],
+                discount, terms,
             )  # fmt: skip
         cost_out = np.empty(LANES)
         value_out = np.empty(LANES)
-        solve_lanes(
-            half_band, lo, hi, conv, row, band_start, weights, growth, straight_conv, first_weights, first_local,
-            local_x, local_weights, begin, lead, steps, first, last, ratio, holder_ratio, flows, prices, bars, both,
-            cost_out, value_out,
-        )  # fmt: skip
+        solve_lanes(op, begin, lead, steps, first, last, terms, rights, cost_out, value_out)
         for lane in range(count):
             issuer_cost[start + lane] = cost_out[lane]
             holder_value[start + lane] = value_out[lane]

@@ -1,46 +1,124 @@
 """The optimal-stopping recursion, sixteen solves side by side (C4). Plain twin: `plain`.
 
 Lanes are independent: no sum runs across them, and a lane's numbers never depend on its neighbours. Arrays are
-[.., lane] with the lane contiguous. Steps are counted from 1; step 0 is the date of the solve.
+[.., lane] with the lane contiguous. Steps are dates of decision, counted from 1; step 0 is the date of the solve.
+Payments fall on them, or the same time after each where rights take notice (`lag`).
 """
 
 from __future__ import annotations
 
+from typing import NamedTuple
+
 import numpy as np
 
-from projector.arithmetic.kernels import Flags, Floats, Integers, inlined, kernel
+from projector.arithmetic.kernels import Flags, Floats, Integers, kernel
 from projector.bonds.exercise.band_kernels import step_back_9, step_back_13, step_back_21
-from projector.bonds.exercise.kink_kernels import crossing, kink_corrections, quintic
+from projector.bonds.exercise.settle_kernels import (
+    NEVER_PUT,
+    Space,
+    StepTerms,
+    interpolate_local,
+    settle,
+)
 
 LANES = 16
 GHOSTS = 3
 MARGIN = 4  # rows beyond the ghosts
 
 
+class OperatorTables(NamedTuple):
+    """The tables of `step_operator.Operator`, as the kernels take them."""
+
+    half_band: int
+    lag: bool  # payments fall after their step's date
+    lo: Integers
+    hi: Integers
+    conv: Floats
+    row: int
+    band_start: Integers
+    weights: Floats
+    growth: Floats
+    straight_conv: Floats
+    first_weights: Floats
+    first_local: Flags
+    local_x: Floats
+    local_weights: Floats
+
+
+class LaneTerms(NamedTuple):
+    """Up to sixteen securities per 100 of par, [k - begin, lane] by step of decision; unused tables have no rows.
+
+    ratio           P0(t_(k+1)) / P0(t_k) on the issuer's curve; holder_ratio the same with the valuation spread
+    paid_ratio      P0(payment k) / P0(t_k), and with the valuation spread (only with a lag)
+    flow            promised payment of step k, redemption included
+    price, bar      dirty price of a call decided at k, and with the issuer's cost; inf: no right is live
+    put             dirty price of a put decided at k; -1e18: none
+    share           share retired where a sinking payment is doubled, 0: none; its price, and with the cost
+    """
+
+    ratio: Floats
+    holder_ratio: Floats
+    paid_ratio: Floats
+    paid_holder_ratio: Floats
+    flow: Floats
+    price: Floats
+    bar: Floats
+    put: Floats
+    share: Floats
+    double_price: Floats
+    double_bar: Floats
+
+
+class Rights(NamedTuple):
+    """What a batch holds beside plain calls: steps from decision to effect of calls and of puts, and what to run.
+
+    both     also the holder's recursion (else his value is the issuer's cost); always with puts
+    notice   calls take effect after their decision
+    """
+
+    call_steps: int
+    put_steps: int
+    both: bool
+    notice: bool
+    puts: bool
+    doubles: bool
+
+
 @kernel
-def straight_columns(
-    k: int, begin: int, lane: int, lanes: int, steps: int, flow: Floats, ratio: Floats, straight_conv: Floats,
-    growth: Floats, row: int, lo: int, hi: int, base: int, column: Floats,
+def payment_columns(
+    op: OperatorTables, k: int, stop: int, final: float, begin: int, lane: int, lanes: int, flow: Floats,
+    ratio: Floats, paid_ratio: Floats, lo: int, hi: int, base: int, column: Floats,
 ) -> None:  # fmt: skip
-    """Value at step k of the payments after it, on every node of one lane: closed form, no right is left."""
+    """Value at step k, on every node of one lane, of the payments after it up to that of step `stop`, in closed form.
+
+    final  paid on top of the last; at once where there is no lag and `stop` is k
+    """
     n, at = np.uint64(lanes), np.uint64((lo - base) * lanes + lane)
-    nodes, low = np.uint64(hi + 1 - lo), np.uint64(lo - row)
+    nodes, low = np.uint64(hi + 1 - lo), np.uint64(lo - op.row)
+    now = final if stop == k and not op.lag else 0.0
     for i in range(nodes):
-        column[at + i * n] = 0.0
+        column[at + i * n] = now
     forward = 1.0
-    for j in range(k + 1, steps + 1):
-        forward = forward * ratio[j - 1 - begin, lane]
-        weight = flow[j - begin, lane] * forward * straight_conv[k, j - k]
+    for j in range(k, stop + 1):
+        if j > k:
+            forward = forward * ratio[j - 1 - begin, lane]
+        elif not op.lag:
+            continue
+        amount = flow[j - begin, lane]
+        if j == stop:
+            amount += final
+        here = forward * paid_ratio[j - begin, lane] if op.lag else forward
+        weight = amount * here * op.straight_conv[k, j - k]
         if weight != 0.0:
             ahead = np.uint64(j - k)
             for i in range(nodes):
-                column[at + i * n] += weight * growth[ahead, low + i]
+                column[at + i * n] += weight * op.growth[ahead, low + i]
 
 
 @kernel
 def step_back_any(
     lo: int, hi: int, base: int, row: int, lanes: int, band: int, band_start: Integers, weights: Floats,
-    growth: Floats, value: Floats, flow: Floats, factor: Floats, out: Floats,
+    carried: Floats, value: Floats, flow: Floats, factor: Floats, out: Floats,
 ) -> None:  # fmt: skip
     """One step of the recursion with any band: the same sum in the same order as the unrolled forms."""
     n = np.uint64(lanes)
@@ -52,174 +130,27 @@ def step_back_any(
             total = weights[r, np.uint64(0)] * value[s + lane]
             for j in range(np.uint64(1), np.uint64(band)):
                 total += weights[r, j] * value[s + lane + j * n]
-            out[o + lane] = factor[lane] * (total + growth[np.uint64(1), r] * flow[lane])
+            out[o + lane] = factor[lane] * (total + carried[r] * flow[lane])
 
 
 @kernel
 def step_back(
     lo: int, hi: int, base: int, row: int, lanes: int, band: int, band_start: Integers, weights: Floats,
-    growth: Floats, value: Floats, flow: Floats, factor: Floats, out: Floats,
+    carried: Floats, value: Floats, flow: Floats, factor: Floats, out: Floats,
 ) -> None:  # fmt: skip
-    """One step of the recursion by the form for its band width; flow [lane] is paid at the step come from."""
+    """One step of the recursion by the form for its band width.
+
+    carried [row] x flow [lane] is what a payment on the way adds before `factor`: e^(-G x) of its time ahead, for one
+    at the step come from the sum of the row's weights.
+    """
     if lanes == LANES and band == 9:
-        step_back_9(lo, hi, base, row, lanes, band_start, weights, growth, value, flow, factor, out)
+        step_back_9(lo, hi, base, row, lanes, band_start, weights, carried, value, flow, factor, out)
     elif lanes == LANES and band == 13:
-        step_back_13(lo, hi, base, row, lanes, band_start, weights, growth, value, flow, factor, out)
+        step_back_13(lo, hi, base, row, lanes, band_start, weights, carried, value, flow, factor, out)
     elif lanes == LANES and band == 21:
-        step_back_21(lo, hi, base, row, lanes, band_start, weights, growth, value, flow, factor, out)
+        step_back_21(lo, hi, base, row, lanes, band_start, weights, carried, value, flow, factor, out)
     else:
-        step_back_any(lo, hi, base, row, lanes, band, band_start, weights, growth, value, flow, factor, out)
-
-
-@kernel
-def extend(
-    lo: int, hi: int, base: int, lanes: int, reach: int, flat_low: Floats, flat_high: Floats, value: Floats,
-    work: Floats,
-) -> None:  # fmt: skip
-    """Ghost nodes beyond the range: flat where the edge node is exercised (exact there), else geometric.
-
-    work  [4 x 16] the two edge values and the two ratios of every lane
-    """
-    n = np.uint64(lanes)
-    low, high = np.uint64(lo - base) * n, np.uint64(hi - base) * n
-    for lane in range(n):
-        a, b = value[low + lane], value[low + n + lane]
-        y, z = value[high - n + lane], value[high + lane]
-        up = a / (b if b > 0.0 else a)
-        down = z / (y if y > 0.0 else z)
-        work[lane] = up + flat_low[lane] * (1.0 - up)
-        work[np.uint64(16) + lane] = down + flat_high[lane] * (1.0 - down)
-    for g in range(np.uint64(1), np.uint64(reach + 1)):
-        for lane in range(n):
-            value[low - g * n + lane] = value[low - g * n + n + lane] * work[lane]
-    for g in range(np.uint64(1), np.uint64(reach + 1)):
-        for lane in range(n):
-            value[high + g * n + lane] = value[high + g * n - n + lane] * work[np.uint64(16) + lane]
-
-
-@kernel
-def exercise(
-    lo: int, hi: int, base: int, lanes: int, bar: Floats, price: Floats, both: bool, c: Floats, h: Floats, v: Floats,
-    w: Floats, kink: Integers, flat_low: Floats, flat_high: Floats,
-) -> None:  # fmt: skip
-    """V = min(C, bar) and the holder's value on the issuer's exercise set, every node and lane; finds the kinks.
-
-    kink[lane] is the last exercised node, or lo - 1 when none is. Ties call. flat_* are 1 where the edge is exercised.
-    """
-    n = np.uint64(lanes)
-    for lane in range(n):
-        flat_low[lane] = 0.0
-    for i in range(np.uint64(lo - base), np.uint64(hi + 1 - base)):
-        at = i * n
-        for lane in range(n):
-            x = c[at + lane]
-            called = x >= bar[lane]
-            v[at + lane] = bar[lane] if called else x
-            flat_low[lane] += 1.0 if called else 0.0
-        if both:
-            for lane in range(n):
-                paid, kept = price[lane], h[at + lane]  # both are read, so that lanes run side by side
-                w[at + lane] = paid if c[at + lane] >= bar[lane] else kept
-    for lane in range(n):
-        count = flat_low[lane]  # C decreases in x: exercised below the kink, kept above
-        kink[lane] = lo - 1 + int(count)
-        flat_low[lane] = 1.0 if count > 0.0 else 0.0
-        flat_high[lane] = 1.0 if count > hi - lo else 0.0
-
-
-@inlined
-def gather_six(lane: int, start: int, lanes: int, source: Floats, first: int, work: Floats) -> None:
-    """Six values around a kink, from place `start` of the source, into rows first .. first + 5 of the work space."""
-    n, o = np.uint64(start), np.uint64(first * 16 + lane)
-    for _ in range(6):
-        work[o] = source[n]
-        n += np.uint64(lanes)
-        o += np.uint64(16)
-
-
-@kernel
-def lane_corrections(lanes: int, first: int, target: Floats, holder: bool, work: Floats) -> None:
-    """Corrections of every lane from its six gathered values, straight-line so that lanes run side by side.
-
-    The issuer's kink sets theta (row 19); the holder's values jump there by C_h - price.
-    """
-    f = np.uint64(first * 16)
-    if not holder:
-        for lane in range(np.uint64(lanes)):
-            b0, b1, b2, b3, b4, b5 = quintic(
-                work[f + lane], work[f + np.uint64(16) + lane], work[f + np.uint64(32) + lane],
-                work[f + np.uint64(48) + lane], work[f + np.uint64(64) + lane], work[f + np.uint64(80) + lane],
-            )  # fmt: skip
-            work[np.uint64(304) + lane] = crossing(b0, b1, b2, b3, b4, b5, target[lane])
-    jumps = 1.0 if holder else 0.0
-    for lane in range(np.uint64(lanes)):
-        b0, b1, b2, b3, b4, b5 = quintic(
-            work[f + lane], work[f + np.uint64(16) + lane], work[f + np.uint64(32) + lane],
-            work[f + np.uint64(48) + lane], work[f + np.uint64(64) + lane], work[f + np.uint64(80) + lane],
-        )  # fmt: skip
-        t = work[np.uint64(304) + lane]
-        jump = jumps * (b0 + t * (b1 + t * (b2 + t * (b3 + t * (b4 + t * b5)))) - target[lane])
-        d0, d1, d2, d3, d4, d5 = kink_corrections(t, b1, b2, b3, b4, b5, jump)
-        work[np.uint64(192) + lane] = d0
-        work[np.uint64(208) + lane] = d1
-        work[np.uint64(224) + lane] = d2
-        work[np.uint64(240) + lane] = d3
-        work[np.uint64(256) + lane] = d4
-        work[np.uint64(272) + lane] = d5
-
-
-@kernel
-def scatter_six(lanes: int, base: int, kink: Integers, work: Floats, value: Floats) -> None:
-    """Adds the corrections at the six nodes of every lane whose kink is inside the range (row 18)."""
-    for lane in range(lanes):
-        if work[18 * 16 + lane] > 0.0:
-            n, o = np.uint64((kink[lane] - 2 - base) * lanes + lane), np.uint64(192 + lane)
-            for _ in range(6):
-                value[n] += work[o]
-                n += np.uint64(lanes)
-                o += np.uint64(16)
-
-
-@kernel
-def correct(
-    lo: int, hi: int, base: int, lanes: int, bar: Floats, price: Floats, both: bool, c: Floats, h: Floats,
-    kink: Integers, v: Floats, w: Floats, work: Floats,
-) -> None:  # fmt: skip
-    """Kink corrections on every lane whose kink has its six nodes in the range."""
-    any_kink = False
-    for lane in range(lanes):
-        i = kink[lane]
-        inside = i - 2 >= lo and i + 3 <= hi
-        any_kink = any_kink or inside
-        work[18 * 16 + lane] = 1.0 if inside else 0.0
-        start = ((i if inside else lo + 2) - 2 - base) * lanes + lane
-        gather_six(lane, start, lanes, c, 0, work)
-        if both:
-            gather_six(lane, start, lanes, h, 6, work)
-    if not any_kink:
-        return
-    lane_corrections(lanes, 0, bar, False, work)
-    scatter_six(lanes, base, kink, work, v)
-    if both:
-        lane_corrections(lanes, 6, price, True, work)
-        scatter_six(lanes, base, kink, work, w)
-
-
-@kernel
-def interpolate_local(lo: int, hi: int, base: int, lanes: int, local_x: Floats, source: Floats, local: Floats) -> None:
-    """Values [point, lane] on the local grid by quintic interpolation between nodes."""
-    n = np.uint64(lanes)
-    for q in range(local_x.shape[0]):
-        i = min(max(int(np.floor(local_x[q])), lo + 2), hi - 3)
-        t = local_x[q] - i
-        at, out = np.uint64(i - 2 - base) * n, np.uint64(q) * n
-        for lane in range(n):
-            s = at + lane
-            b0, b1, b2, b3, b4, b5 = quintic(
-                source[s], source[s + n], source[s + np.uint64(2) * n], source[s + np.uint64(3) * n],
-                source[s + np.uint64(4) * n], source[s + np.uint64(5) * n],
-            )  # fmt: skip
-            local[out + lane] = b0 + t * (b1 + t * (b2 + t * (b3 + t * (b4 + t * b5))))
+        step_back_any(lo, hi, base, row, lanes, band, band_start, weights, carried, value, flow, factor, out)
 
 
 @kernel
@@ -236,7 +167,7 @@ def weighted_sum(begin: int, lanes: int, weights: Floats, count: int, value: Flo
 
 @kernel
 def leads(steps: Integers, first: Integers, ratio: Floats, holder_ratio: Floats, flow: Floats, lead: Floats) -> None:
-    """Fills `lead` of `solve_lanes` from tables that begin at step 0."""
+    """Fills `lead` of `solve_lanes` from tables that begin at step 0, payments on their steps."""
     for lane in range(steps.shape[0]):
         for row in range(0, 6, 3):
             discount, paid = 1.0, 0.0
@@ -249,106 +180,191 @@ def leads(steps: Integers, first: Integers, ratio: Floats, holder_ratio: Floats,
 
 
 @kernel
+def space(size: int, lanes: int, rights: Rights) -> Space:
+    """Room for `size` nodes."""
+    n = size * lanes
+    other, due, put = n * rights.both, n * rights.notice, n * rights.puts
+    return Space(
+        np.ones(n), np.ones(other), np.ones(n), np.ones(other), np.zeros(due), np.zeros(due), np.ones(put),
+        np.ones(put), np.ones(put), np.ones(put), np.zeros(lanes, dtype=np.int64), np.zeros(lanes, dtype=np.int64),
+        np.zeros(lanes, dtype=np.int64), np.zeros(lanes, dtype=np.bool_),
+    )  # fmt: skip
+
+
+@kernel
+def step_terms(
+    k: int, begin: int, first: Integers, last: Integers, terms: LaneTerms, rights: Rights, out: StepTerms
+) -> None:  # fmt: skip
+    """Fills in what each lane's rights are at step k. With notice the differences are settled against nothing."""
+    for lane in range(first.shape[0]):
+        live = first[lane] > 0 and k >= first[lane] and k <= last[lane]
+        bar = terms.bar[k - begin, lane] if live else np.inf
+        price = terms.price[k - begin, lane] if live else np.inf
+        if rights.notice:
+            bar, price = (0.0 if bar < np.inf else np.inf), 0.0
+        out.bar[lane], out.price[lane] = bar, price
+        if rights.doubles:
+            share = terms.share[k - begin, lane] if live else 0.0
+            out.share[lane] = share
+            out.double_bar[lane] = terms.double_bar[k - begin, lane] if live else np.inf
+            out.double_price[lane] = terms.double_price[k - begin, lane] if live else np.inf
+            out.call_scale[lane] = 1.0 - share
+            if share > 0.0 and bar < np.inf:  # the call of all, as a threshold of going on before the doubling
+                out.bar[lane] = (bar - share * out.double_bar[lane]) / (1.0 - share)
+                out.price[lane] = (price - share * out.double_price[lane]) / (1.0 - share)
+
+
+@kernel
+def right_columns(
+    op: OperatorTables, k: int, begin: int, first: Integers, last: Integers, terms: LaneTerms, rights: Rights, lo: int,
+    hi: int, base: int, s: Space,
+) -> None:  # fmt: skip
+    """What a call or a put decided at step k is worth at every node: payments until it takes effect, and its price."""
+    lanes = first.shape[0]
+    for lane in range(lanes):
+        live = first[lane] > 0 and k >= first[lane] and k <= last[lane]
+        if rights.notice:
+            bar = terms.bar[k - begin, lane] if live else np.inf
+            if bar < np.inf:
+                stop = k + rights.call_steps
+                payment_columns(op, k, stop, bar, begin, lane, lanes, terms.flow, terms.ratio, terms.paid_ratio, lo, hi,
+                                base, s.e)  # fmt: skip
+                if rights.both:
+                    payment_columns(op, k, stop, terms.price[k - begin, lane], begin, lane, lanes, terms.flow,
+                                    terms.holder_ratio, terms.paid_holder_ratio, lo, hi, base, s.eh)  # fmt: skip
+            else:
+                for i in range(lo - base, hi + 1 - base):
+                    s.e[i * lanes + lane] = 0.0
+                    if rights.both:
+                        s.eh[i * lanes + lane] = 0.0
+        if rights.puts:
+            price = terms.put[k - begin, lane] if live else NEVER_PUT
+            if price > NEVER_PUT:
+                stop = k + rights.put_steps
+                payment_columns(op, k, stop, price, begin, lane, lanes, terms.flow, terms.ratio, terms.paid_ratio, lo,
+                                hi, base, s.p)  # fmt: skip
+                payment_columns(op, k, stop, price, begin, lane, lanes, terms.flow, terms.holder_ratio,
+                                terms.paid_holder_ratio, lo, hi, base, s.ph)  # fmt: skip
+            else:
+                for i in range(lo - base, hi + 1 - base):
+                    s.p[i * lanes + lane] = NEVER_PUT
+                    s.ph[i * lanes + lane] = NEVER_PUT
+
+
+@kernel
+def local_columns(op: OperatorTables, k: int, base: int, lanes: int, rights: Rights, s: Space, near: Space) -> None:
+    """Everything a settlement asks for, on the local grid of the first sum."""
+    a, b, x = op.lo[k], op.hi[k], op.local_x[k]
+    interpolate_local(a, b, base, lanes, x, s.c, near.c)
+    if rights.both:
+        interpolate_local(a, b, base, lanes, x, s.h, near.h)
+    if rights.notice:
+        interpolate_local(a, b, base, lanes, x, s.e, near.e)
+        if rights.both:
+            interpolate_local(a, b, base, lanes, x, s.eh, near.eh)
+    if rights.puts:
+        interpolate_local(a, b, base, lanes, x, s.p, near.p)
+        interpolate_local(a, b, base, lanes, x, s.ph, near.ph)
+
+
+@kernel
 def solve_lanes(
-    half_band: int, lo: Integers, hi: Integers, conv: Floats, row: int, band_start: Integers, weights: Floats,
-    growth: Floats, straight_conv: Floats, first_weights: Floats, first_local: Flags, local_x: Floats,
-    local_weights: Floats, begin: int, lead: Floats, steps: Integers, first: Integers, last: Integers, ratio: Floats,
-    holder_ratio: Floats, flow: Floats, price: Floats, bar: Floats, both: bool, issuer_cost: Floats,
-    holder_value: Floats,
+    op: OperatorTables, begin: int, lead: Floats, steps: Integers, first: Integers, last: Integers, terms: LaneTerms,
+    rights: Rights, issuer_cost: Floats, holder_value: Floats,
 ) -> None:  # fmt: skip
     """Issuer's cost and holder's value today of up to sixteen securities per 100 of par (C4).
 
     steps, first, last  [lane] last payment, first and last step with a right (first = 0: no right)
-    begin               rows of the tables below start at step `begin`, before every lane's first right
+    begin               rows of the tables begin at step `begin`, before every lane's first right
     lead                [6, lane] by the issuer's spread and then by the holder's: discount to the first right, value of
                         the payments up to it, value of all payments (the plain bond, where no right is ever used)
-    ratio               [k - begin, lane] P0(t_(k+1)) / P0(t_k) on the issuer's curve
-    holder_ratio        the same on the curve with the valuation spread
-    flow                [k - begin, lane] promised payment at step k, redemption included
-    price, bar          [k - begin, lane] dirty price paid at a call, and with the issuer's cost; inf: no right is live
-    both                also run the holder's recursion (else holder_value is the issuer's cost)
     """
     lanes = steps.shape[0]
-    band = 2 * half_band + 1
-    reach = half_band + GHOSTS
+    both = rights.both
+    reach = op.half_band + GHOSTS
     top = 0
     bottom = 1 << 30
     for lane in range(lanes):
         if first[lane] > 0:
             top = max(top, last[lane])
             bottom = min(bottom, first[lane])
-    low_node, high_node = (lo[top], hi[top]) if top > 0 else (0, 0)
+    low_node, high_node = (op.lo[top], op.hi[top]) if top > 0 else (0, 0)
     for k in range(bottom, top):
-        low_node, high_node = min(low_node, lo[k]), max(high_node, hi[k])
+        low_node, high_node = min(low_node, op.lo[k]), max(high_node, op.hi[k])
     base = low_node - reach - MARGIN
-    width = (high_node + reach + MARGIN - base + 1) * lanes
-    points = local_weights.shape[0]
-    other = 1 if both else 0  # the holder's arrays are not touched unless both recursions run
-    c, v, h, w = np.ones(width), np.ones(width), np.ones(width * other), np.ones(width * other)
-    near, near_v = np.empty(points * lanes), np.empty(points * lanes)
-    near_h, near_w = np.empty(points * lanes * other), np.empty(points * lanes * other)
+    points = op.local_weights.shape[0]
+    s = space(high_node + reach + MARGIN - base + 1, lanes, rights)
+    near = space(points, lanes, rights)
+    none = np.zeros(lanes)
+    t = StepTerms(
+        np.empty(lanes), np.empty(lanes), np.zeros(lanes), np.empty(lanes), np.empty(lanes), np.ones(lanes),
+        np.full(lanes, -1.0),
+    )  # fmt: skip
     work = np.zeros(20 * 16)
-    kink, near_kink = np.zeros(lanes, dtype=np.int64), np.zeros(lanes, dtype=np.int64)
     flat_low, flat_high = np.zeros(lanes), np.zeros(lanes)
     sums, sums_h = np.zeros(lanes), np.zeros(lanes)
-    touched = np.zeros(lanes, dtype=np.bool_)
-    bars, prices, factor, factor_h = np.empty(lanes), np.empty(lanes), np.empty(lanes), np.empty(lanes)
+    factor, factor_h, paid, paid_h = np.empty(lanes), np.empty(lanes), np.empty(lanes), np.empty(lanes)
+    carried = op.growth[0 if op.lag else 1]
     for lane in range(lanes):
         issuer_cost[lane] = 0.0
         holder_value[lane] = 0.0
     for k in range(top, bottom - 1, -1):
-        a, b = lo[k], hi[k]
+        a, b = op.lo[k], op.hi[k]
         ends = False
         for lane in range(lanes):
             live = first[lane] > 0 and k >= first[lane] and k <= last[lane]
-            bars[lane] = bar[k - begin, lane] if live else np.inf
-            prices[lane] = price[k - begin, lane] if live else np.inf
-            factor[lane] = ratio[k - begin, lane] * conv[k] if live else 1.0
-            factor_h[lane] = holder_ratio[k - begin, lane] * conv[k] if live else 1.0
+            factor[lane] = terms.ratio[k - begin, lane] * op.conv[k] if live else 1.0
+            factor_h[lane] = terms.holder_ratio[k - begin, lane] * op.conv[k] if live else 1.0
             ends = ends or first[lane] == k
         if k < top:  # lanes not live run along on harmless numbers
-            paid = flow[k + 1 - begin]
-            step_back(a, b, base, row, lanes, band, band_start, weights, growth, v, paid, factor, c)
+            for lane in range(lanes):
+                if op.lag:
+                    amount = terms.flow[k - begin, lane] * op.straight_conv[k, 0]
+                    paid[lane] = amount * terms.paid_ratio[k - begin, lane] / factor[lane]
+                    paid_h[lane] = amount * terms.paid_holder_ratio[k - begin, lane] / factor_h[lane]
+                else:
+                    paid[lane] = terms.flow[k + 1 - begin, lane]
+                    paid_h[lane] = paid[lane]
+            step_back(a, b, base, op.row, lanes, 2 * op.half_band + 1, op.band_start, op.weights, carried, s.v, paid,
+                      factor, s.c)  # fmt: skip
             if both:
-                step_back(a, b, base, row, lanes, band, band_start, weights, growth, w, paid, factor_h, h)
+                step_back(a, b, base, op.row, lanes, 2 * op.half_band + 1, op.band_start, op.weights, carried, s.w,
+                          paid_h, factor_h, s.h)  # fmt: skip
         for lane in range(lanes):
             if first[lane] > 0 and k == last[lane]:
-                n = steps[lane]
-                straight_columns(k, begin, lane, lanes, n, flow, ratio, straight_conv, growth, row, a, b, base, c)
+                payment_columns(op, k, steps[lane], 0.0, begin, lane, lanes, terms.flow, terms.ratio, terms.paid_ratio,
+                                a, b, base, s.c)  # fmt: skip
                 if both:
-                    straight_columns(
-                        k, begin, lane, lanes, n, flow, holder_ratio, straight_conv, growth, row, a, b, base, h
-                    )
-        exercise(a, b, base, lanes, bars, prices, both, c, h, v, w, kink, flat_low, flat_high)
-        for lane in range(lanes):
-            touched[lane] = touched[lane] or kink[lane] >= a
-        extend(a, b, base, lanes, reach, flat_low, flat_high, v, work)
-        if both:
-            extend(a, b, base, lanes, reach, flat_low, flat_high, w, work)
-        correct(a, b, base, lanes, bars, prices, both, c, h, kink, v, w, work)
+                    payment_columns(op, k, steps[lane], 0.0, begin, lane, lanes, terms.flow, terms.holder_ratio,
+                                    terms.paid_holder_ratio, a, b, base, s.h)  # fmt: skip
+        step_terms(k, begin, first, last, terms, rights, t)
+        if rights.notice or rights.puts:
+            right_columns(op, k, begin, first, last, terms, rights, a, b, base, s)
+        local = ends and op.first_local[k]
+        if local:
+            local_columns(op, k, base, lanes, rights, s, near)
+        settle(a, b, base, lanes, reach, both, rights.notice, rights.puts, rights.doubles, s, t, flat_low, flat_high,
+               none, work)  # fmt: skip
         if not ends:
             continue
-        if first_local[k]:
-            interpolate_local(a, b, base, lanes, local_x[k], c, near)
+        if local:
+            near.used[:] = False
+            settle(0, points - 1, 0, lanes, 0, both, rights.notice, rights.puts, rights.doubles, near, t, flat_low,
+                   flat_high, none, work)  # fmt: skip
+            weighted_sum(0, lanes, op.local_weights, points, near.v, sums)
             if both:
-                interpolate_local(a, b, base, lanes, local_x[k], h, near_h)
-            end = points - 1
-            exercise(0, end, 0, lanes, bars, prices, both, near, near_h, near_v, near_w, near_kink, flat_low, flat_high)
-            correct(0, end, 0, lanes, bars, prices, both, near, near_h, near_kink, near_v, near_w, work)
-            weighted_sum(0, lanes, local_weights, points, near_v, sums)
-            if both:
-                weighted_sum(0, lanes, local_weights, points, near_w, sums_h)
+                weighted_sum(0, lanes, op.local_weights, points, near.w, sums_h)
         else:
-            weighted_sum(a - base, lanes, first_weights[k], b - a + 1, v, sums)
+            weighted_sum(a - base, lanes, op.first_weights[k], b - a + 1, s.v, sums)
             if both:
-                weighted_sum(a - base, lanes, first_weights[k], b - a + 1, w, sums_h)
+                weighted_sum(a - base, lanes, op.first_weights[k], b - a + 1, s.w, sums_h)
         for lane in range(lanes):
             if first[lane] == k:
                 issuer_cost[lane] = sums[lane]
                 holder_value[lane] = sums_h[lane]
-                touched[lane] = touched[lane] or (first_local[k] and near_kink[lane] >= 0)
+                s.used[lane] = s.used[lane] or (local and near.used[lane])
     for lane in range(lanes):
-        used = touched[lane]
+        used = s.used[lane]
         issuer_cost[lane] = lead[1, lane] + lead[0, lane] * issuer_cost[lane] if used else lead[2, lane]
         if both:
             holder_value[lane] = lead[4, lane] + lead[3, lane] * holder_value[lane] if used else lead[5, lane]

@@ -59,6 +59,7 @@ class Operator:
     model: ShortRateModel
     step: float  # [year]
     offset: float  # [year], 0 < offset <= step
+    lag: float  # [year] from each step's date to its payment, 0 <= lag < step
     h: float
     half_band: int
     lo: IntArray  # [step] lowest node
@@ -67,8 +68,8 @@ class Operator:
     first_row: int  # lowest node of the weight table
     band_start: IntArray  # [row] first column node of a row
     weights: Array  # [row, band] normalised weights times exp(-G(step) x_row)
-    growth: Array  # [ahead, row] exp(-G(ahead x step) x_row), for straight values at the last right
-    straight_conv: Array  # [step, ahead] convexity factor over `ahead` steps from step k
+    growth: Array  # [ahead, row] exp(-G(ahead x step + lag) x_row), for payments
+    straight_conv: Array  # [step, ahead] convexity factor over `ahead` steps and the lag from step k
     first_weights: Array  # [step, node from lo] weights of the first sum, zero where unused
     first_local: npt.NDArray[np.bool_]  # [step] the first sum uses a local grid
     local_x: Array  # [step, point] local grid in node units (x / h), used where first_local
@@ -99,8 +100,13 @@ def drifts(model: ShortRateModel, times: Array) -> Array:
 
 
 @lru_cache(maxsize=256)
-def build_operator(a: float, sigma: float, step_months: int, offset_months: int, steps: int, grid: Grid) -> Operator:
-    """The operator for up to `steps` steps of `step_months` months, the first after `offset_months`."""
+def build_operator(
+    a: float, sigma: float, step_months: int, offset_months: int, steps: int, grid: Grid, lag_months: int = 0
+) -> Operator:
+    """The operator for up to `steps` steps of `step_months` months, the first after `offset_months`.
+
+    lag_months  payments fall so long after each step's date, less than a step
+    """
     model = ShortRateModel(a, sigma)
     step, offset = step_months / 12.0, offset_months / 12.0
     g, s = model.g(step), math.sqrt(model.variance(step))
@@ -116,12 +122,12 @@ def build_operator(a: float, sigma: float, step_months: int, offset_months: int,
     w = exp_array(-0.5 * z * z)
     weights = w / w.sum(axis=1)[:, None] * exp_array(-g * rows * h)[:, None]
     conv = np.array([1.0] + [model.convexity(t, step) for t in times[1:]])
-    ahead = np.array([model.g(j * step) for j in range(steps + 1)])
+    ahead = np.array([model.g(j * step + lag_months / 12.0) for j in range(steps + 1)])
     growth = exp_array(-ahead[:, None] * (rows * h)[None, :])
     spread_out = np.outer(variances(model, times), ahead**2) + np.outer(drifts(model, times), ahead)
     straight = exp_array(-0.5 * spread_out)
     return Operator(
-        model, step, offset, h, b, lo, hi, conv, int(rows[0]), start, weights, growth, straight,
+        model, step, offset, lag_months / 12.0, h, b, lo, hi, conv, int(rows[0]), start, weights, growth, straight,
         *first_sums(model, times, h, lo, hi),
     )  # fmt: skip
 

@@ -14,7 +14,7 @@ from projector.report.parts import Cell, Chart, Column, Row, Table, rows_with_to
 from projector.report.svg import finished
 
 BENEFITS = ("death_benefit", "surrender_benefit", "withdrawal", "annuity_payment", "maturity_benefit")
-RUN_OFF = ("coupon", "principal", "call_par", "call_premium", "recovery")
+RUN_OFF = ("coupon", "principal", "call_par", "call_premium", "put", "recovery")
 OUTGO = (*BENEFITS, "premium", "expense", "commission", "loan", "reinsurance")
 EVERY_PATH = "all"  # scenario column of a block that does not react to rates
 
