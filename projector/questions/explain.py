@@ -100,7 +100,6 @@ def tell(prepared: Prepared, block: BlockResult, unit: int, path: int, solve_all
         rights=tuple(np.flatnonzero(np.isfinite(prepared.bonds.clean_price[unit])).tolist()),
         decided=life.decided,
         paid=life.paid,
-        solved_all=solve_all,
         months=life.frame(),
     )
 

@@ -48,7 +48,6 @@ class CallStory:
     decided, paid  month of the issuer's decision and of payment; None when it is not called
     rights         months in which a right is live by the schedule, whether or not the security lives that long
     make_whole     whether a make-whole right stands in the schedule (read, never used before the par-call date)
-    solved_all     whether rights that the bound had settled were solved as well
     """
 
     security_id: str
@@ -67,7 +66,6 @@ class CallStory:
     rights: tuple[int, ...]
     decided: int | None
     paid: int | None
-    solved_all: bool
     months: pd.DataFrame
 
     @property

@@ -15,7 +15,7 @@ from projector.rates.curve import CurveError, CurveReading, log_discount_nodes, 
 Array = npt.NDArray[np.float64]
 
 FIRST_STEP, WIDEST = 0.0025, 0.32  # [1/year] the search goes out 25 bp, then doubles, up to 3,200 bp
-SHIFT_TOLERANCE = 1e-9  # [1/year]
+SHIFT_TOLERANCE = 1e-7  # [1/year] a thousandth of a basis point
 
 
 def refunding_yield(discount: Array, spread: float, months: int) -> float:
@@ -32,8 +32,9 @@ def refunding_yield(discount: Array, spread: float, months: int) -> float:
     interest over a short first period as in 31 CFR Part 356 Appendix B (both cited from memory).
     """
     first = (months - 1) % 6 + 1
-    tau = np.arange(first, months + 1, 6)
-    own = discount[tau] * exp_array(-spread * tau / 12.0)
+    tau: npt.NDArray[np.int64] = np.arange(first, months + 1, 6)
+    decay = np.asarray(tau * (-spread / 12.0), dtype=np.float64)
+    own = discount[tau] * exp_array(decay)
     years = np.full(tau.size, 0.5)
     years[0] = first / 12.0
     return float((1.0 - own[-1]) / np.sum(years * own))
