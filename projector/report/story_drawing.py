@@ -39,7 +39,7 @@ def drawing_of(story: CallStory) -> DecisionDrawing:
         bar=(months["bar"] - months["accrued"]).tolist(),
         marked=row["month"],
         is_call=called,
-        marked_words=f"{'called' if called else 'closest'} in {when(row)}",
+        marked_words=f"{'called' if called else 'came closest'} in {when(row)}",
     )  # fmt: skip
 
 

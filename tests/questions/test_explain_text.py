@@ -21,6 +21,7 @@ from projector.report.charts import canvas
 from projector.report.story_drawing import alternative, story_svg
 from projector.run.block import project
 
+ROOT = Path(__file__).resolve().parents[2]
 SVG = "{http://www.w3.org/2000/svg}"
 Command = Callable[..., tuple[int, str, str]]
 
@@ -258,3 +259,14 @@ def test_limit_both_names_must_be_given(words: tuple[str, ...], hand_folder: Pat
     code, said, err = command("explain", hand_folder, *words)
     assert (code, said) == (2, "")
     assert "Traceback" not in err
+
+
+@pytest.mark.long
+def test_pinned_the_readme_shows_what_the_command_prints(command: Command, monkeypatch: pytest.MonkeyPatch) -> None:
+    readme = (ROOT / "README.md").read_text(encoding="utf-8")
+    asked = re.search(r"^    projector (explain scenarios/.*)$", readme, re.MULTILINE)
+    assert asked is not None
+    monkeypatch.chdir(ROOT)
+    code, said, _ = command(*asked[1].split())
+    assert code == 0
+    assert "\n".join(f"    {line}".rstrip() for line in said.rstrip("\n").split("\n")) in readme

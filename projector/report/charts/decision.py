@@ -20,7 +20,7 @@ DASH: Any = (0, (3, 1.6))
 DOTS: Any = (0, (1, 1.2))
 LETTER = 0.056  # inches of key for a letter of the layout font
 FAR = 3.0  # points of yield beyond the refunding yields that the scale still holds
-LEAST = 1.0  # per 100: the least height of the lower scale
+LEAST = 0.2  # per 100: the least height of the lower scale
 
 
 @dataclass(frozen=True)
@@ -119,7 +119,7 @@ def yield_limits(drawing: DecisionDrawing) -> tuple[float, float]:
     known = [value for value in drawing.refunding if math.isfinite(value)]
     low, high = min(known) - FAR, max(known) + FAR
     near = [value for value in drawing.critical if math.isfinite(value) and low <= value <= high]
-    return canvas.bounds([*known, *near], zero=False)
+    return canvas.bounds([*known, *near], zero=False, room=0.16)  # the words of the mark stand above the lines
 
 
 def cost_limits(drawing: DecisionDrawing) -> tuple[float, float]:
