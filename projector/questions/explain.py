@@ -160,7 +160,21 @@ class Life:
         """One row a month, columns as `records.COLUMNS`."""
         decisions = {int(row["month"]): row for row in self.rows.to_dict("records")}
         rows = [self.month(m, decisions.get(m)) for m in range(self.last + 1)]
-        return pd.DataFrame(rows, columns=list(COLUMNS))
+        critical = self.critical_yields(sorted(decisions))
+        return pd.DataFrame([row | critical.get(m, {}) for m, row in enumerate(rows)], columns=list(COLUMNS))
+
+    def critical_yields(self, months: list[int]) -> dict[int, dict[str, float]]:
+        """Critical yield of some months, empty where no shift makes both sides equal. [1/year]
+
+        Each search begins at the shift of the month before, which is seldom far.
+        """
+        out, start = {}, 0.0
+        for m in months:
+            question = self.question(m)
+            shift = question.critical_shift(start)
+            if shift is not None:
+                out[m], start = {"critical_yield": question.yield_at(shift)}, shift
+        return out
 
     def month(self, m: int, decision: dict[str, float] | None) -> dict[str, object]:
         """What there is to say of one month; a value that does not apply is left out."""
@@ -175,9 +189,8 @@ class Life:
             "decision": MATURED if m == maturity else NO_RIGHT,
             "par_held": par,
         }
-        question = self.question(m)
         if m < maturity:
-            out["refunding_yield"] = question.yield_at(0.0)
+            out["refunding_yield"] = self.question(m).yield_at(0.0)
         if decision is None:
             return out
         by = SAID.get(SETTLED_BY[int(decision["by"])], BY_FINER)
@@ -190,7 +203,6 @@ class Life:
             "upper_bound": float(decision["upper_bound"]),
             "continuation": going_on,
             "settled_by": by,
-            "critical_yield": question.critical_yield(),
             "decision": CALLED if decision["share"] > 0.0 else KEPT,
             "issuer_saving": going_on - bar,
             "holder_value": held,

@@ -14,7 +14,7 @@ from projector.rates.curve import CurveError, CurveReading, log_discount_nodes, 
 
 Array = npt.NDArray[np.float64]
 
-FIRST_STEP, WIDEST = 0.0025, 0.32  # [1/year] the search goes out 25 bp, then doubles, up to 3,200 bp
+FIRST_STEP, WIDEST = 0.0005, 0.32  # [1/year] the search goes out 5 bp, then doubles, up to shifts of 3,200 bp
 SHIFT_TOLERANCE = 1e-7  # [1/year] a thousandth of a basis point
 
 
@@ -40,29 +40,37 @@ def refunding_yield(discount: Array, spread: float, months: int) -> float:
     return float((1.0 - own[-1]) / np.sum(years * own))
 
 
-def shift_where_equal(gap: Callable[[float], float], at_zero: float) -> float | None:
+def shift_where_equal(gap: Callable[[float], float], start: float = 0.0) -> float | None:
     """The shift at which a function that falls with it is zero, None when there is none. [1/year]
 
-    gap      continuation - bar [per 100] at a parallel shift [1/year]; nan where the curve leaves no positive discount
-    at_zero  its value without a shift
+    gap    continuation - bar [per 100] at a parallel shift [1/year]; nan where the curve leaves no positive discount
+    start  where to begin: last month's shift, or zero
 
-    The search goes out from zero in the direction of the root, each step twice the last, then closes in.
+    The search goes out from the start in the direction of the root, each step twice the last, then closes in.
 
     Source: Brent, Algorithms for Minimization without Derivatives, 1973, chapter 4 (cited from memory).
     """
-    sign = 1.0 if at_zero > 0.0 else -1.0
-    inner, outer = 0.0, FIRST_STEP
+    known: dict[float, float] = {}  # the closing in asks for the ends again, and a solve is dear
+
+    def at(shift: float) -> float:
+        if shift not in known:
+            known[shift] = gap(shift)
+        return known[shift]
+
+    here = at(start)
+    sign = 1.0 if here > 0.0 else -1.0
+    inner, step = start, FIRST_STEP
     while True:
-        there = gap(sign * outer)
-        if np.isnan(there) or outer > WIDEST:
-            return None
+        outer = start + sign * step
+        there = at(outer)
+        if np.isnan(here) or np.isnan(there) or abs(outer) > WIDEST:
+            return shift_where_equal(gap) if start != 0.0 else None
         if sign * there <= 0.0:
             break
-        inner, outer = outer, 2.0 * outer
+        inner, step = outer, 2.0 * step
     from scipy.optimize import brentq  # here, not above: it takes a quarter of a second that `check` need not wait
 
-    low, high = sorted((sign * inner, sign * outer))
-    return float(brentq(gap, low, high, xtol=SHIFT_TOLERANCE, rtol=1e-14))
+    return float(brentq(at, min(inner, outer), max(inner, outer), xtol=SHIFT_TOLERANCE, rtol=1e-14))
 
 
 @dataclass(frozen=True)
@@ -109,11 +117,10 @@ class MonthQuestion:
         spread = float(self.solver.spreads.refunding[self.unit, self.month])
         return refunding_yield(discount[:, 0], spread, self.life)
 
-    def critical_yield(self) -> float:
-        """Refunding yield at which continuation equals the bar, nan when no shift does it. [1/year]
+    def critical_shift(self, start: float = 0.0) -> float | None:
+        """Parallel shift at which continuation equals the bar, None when no shift does it. [1/year]
 
-        Below it the issuer calls, above it goes on. Solved on the grid of near ties, so that the two sides agree
-        with the decision to that grid's accuracy.
+        The issuer calls at a curve shifted this far or further down, and goes on above. Solved on the grid of near
+        ties, so that the two sides agree with the decision to that grid's accuracy.
         """
-        shift = shift_where_equal(self.gap, self.gap(0.0))
-        return float("nan") if shift is None else self.yield_at(shift)
+        return shift_where_equal(self.gap, start)

@@ -58,11 +58,15 @@ UNITS = (
 )
 
 
+def subject(story: CallStory) -> str:
+    """The security: B1 (Issuer, 5.00% to 2030-01-31)."""
+    issuer = f"{story.issuer}, " if story.issuer else ""
+    return clean(f"{story.security_id} ({issuer}{percent(story.coupon_rate, 2)} to {story.maturity_date.isoformat()})")
+
+
 def title(story: CallStory) -> str:
     """What the answer is about: B1 (Issuer, 5.00% to 2030-01-31) on S5 Gradual down."""
-    issuer = f"{story.issuer}, " if story.issuer else ""
-    terms = f"{issuer}{percent(story.coupon_rate, 2)} to {story.maturity_date.isoformat()}"
-    return clean(f"{story.security_id} ({terms}) on {story.scenario_name}")
+    return f"{subject(story)} on {clean(story.scenario_name)}"
 
 
 def headline(story: CallStory) -> str:

@@ -7,7 +7,8 @@ from typing import Any
 from markupsafe import Markup
 
 from projector.questions.records import CallStory
-from projector.report.call_story import at, closest, title, when
+from projector.report.call_story import at, closest, subject, title, when
+from projector.report.charts.canvas import cut
 from projector.report.charts.decision import DecisionDrawing, draw
 from projector.report.numbers import clean, count_of, fixed, percent
 from projector.report.svg import finished
@@ -28,9 +29,9 @@ def drawing_of(story: CallStory) -> DecisionDrawing:
     months, row = story.months, marked_row(story)
     called = story.decided is not None
     return DecisionDrawing(
-        name=title(story),
-        rule="The issuer calls where its refunding yield falls to the critical yield, and going on costs as much as "
-             "calling",
+        name=subject(story),
+        rule=f"On {cut(clean(story.scenario_name), 30)} the issuer calls where refunding falls to the critical yield, "
+        "and going on costs as much as calling",
         months=months["month"].tolist(),
         refunding=(100.0 * months["refunding_yield"]).tolist(),
         critical=(100.0 * months["critical_yield"]).tolist(),
@@ -40,7 +41,7 @@ def drawing_of(story: CallStory) -> DecisionDrawing:
         marked=row["month"],
         is_call=called,
         marked_words=f"{'called' if called else 'came closest'} in {when(row)}",
-    )  # fmt: skip
+    )
 
 
 def marked_row(story: CallStory) -> dict[str, Any]:

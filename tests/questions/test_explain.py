@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 import random
 from collections.abc import Callable
 from pathlib import Path
@@ -15,7 +16,7 @@ from projection_studies import busy_study
 import projector
 from projector.questions import records
 from projector.questions.explain import explain, find_path, find_security, tell
-from projector.run.block import project
+from projector.run.block import discounts_of, project
 from projector.run.call_table import calls_frame
 from projector.run.runner import run_blocks, stage
 from projector.study.errors import StudyRefused
@@ -68,6 +69,40 @@ def test_order_every_story_of_the_busy_study_is_the_run_s(told: Any, busy: Any, 
             sides_agree(told(name, path))
             found += month >= 0
     assert found >= 3
+
+
+def test_order_bounds_costs_and_bars_are_the_run_s_rows(told: Any, busy: Any, busy_block: Any) -> None:
+    """Told from the path alone, recorded among seven: the same numbers."""
+    rows = busy_block.decisions
+    assert len(rows) > 50
+    for (unit, path), run in rows.groupby(["unit", "path"]):
+        live = told(busy.prepared.bonds.ids[int(unit)], int(path)).live
+        run = run.sort_values("month")
+        assert live["month"].tolist() == run["month"].tolist()
+        for column in ("upper_bound", "bar"):
+            assert live[column].tolist() == run[column].tolist()
+        solved = run["continuation"].notna().to_numpy()
+        assert live["continuation"].to_numpy()[solved].tolist() == run["continuation"].to_numpy()[solved].tolist()
+        assert ((live["settled_by"] != records.BY_BOUND).to_numpy() == solved).all()
+
+
+@pytest.mark.parametrize(("name", "month"), [("B4", 7), ("B1", 19), ("B2", 0)])
+def test_order_refunding_yields_read_the_month_s_own_curve_life_and_spread(
+    name: str, month: int, told: Any, busy: Any
+) -> None:
+    prepared, path = busy.prepared, 1  # yields rise here, and nothing is called
+    unit = prepared.bonds.ids.index(name)
+    life = int(prepared.bonds.maturity[unit]) - month
+    spread = prepared.solver.spreads.refunding[unit, month]
+    discount = discounts_of(prepared, 0, 7)(month)[:, path]
+    rate = told(name, path).months["refunding_yield"].iloc[month]
+    worth, last = 0.0, 0
+    for t in range(1, life + 1):
+        if (life - t) % 6 == 0:
+            worth += rate * (t - last) / 12.0 * discount[t] * math.exp(-spread * t / 12.0)
+            last = t
+    worth += discount[life] * math.exp(-spread * life / 12.0)
+    assert worth == pytest.approx(1.0, abs=1e-12)
 
 
 def test_order_par_and_price_of_a_call_are_those_of_the_calls_table(told: Any, busy: Any, busy_block: Any) -> None:
@@ -173,6 +208,7 @@ def test_order_explanations_of_the_demo_are_the_run_s() -> None:
     months = np.concatenate([block.events.months() for block in blocks], axis=1)
     draw = random.Random(2022)
     table = calls.groupby(["security_id", "scenario"])["month"].first()
+    par = calls.groupby(["security_id", "scenario"])["par_called"].sum()
     called = draw.sample(sorted(table.index.tolist()), CALLED)
     with_rights = prepared.bonds.with_rights()
     never = sorted((int(u), int(p)) for u, p in np.argwhere(months < 0) if with_rights[u])
@@ -183,5 +219,9 @@ def test_order_explanations_of_the_demo_are_the_run_s() -> None:
         if path not in alone:
             alone[path] = project(prepared, path, path + 1)
         story = tell(prepared, alone[path], unit, path, solve_all=True)
-        agrees(story, int(table[name, scenario]) if (name, scenario) in called else None)
+        if (name, scenario) in called:
+            agrees(story, int(table[name, scenario]))
+            assert story.months["par_held"].iloc[-1] == pytest.approx(par[name, scenario], rel=1e-12)
+        else:
+            agrees(story, None)
         sides_agree(story)

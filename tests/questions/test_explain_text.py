@@ -18,6 +18,7 @@ from projector.questions.records import CallStory
 from projector.report import call_story
 from projector.report.call_story import headline, story_text
 from projector.report.charts import canvas
+from projector.report.charts.decision import Series
 from projector.report.story_drawing import alternative, story_svg
 from projector.run.block import project
 
@@ -175,6 +176,14 @@ def test_limit_colours_and_sizes_of_the_drawing_are_the_report_s(many: CallStory
     text = story_svg(many)
     assert set(re.findall(r"#[0-9a-f]{6}\b", text)) <= known
     assert min(float(size) for size in re.findall(r"font-size: ([\d.]+)px", text)) >= 7.5
+
+
+def test_limit_a_right_alone_is_a_mark_and_rights_in_a_row_a_line() -> None:
+    gap = float("nan")
+    row = Series("x", [gap, 1.0, 2.0, gap, 3.0, gap], "#1b1f24", "-", "o")
+    assert (row.alone, row.apart) == ([4], False)
+    assert (Series("x", [1.0, gap, 2.0], "#1b1f24", "-", "o").alone) == [0, 2]
+    assert Series("x", [1.0, gap, 2.0], "#1b1f24", "-", "o").apart
 
 
 def test_limit_text_of_the_user_is_escaped(called: CallStory) -> None:

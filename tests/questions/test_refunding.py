@@ -10,6 +10,7 @@ from typing import Any
 import numpy as np
 import pytest
 
+from projector.bonds.solving import THIRD_GRID, Jobs
 from projector.questions.explain import Life
 from projector.questions.refunding import refunding_yield, shift_where_equal
 from projector.rates.curve import par_yield
@@ -54,14 +55,25 @@ def test_limit_a_bond_at_the_refunding_yield_is_worth_par(months: int) -> None:
 
 def test_known_the_search_finds_the_root_of_a_straight_line_on_either_side() -> None:
     for root in (-0.2, -0.0031, 0.0, 0.00001, 0.07):
-        found = shift_where_equal(lambda x, root=root: 500.0 * (root - x), 500.0 * root)
-        assert found == pytest.approx(root, abs=1e-7)
+        for start in (0.0, 0.01, -0.15, root):
+            found = shift_where_equal(lambda x, root=root: 500.0 * (root - x), start)
+            assert found == pytest.approx(root, abs=1e-7)
 
 
 def test_limit_a_search_without_a_root_says_so() -> None:
-    assert shift_where_equal(lambda x: 1.0, 1.0) is None
-    assert shift_where_equal(lambda x: -1.0, -1.0) is None
-    assert shift_where_equal(lambda x: math.nan if x < -0.01 else -1.0, -1.0) is None
+    for start in (0.0, 0.02, -0.3):
+        assert shift_where_equal(lambda x: 1.0, start) is None
+        assert shift_where_equal(lambda x: -1.0, start) is None
+        assert shift_where_equal(lambda x: math.nan if x < -0.01 else -1.0, start) is None
+
+
+def test_limit_a_start_where_no_curve_exists_begins_again_from_zero() -> None:
+    assert shift_where_equal(lambda x: math.nan if x > 0.1 else 0.05 - x, 0.2) == pytest.approx(0.05, abs=1e-7)
+
+
+def critical(asked: Any) -> float:
+    """Critical yield of one month by itself."""
+    return asked.yield_at(asked.critical_shift())
 
 
 def question(hand: Any, block: Any, path: int, month: int = 12) -> Any:
@@ -83,7 +95,7 @@ def test_known_with_one_right_the_critical_yield_is_the_bond_s_yield_at_the_bar(
         mid = 0.5 * (low + high)
         worth = sum(4.0 * (1 + mid / 2) ** -k for k in range(1, 19)) + 100.0 * (1 + mid / 2) ** -18
         low, high = (mid, high) if worth > 100.5 else (low, mid)
-    assert question(hand, hand_block, path).critical_yield() == pytest.approx(low, abs=2e-7)
+    assert critical(question(hand, hand_block, path)) == pytest.approx(low, abs=2e-7)
     # on flat curves of 6 % and 3 % the issuer's spread makes 9 % and 5.97 %
     flat = (0.06, 0.03)[path]
     assert question(hand, hand_block, path).yield_at(0.0) == pytest.approx(
@@ -95,7 +107,7 @@ def test_order_a_dearer_call_needs_a_lower_yield(hand: Any, hand_block: Any) -> 
     base = question(hand, hand_block, 0)
     model = base.solver.model
     found = [
-        replace(base, solver=replace(base.solver, model=replace(model, cost=cost))).critical_yield()
+        critical(replace(base, solver=replace(base.solver, model=replace(model, cost=cost))))
         for cost in (0.0, 0.5, 2.0)
     ]
     assert found[0] > found[1] > found[2]
@@ -109,3 +121,18 @@ def test_order_going_on_costs_less_as_yields_rise(hand: Any, hand_block: Any) ->
 def test_limit_a_curve_that_cannot_be_discounted_has_no_gap(hand: Any, hand_block: Any) -> None:
     steep = replace(question(hand, hand_block, 0), yields=np.array([0.06, 0.06, 0.9]))
     assert math.isnan(steep.gap(0.5))
+
+
+def test_order_at_the_critical_shift_a_finer_grid_finds_going_on_at_the_bar(busy: Any, busy_block: Any) -> None:
+    unit = busy.prepared.bonds.ids.index("B1")
+    bonds, solver = busy.prepared.bonds, busy.prepared.solver
+    step = int(bonds.step[unit])
+    months = [int(m) for m in np.flatnonzero(np.isfinite(bonds.clean_price[unit]))[:20:6]]
+    for month in months:
+        asked = Life(busy.prepared, busy_block, unit, 0, False).question(month)
+        shift = asked.critical_shift()
+        assert shift == pytest.approx(asked.critical_shift(0.01), abs=3e-7)  # wherever the search begins
+        jobs = Jobs(month, step, step, np.array([unit]), np.array([0]))
+        cost = solver.solve(jobs, asked.discount(shift), THIRD_GRID, False)[0][0]
+        assert cost == pytest.approx(bonds.dirty_price[unit, month] + solver.model.cost, abs=0.0005)
+    assert len(months) == 4

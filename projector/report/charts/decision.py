@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import itertools
 import math
 from collections.abc import Sequence
 from dataclasses import dataclass
@@ -57,15 +56,22 @@ class Series:
     marker: str
 
     @property
-    def apart(self) -> bool:
-        """Whether no two months follow each other."""
-        known = [k for k, value in enumerate(self.values) if math.isfinite(value)]
-        return not any(b - a == 1 for a, b in itertools.pairwise(known))
+    def alone(self) -> list[int]:
+        """Places of values without a neighbour, which a line would not show."""
+        known = {k for k, value in enumerate(self.values) if math.isfinite(value)}
+        return sorted(k for k in known if k - 1 not in known and k + 1 not in known)
 
-    def look(self) -> dict[str, Any]:
-        """How it is drawn, on its panel and in the key."""
-        if not self.apart:
-            return {"color": self.colour, "linestyle": self.dash}
+    @property
+    def apart(self) -> bool:
+        """Whether no two values follow each other."""
+        return len(self.alone) == sum(1 for value in self.values if math.isfinite(value))
+
+    def line(self) -> dict[str, Any]:
+        """How values that follow each other are drawn."""
+        return {"color": self.colour, "linestyle": self.dash}
+
+    def mark(self) -> dict[str, Any]:
+        """How a value alone is drawn."""
         size = 8.0 if self.marker == "_" else 4.6
         return {"color": self.colour, "linestyle": "", "marker": self.marker, "markersize": size,
                 "markerfacecolor": "none", "markeredgewidth": 1.1}  # fmt: skip
@@ -86,7 +92,7 @@ def draw(drawing: DecisionDrawing) -> str:
         heading = {"va": "baseline"}
         canvas.write(figure, 0.02, 0.15, canvas.cut(drawing.name, 84), fontsize=canvas.TEXT, fontweight="bold",
                      **heading)  # fmt: skip
-        canvas.write(figure, 0.02, 0.31, canvas.cut(drawing.rule, 110), fontsize=canvas.SMALL, color=GREY, **heading)
+        canvas.write(figure, 0.02, 0.31, canvas.cut(drawing.rule, 130), fontsize=canvas.SMALL, color=GREY, **heading)
         width, second = canvas.WIDTH - LEFT - RIGHT, TOP + PANEL + GAP
         yields, costs = canvas.place(figure, LEFT, TOP, width, PANEL), canvas.place(figure, LEFT, second, width, PANEL)
         _panel(yields, drawing, upper, (low, high))
@@ -103,7 +109,9 @@ def draw(drawing: DecisionDrawing) -> str:
 def _panel(axes: Axes, drawing: DecisionDrawing, series: Sequence[Series], limits: tuple[float, float]) -> None:
     years = [month / 12.0 for month in drawing.months]
     for one in series:
-        axes.plot(years, one.values, **one.look())
+        if not one.apart:
+            axes.plot(years, one.values, **one.line())
+        axes.plot([years[k] for k in one.alone], [one.values[k] for k in one.alone], **one.mark())
     axes.set_xlim(0.0, max(years[-1], 1 / 12.0) * 1.02)
     axes.set_ylim(*limits)
     canvas.plain_ticks(axes.xaxis, most=8)
@@ -140,7 +148,7 @@ def _key(figure: Figure, top: float, unit: str, series: Sequence[Series]) -> Non
     at = 0.02
     for one in series:
         ends = [at + 0.15] if one.apart else [at, at + 0.3]
-        axes.plot(ends, [0.45] * len(ends), **one.look())
+        axes.plot(ends, [0.45] * len(ends), **(one.mark() if one.apart else one.line()))
         canvas.write(figure, left + at + 0.36, top, one.name, fontsize=canvas.SMALL, va="baseline")
         at += 0.36 + LETTER * len(one.name) + 0.16
 
