@@ -189,6 +189,14 @@ def test_known_the_package_function_returns_the_documented_columns(hand_folder: 
         assert meaning
 
 
+def test_order_the_package_function_solves_what_the_bound_settled_when_asked(busy_folder: Path) -> None:
+    plain = projector.explain_call(busy_folder, "B1", "S1")
+    solved = projector.explain_call(busy_folder, "B1", "S1", solve_all=True)
+    right = plain["call_price"].notna()
+    assert plain.loc[right, "continuation"].isna().any()
+    assert solved.loc[right, "continuation"].notna().all()
+
+
 def test_limit_no_volatility_explains_alike(tmp_path: Path) -> None:
     """The bound is then the value: what it does not settle is called, and both sides still agree."""
     study = busy_study(tmp_path / "still")

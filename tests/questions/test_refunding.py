@@ -11,7 +11,7 @@ import numpy as np
 import pytest
 
 from projector.bonds.solving import THIRD_GRID, Jobs
-from projector.questions.explain import Life
+from projector.questions.explain import Life, tell
 from projector.questions.refunding import refunding_yield, shift_where_equal
 from projector.rates.curve import par_yield
 
@@ -96,11 +96,22 @@ def test_known_with_one_right_the_critical_yield_is_the_bond_s_yield_at_the_bar(
         worth = sum(4.0 * (1 + mid / 2) ** -k for k in range(1, 19)) + 100.0 * (1 + mid / 2) ** -18
         low, high = (mid, high) if worth > 100.5 else (low, mid)
     assert critical(question(hand, hand_block, path)) == pytest.approx(low, abs=2e-7)
+    story = tell(hand.prepared, hand_block, hand.prepared.bonds.ids.index("B1"), path)
+    assert story.months["critical_yield"].iloc[12] == pytest.approx(low, abs=2e-7)
     # on flat curves of 6 % and 3 % the issuer's spread makes 9 % and 5.97 %
     flat = (0.06, 0.03)[path]
     assert question(hand, hand_block, path).yield_at(0.0) == pytest.approx(
         2.0 * ((1 + flat / 2) * 1.045 / 1.03 - 1.0), abs=1e-12
     )
+
+
+def test_order_the_spread_is_the_month_s_own(hand: Any, hand_block: Any) -> None:
+    base = question(hand, hand_block, 0)
+    spreads = base.solver.spreads
+    table = np.full_like(spreads.refunding, 0.5)
+    table[base.unit, base.month] = 2.0 * math.log(1.04 / 1.03)  # on 6 % makes 8 %; any other cell would make it wild
+    moved = replace(base, solver=replace(base.solver, spreads=replace(spreads, refunding=table)))
+    assert moved.yield_at(0.0) == pytest.approx(0.08, abs=1e-12)
 
 
 def test_order_a_dearer_call_needs_a_lower_yield(hand: Any, hand_block: Any) -> None:
