@@ -16,11 +16,15 @@ from typing import TYPE_CHECKING
 from projector.study.version import VERSION
 
 if TYPE_CHECKING:
+    import pandas as pd
+
     from projector.run.results import RunResults
     from projector.run.runner import Staged
 
 __version__ = VERSION
-__all__ = ["check_study", "new_study", "render_report", "result_columns", "run_study"]
+__all__ = [
+    "check_study", "explain_call", "explain_columns", "new_study", "render_report", "result_columns", "run_study",
+]  # fmt: skip
 
 
 def new_study(folder: str | PathLike[str]) -> None:
@@ -54,5 +58,24 @@ def render_report(results: RunResults, run_command: str = "projector run FOLDER"
 def result_columns() -> dict[str, dict[str, tuple[str, str]]]:
     """Result tables: table -> column -> (unit, meaning)."""
     from projector.run.results import COLUMNS
+
+    return COLUMNS
+
+
+def explain_call(folder: str | PathLike[str], security: str, scenario: str, *, solve_all: bool = False) -> pd.DataFrame:
+    """Why one security was or was not called on one path: a row a month up to its call, its maturity or the horizon.
+
+    solve_all  also solve the rights that the bound settled, whose continuation is empty otherwise
+
+    Columns and units: `explain_columns()`. Raises StudyRefused when the study holds no such security or scenario.
+    """
+    from projector.questions.explain import explain
+
+    return explain(Path(folder), security, scenario, solve_all).months
+
+
+def explain_columns() -> dict[str, tuple[str, str]]:
+    """Columns of `explain_call`: column -> (unit, meaning)."""
+    from projector.questions.records import COLUMNS
 
     return COLUMNS

@@ -84,6 +84,49 @@ def run(
         print(f"report: {target / 'report.html'}")
 
 
+@app.command()
+def explain(
+    folder: Folder,
+    security: Annotated[str, typer.Option(help="identifier of the security")],
+    scenario: Annotated[str, typer.Option(help="identifier of the path, such as S3, or its title")],
+    out: Annotated[Path | None, typer.Option(help="also draw it, as an SVG file; one of that name is replaced")] = None,
+    every: Annotated[bool, typer.Option("--all", help="print every month, not only those around the decision")] = False,
+    solve_all: Annotated[
+        bool, typer.Option("--solve-all", help="also solve and print the rights that the bound settled")
+    ] = False,
+) -> None:
+    """Say why one security was or was not called on one path: yields, costs and the decision, month by month."""
+    from projector.questions.explain import explain as explained
+    from projector.report.call_story import story_text
+
+    if out is not None:
+        refuse_drawing(folder, out)
+    with Bar() as bar:
+        bar.show("projecting the path", 0, 1)
+        story = explained(folder, security, scenario, solve_all or out is not None)
+    print(story_text(story, every, solve_all))
+    if out is None:
+        return
+    if not len(story.live):
+        print("\nno drawing: no right is live on this path")
+        return
+    from projector.report.story_drawing import story_svg
+    from projector.run.one_file import write_whole
+
+    write_whole(out, story_svg(story))
+    print(f"\ndrawing: {out}")
+
+
+def refuse_drawing(folder: Path, out: Path) -> None:
+    """A drawing is a file of its own kind, outside the study: nothing else can be overwritten by its name."""
+    if out.suffix.lower() != ".svg":
+        raise typer.BadParameter(f"--out {out} does not end in .svg; name the drawing's file")
+    if out.is_symlink() or out.is_dir():
+        raise typer.BadParameter(f"--out {out} is a link or a folder; name the file itself")
+    if folder.resolve() in out.resolve().parents:
+        raise typer.BadParameter(f"--out {out} lies in the study folder; results never do, choose another place")
+
+
 def report_writers(results: Any, command: str) -> dict[str, Callable[[Path], None]]:
     """The report's files by name."""
     from projector.report.publish import published
