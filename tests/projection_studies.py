@@ -186,3 +186,71 @@ def busy_study(folder: Path) -> SmallStudy:
     )
     digest = build_paths(read_study(s.write())[0]).digest()
     return s.replace("0" * 64, digest)
+
+
+def special_study(folder: Path) -> SmallStudy:
+    """Every term beyond a plain call, one security each: notice, puts, sinking funds, coupon steps, announced calls.
+
+    One segment, seven paths, 24 months.
+    """
+    s = SmallStudy(folder)
+    s.replace("cash = 1_000.5", "cash = 50000.0")
+    usual = {"clean_price": "", "spread_bp": "120", "maturity_date": "2030-06-30", "end_of_month": "true"}
+    usual |= {"issue_date": "2020-06-30"}
+    s.tables["securities"] = [
+        _security("NB", **usual | {"coupon_rate": "0.06"}),
+        _security("NA", **usual | {"coupon_rate": "0.065"}),
+        _security("PU", **usual | {"coupon_rate": "0.03", "rating": "BBB"}),
+        _security("CP", **usual | {"coupon_rate": "0.05"}),
+        _security("CN", **usual | {"coupon_rate": "0.055"}),
+        _security("SD", **usual | {"coupon_rate": "0.06"}),
+        _security("SC", **usual | {"coupon_rate": "0.0575"}),
+        _security("ST", **usual | {"coupon_rate": "0.04"}),
+        _security("AN", **usual | {"coupon_rate": "0.07"}),
+        _security("AM", **usual | {"coupon_rate": "0.07"}),
+    ]
+    s.tables["lots"] = [
+        _lot(f"L{r['security_id']}", r["security_id"], "400000", "398000") for r in s.tables["securities"]
+    ]
+
+    def call(name: str, first: str, last: str, price: str, style: str, notice: int) -> Row:
+        return call_right(name, first, last, price, style) | {"notice_days": str(notice)}
+
+    s.tables["call_rights"] = [
+        call("NB", "2023-06-30", "2029-12-31", "100", "bermudan", 30),
+        call("NA", "2023-04-30", "2030-05-31", "100.5", "american", 60),
+        call("CP", "2023-12-31", "2029-12-31", "101", "bermudan", 0),
+        call("CN", "2023-12-31", "2029-12-31", "101", "bermudan", 30),
+        call("SC", "2023-03-31", "2030-05-31", "101", "american", 5),
+        call("ST", "2023-06-30", "2029-12-31", "100", "bermudan", 15),
+    ]
+    put = {"style": "bermudan", "notice_days": "0"}
+    s.tables["put_rights"] = [
+        {"security_id": "PU", "first_date": "2023-06-30", "last_date": "2025-12-31", "price": "98"} | put,
+        {"security_id": "CP", "first_date": "2024-06-30", "last_date": "2024-06-30", "price": "99"} | put
+        | {"style": "european"},
+        {"security_id": "CN", "first_date": "2024-06-30", "last_date": "2026-06-30", "price": "99"} | put
+        | {"notice_days": "60"},
+    ]  # fmt: skip
+    s.tables["sinking_payments"] = [
+        {"security_id": name, "payment_date": f"{year}-06-30", "share_of_par": "0.1", "may_double": double}
+        for name, double in (("SD", "true"), ("SC", "false"))
+        for year in range(2023, 2030)
+    ]
+    s.tables["coupon_steps"] = [
+        {"security_id": "ST", "start_date": "2023-12-31", "coupon_rate": "0.055"},
+        {"security_id": "ST", "start_date": "2025-12-31", "coupon_rate": "0.065"},
+    ]
+    s.tables["announced_calls"] = [
+        {"security_id": "AN", "payment_date": "2023-02-15", "price": "101.5"},
+        {"security_id": "AM", "payment_date": "2023-06-30", "price": "100"},
+    ]
+    names = ("put_rights", "sinking_payments", "coupon_steps", "announced_calls")
+    s.replace('control_totals = "control_totals.csv"',
+              "\n".join(f'{n} = "{n}.csv"' for n in ("control_totals", *names)))  # fmt: skip
+    months = range(1, MONTHS + 1)
+    rows = stream_rows("annuities", "payout", "all", "annuity_payment", dict.fromkeys(months, 60_000.0))
+    reserve = {m: 4_075_000.0 - 50_000.0 * m for m in range(MONTHS + 1)}
+    s.tables["liability_streams"] = rows + stream_rows("annuities", "payout", "all", "reserve_statutory", reserve)
+    s.tables["control_totals"] = totals(s.tables, {"annuities": 50_000.0})
+    return s

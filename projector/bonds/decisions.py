@@ -20,8 +20,6 @@ import pandas as pd
 from projector.arithmetic import KERNELS_DIGEST
 from projector.bonds.call_rules import CallRule, Opportunity
 from projector.bonds.exercise.path_kernels import Dates
-from projector.bonds.exercise.settle_kernels import NEVER_PUT
-from projector.bonds.mapped import MappedBonds
 from projector.bonds.solving import SECOND_GRID, THIRD_GRID, Jobs, MonthSolver, production_grid
 
 Array = npt.NDArray[np.float64]
@@ -157,11 +155,11 @@ class DecisionPass:
         The issuer first, then the holder of what has not been called (C4).
         """
         bonds, tables, month = self.solver.bonds, self.solver.bonds.tables, at.month
-        called, put_on = (payment_month(bonds, units, month, lag) for lag in (at.call_lag, at.put_lag))
-        price, bar = self.now_worth(at, units, called, tables.price, True, discount)
+        called, put_on = (self.solver.payment_month(units, month, lag) for lag in (at.call_lag, at.put_lag))
+        price, bar = bonds.clean_price[units, called], self.solver.call_bar(at, units, discount)
         double = tables.double_share[units, month]
         double_bar = np.where(double > 0.0, (100.0 + self.solver.model.cost) * bonds.outstanding[units, month], np.inf)
-        _, put_now = self.now_worth(at, units, put_on, tables.put, False, discount)
+        put_now = self.solver.worth_now(at, units, put_on, tables.put, False, discount)
         bound = self.solver.bounds(at, units, discount, alive)
         cost, value, by = self.continuations(at, units, bound, np.minimum(bar, double_bar[:, None]), put_now, discount)
         # where the bound lies under the bar the cost of going on does too: the rule may be told the bound instead
@@ -182,31 +180,6 @@ class DecisionPass:
         if rows is not None:
             rows.add(month, units, alive & np.isfinite(bar), bound, cost, bar, by, share)
         return (1.0 - share) * (1.0 - twice) * (1.0 - puts)
-
-    def now_worth(
-        self, at: Dates, units: IntArray, paid: IntArray, table: Array, issuer: bool, discount: Array
-    ) -> tuple[Array, Array]:
-        """Clean price of rights decided this month, and what they cost or bring seen from now.
-
-        paid    month in which each would be paid, 0: not live
-        table   dirty prices by month; issuer: with the cost and at his spread, else at the holder's
-        Second result [per 100], [unit, path]: inf where no call is live, -inf where no put is.
-        """
-        bonds, spreads, month = self.solver.bonds, self.solver.spreads, at.month
-        amount = table[units, paid]
-        live = (amount < np.inf) & (amount > NEVER_PUT) & (paid > 0)
-        if issuer:
-            amount = amount + self.solver.model.cost * bonds.outstanding[units, paid]
-        out = np.full((units.size, discount.shape[1]), np.inf if issuer else -np.inf)
-        at_once = live & (paid == month)
-        out[at_once] = amount[at_once][:, None]
-        later = np.flatnonzero(live & (paid > month))
-        if later.size:
-            n, p = np.repeat(later, discount.shape[1]), np.tile(np.arange(discount.shape[1]), later.size)
-            spread = spreads.refunding[units[n], month] if issuer else spreads.valuation(units[n], month)
-            worth = self.solver.settled(month, units[n], p, paid[n], amount[n], spread, discount)
-            out[n, p] = worth
-        return bonds.clean_price[units, paid], out
 
     def continuations(
         self, at: Dates, units: IntArray, bound: Array, bar: Array, put_now: Array, discount: Array
@@ -234,11 +207,6 @@ class DecisionPass:
                 near = distance < bands[code - 1]
                 n, p = n[near], p[near]
         return cost, value, by
-
-
-def payment_month(bonds: MappedBonds, units: IntArray, decided: int, lag: int) -> IntArray:
-    """Month in which a right decided now is paid, 0 where the security ends before. shape (unit,)"""
-    return np.where(bonds.maturity[units] > decided + lag, decided + lag, 0)
 
 
 def ordered_events(parts: list[tuple[npt.NDArray[Any], ...]], shape: tuple[int, int]) -> CallEvents:

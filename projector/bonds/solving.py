@@ -159,6 +159,38 @@ class MonthSolver:
         announced_values(month, units, effect, amount, self.bonds.flow, spread, discount, paths, out)
         return out
 
+    def payment_month(self, units: IntArray, decided: int, lag: int) -> IntArray:
+        """Month in which a right decided now is paid, 0 where the security ends before. shape (unit,)"""
+        return np.where(self.bonds.maturity[units] > decided + lag, decided + lag, 0)
+
+    def call_bar(self, at: Dates, units: IntArray, discount: Array) -> Array:
+        """What calling this month costs the issuer, inf where no call is live. [per 100], [unit, path]"""
+        paid = self.payment_month(units, at.month, at.call_lag)
+        return self.worth_now(at, units, paid, self.bonds.tables.price, True, discount)
+
+    def worth_now(
+        self, at: Dates, units: IntArray, paid: IntArray, table: Array, issuer: bool, discount: Array
+    ) -> Array:
+        """What a right decided this month costs or brings, seen from now, with what is paid until then. [per 100]
+
+        paid    month in which each would be paid, 0: not live; table  dirty prices by month
+        issuer  with his cost and at his spread, else at the holder's
+        [unit, path]: inf where no call is live, -inf where no put is.
+        """
+        amount = table[units, paid]
+        live = (amount < np.inf) & (amount > NEVER_PUT) & (paid > 0)
+        if issuer:
+            amount = amount + self.model.cost * self.bonds.outstanding[units, paid]
+        out = np.full((units.size, discount.shape[1]), np.inf if table is self.bonds.tables.price else -np.inf)
+        at_once = live & (paid == at.month)
+        out[at_once] = amount[at_once][:, None]
+        later = np.flatnonzero(live & (paid > at.month))
+        if later.size:
+            n, p = np.repeat(later, discount.shape[1]), np.tile(np.arange(discount.shape[1]), later.size)
+            spreads = self.spreads.refunding[units, at.month] if issuer else self.spreads.valuation(units, at.month)
+            out[n, p] = self.settled(at.month, units[n], p, paid[n], amount[n], spreads[n], discount)
+        return out
+
     def values(self, month: int, units: IntArray, discount: Array, wanted: BoolArray) -> Array:
         """Holder's value, ex coupon, of securities not yet matured. [per 100 dirty], [unit, path], 0 where not wanted.
 

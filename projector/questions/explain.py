@@ -15,7 +15,7 @@ import numpy as np
 import numpy.typing as npt
 import pandas as pd
 
-from projector.bonds.decisions import SETTLED_BY, DecisionPass
+from projector.bonds.decisions import PUT, SETTLED_BY, DecisionPass
 from projector.questions.records import (
     BY_BOUND,
     BY_FINER,
@@ -97,7 +97,13 @@ def tell(prepared: Prepared, block: BlockResult, unit: int, path: int, solve_all
         cost=prepared.solver.model.cost,
         stated_price=bool(prepared.stated_rights[unit]),
         make_whole=bool((styles == "make_whole").any()),
-        rights=tuple(np.flatnonzero(np.isfinite(prepared.bonds.clean_price[unit])).tolist()),
+        rights=tuple(
+            (np.flatnonzero(np.isfinite(prepared.bonds.clean_price[unit])) - prepared.bonds.call_lag[unit]).tolist()
+        ),
+        announced=bool(prepared.bonds.announced[unit]),
+        redemption=float(prepared.bonds.redemption[unit]),
+        put=life.put,
+        notice=int(prepared.bonds.call_lag[unit]),
         decided=life.decided,
         paid=life.paid,
         months=life.frame(),
@@ -139,7 +145,18 @@ class Life:
     def last(self) -> int:
         """Month of payment, maturity or the horizon, whichever comes first."""
         ends = [int(self.prepared.bonds.maturity[self.unit]), self.prepared.months]
+        ends += [] if self.put is None else [self.put[0]]
         return min([*ends, self.paid] if self.paid is not None else ends)
+
+    @property
+    def put(self) -> tuple[int, int, float] | None:
+        """Month in which the holder's put is paid, month of his decision, clean price."""
+        events = self.block.events
+        mine = range(*events.start[self.unit, self.path - self.block.path_lo :][:2])
+        found = [e for e in mine if events.kind[e] == PUT]
+        if not found:
+            return None
+        return int(events.month[found[0]]), int(events.decided[found[0]]), float(events.price[found[0]])
 
     @cached_property
     def discounts(self) -> Callable[[int], Array]:
@@ -158,7 +175,7 @@ class Life:
 
     def frame(self) -> pd.DataFrame:
         """One row a month, columns as `records.COLUMNS`."""
-        decisions = {int(row["month"]): row for row in self.rows.to_dict("records")}
+        decisions = {int(row["month"]): row for row in self.rows.to_dict("records") if row["month"] <= self.last}
         rows = [self.month(m, decisions.get(m)) for m in range(self.last + 1)]
         critical = self.critical_yields(sorted(decisions))
         return pd.DataFrame([row | critical.get(m, {}) for m, row in enumerate(rows)], columns=list(COLUMNS))
@@ -195,10 +212,13 @@ class Life:
             return out
         by = SAID.get(SETTLED_BY[int(decision["by"])], BY_FINER)
         going_on, bar = self.continuation(m, decision), float(decision["bar"])
-        dirty = float(bonds.dirty_price[self.unit, m])
+        units = np.array([self.unit])
+        solver, at = self.prepared.solver, self.prepared.solver.groups(m, units)[0][0]
+        paid = solver.payment_month(units, m, at.call_lag)
+        dirty = float(solver.worth_now(at, units, paid, bonds.tables.price, False, self.discounts(m))[0, 0])
         held = self.holder_value(m)
         return out | {
-            "call_price": float(bonds.clean_price[self.unit, m]),
+            "call_price": float(bonds.clean_price[self.unit, paid[0]]),
             "bar": bar,
             "upper_bound": float(decision["upper_bound"]),
             "continuation": going_on,
@@ -223,8 +243,9 @@ class Life:
         if not (self.solve_all and np.isnan(known)):
             return known
         deciding = DecisionPass(self.prepared.solver, self.prepared.rule, self.prepared.months)
-        step, unit, bar = int(self.prepared.bonds.step[self.unit]), np.array([self.unit]), np.array([decision["bar"]])
-        return float(deciding.continuations(m, step, unit, np.zeros(1, np.int64), bar, self.discounts(m))[0][0])
+        units, bar = np.array([self.unit]), np.array([[decision["bar"]]])
+        at, sure = self.prepared.solver.groups(m, units)[0][0], np.full((1, 1), np.inf)
+        return float(deciding.continuations(at, units, sure, bar, -sure, self.discounts(m))[0][0, 0])
 
     def holder_value(self, m: int) -> float:
         """Holder's value of the bond that is not called this month, ex coupon. [per 100 dirty]"""

@@ -46,7 +46,7 @@ class CallStory:
     """The life of one security on one path, as an answer to why it was or was not called.
 
     decided, paid  month of the issuer's decision and of payment; None when it is not called
-    rights         months in which a right is live by the schedule, whether or not the security lives that long
+    rights         months in which a right can be decided by the schedule, whether or not the security lives that long
     make_whole     whether a make-whole right stands in the schedule (read, never used before the par-call date)
     """
 
@@ -64,6 +64,10 @@ class CallStory:
     stated_price: bool  # rights at a stated price; otherwise the par call of a make-whole security
     make_whole: bool
     rights: tuple[int, ...]
+    announced: bool  # called before the valuation date, paid at `maturity` at `redemption`
+    redemption: float  # [per 100 of the par left]
+    put: tuple[int, int, float] | None  # the holder's put: months of payment and decision, clean price
+    notice: int  # from the issuer's decision to the payment [month]
     decided: int | None
     paid: int | None
     months: pd.DataFrame

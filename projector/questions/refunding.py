@@ -105,10 +105,11 @@ class MonthQuestion:
         if discount is None:
             return float("nan")
         bonds = self.solver.bonds
-        step = int(bonds.step[self.unit])
-        jobs = Jobs(self.month, step, step, np.array([self.unit]), np.zeros(1, dtype=np.int64))
-        cost = self.solver.solve(jobs, discount, SECOND_GRID, False)[0]
-        return float(cost[0] - bonds.dirty_price[self.unit, self.month] - self.solver.model.cost)
+        units = np.array([self.unit])
+        at = self.solver.groups(self.month, units)[0][0]
+        jobs = Jobs(at._replace(offset=at.step), units, np.zeros(1, dtype=np.int64))
+        cost = self.solver.solve(jobs, discount, SECOND_GRID, bool(bonds.puttable[self.unit]))[0]
+        return float(cost[0] - self.solver.call_bar(at, units, discount)[0, 0])
 
     def yield_at(self, shift: float) -> float:
         """The issuer's refunding yield on the shifted curve. [1/year]"""

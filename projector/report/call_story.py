@@ -52,9 +52,9 @@ def as_settled(story: CallStory) -> CallStory:
 
 
 UNITS = (
-    "Per 100 of par; yields a year, bond-equivalent. bar = price + issuer's cost + accrued. Where going on is empty, "
-    "the upper bound lies under the bar and settled the decision. The issuer calls where refunding is at or under "
-    "critical."
+    "Per 100 of par; yields a year, bond-equivalent. bar = price + issuer's cost + accrued; with notice, of the month "
+    "of payment, seen from the decision. Where going on is empty, the upper bound lies under the bar and settled the "
+    "decision. The issuer calls where refunding is at or under critical."
 )
 
 
@@ -71,6 +71,9 @@ def title(story: CallStory) -> str:
 
 def headline(story: CallStory) -> str:
     """What happened and why, in plain words."""
+    if story.announced:
+        paid = f"month {fixed(story.maturity)} at {fixed(story.redemption, 2)} per 100 of the par left"
+        return f"{title(story)}: called before the valuation date; paid in {paid}. There was no decision left to take."
     if not len(story.live):
         return f"{title(story)}: {no_right(story)}"
     if story.decided is None:
@@ -98,6 +101,10 @@ def money(story: CallStory, amount: float) -> str:
 
 def end_of_life(story: CallStory) -> str:
     """Where a story that ends without a call ends."""
+    if story.put is not None:
+        paid, decided, price = story.put
+        said = "" if paid == decided else f" (decided in month {fixed(decided)})"
+        return f"The holder puts it in {when(at(story, paid))} at {fixed(price, 2)}{said}: holding on was worth less."
     last = story.months.to_dict("records")[-1]
     if story.maturity <= story.horizon:
         return f"It pays what was promised and matures in {when(last)}."
@@ -133,6 +140,12 @@ def called(story: CallStory, row: dict[str, Any]) -> str:
 
 def costs(story: CallStory, row: dict[str, Any]) -> str:
     """What the bar is made of."""
+    if story.notice:
+        due = f"cost {fixed(story.cost, 2)} and all interest until then"
+        return (
+            f"price {fixed(row['call_price'], 2)} paid {count_of(story.notice, 'month')} later, {due}, seen from the "
+            "decision"
+        )
     return f"price {fixed(row['call_price'], 2)}, cost {fixed(story.cost, 2)}, accrued {fixed(row['accrued'], 2)}"
 
 

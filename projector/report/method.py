@@ -166,7 +166,13 @@ CALL_RULE = (
     "refunding spread M-24 and with the issuer's cost inside every later right.",
     "The bar (M-21) is what calling now costs: clean price, issuer's cost, accrued interest.",
     "The issuer calls when continuation is at or above the bar (M-22); ties call.",
-    "A right with notice is refused by this version; the decision and the payment fall in the same month.",
+    "Where notice is due (in whole months, the nearest), the decision falls so many months before the payment. The bar "
+    "is then what calling costs seen from the decision: interest until the payment, price and cost, discounted on that "
+    "month's own curve with the refunding spread. What is announced stays announced.",
+    "Where the holder may put, he does so when going on is worth at most the put price to him, at the valuation "
+    "spread; on a date with both rights the issuer decides first. Such securities are solved without a bound.",
+    "Where a sinking payment may be doubled, the issuer retires as much again at 100 when going on costs at least 100 "
+    "and the cost; the schedule goes on for what is left in proportion.",
     "A make-whole right is not exercised before the par-call date; from that date the security is callable at 100.",
     "Most decisions are settled by a bound: a policy fixed in advance that costs less than the bar. The others are "
     "solved, and re-solved on finer grids when they lie close to the bar. Table 10.5 counts them.",

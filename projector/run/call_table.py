@@ -6,7 +6,7 @@ import numpy as np
 import numpy.typing as npt
 import pandas as pd
 
-from projector.bonds.decisions import CALL, KINDS
+from projector.bonds.decisions import CALL, KINDS, PUT
 from projector.run.block import BlockResult
 from projector.run.prepare import Prepared
 from projector.run.results import COLUMNS
@@ -110,10 +110,25 @@ def group_of_lot(prepared: Prepared) -> npt.NDArray[np.int64]:
     return np.array([at[(int(s), int(g))] for s, g in zip(lots.security, lots.segment)], dtype=np.int64)
 
 
+def puts_frame(prepared: Prepared, blocks: list[BlockResult]) -> pd.DataFrame:
+    """The puts table: what the company, as holder, gave back; lots of one security and segment added up."""
+    rows = pd.concat([call_rows(prepared, b) for b in blocks], ignore_index=True)
+    rows = rows[(rows["par_called"] > 0.0) & (rows["right"] == KINDS[PUT])]
+    rows = rows.assign(par_put=rows["par_called"], received=rows["par_called"] + rows["premium"])
+    keys = ["scenario", "security_id", "segment", "month"]
+    out = rows.groupby(keys, sort=False, as_index=False).agg(
+        decided=("decided", "first"), par_put=("par_put", "sum"), price=("price", "first"),
+        received=("received", "sum"),
+    )  # fmt: skip
+    order = {s: i for i, s in enumerate(prepared.paths.ids)}
+    out = out.assign(o=out["scenario"].map(order)).sort_values(["o", "month", "security_id", "segment"])
+    return out[list(COLUMNS["puts"])].reset_index(drop=True)
+
+
 def calls_frame(prepared: Prepared, blocks: list[BlockResult]) -> pd.DataFrame:
     """The calls table: lots of one security and segment added up, yields and years weighted by par."""
     rows = pd.concat([f(prepared, b) for b in blocks for f in (call_rows, announced_rows)], ignore_index=True)
-    rows = rows[rows["par_called"] > 0.0]
+    rows = rows[(rows["par_called"] > 0.0) & (rows["right"] != KINDS[PUT])]
     weighted = rows.assign(
         book_yield=rows["book_yield"] * rows["par_called"], years_to_worst=rows["years_to_worst"] * rows["par_called"]
     )

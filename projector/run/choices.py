@@ -137,7 +137,12 @@ def numerical_choices(study: Study) -> list[tuple[str, str, str, str]]:
             "default",
             "convention of the program",
         ),
-        ("Within a month", "order of events of convention C2; no notice", "default", "convention of the program"),
+        (
+            "Within a month",
+            "order of events of convention C2; notice in whole months, the nearest",
+            "default",
+            "convention of the program",
+        ),
     ]
 
 

@@ -111,8 +111,7 @@ COLUMNS: dict[str, dict[str, tuple[str, str]]] = {
         "decided": ("month", "month of the decision: before the payment where notice is due; 0 = before the valuation"),
         "right": (
             "-",
-            "stated price, par call of a make-whole security, sinking payment doubled, put (by the holder), or a call"
-            " announced before",
+            "stated price, par call of a make-whole security, sinking payment doubled, or announced before",
         ),
         "par_called": ("currency", "par called, after defaults and sales"),
         "price": ("per 100", "clean call price"),
@@ -121,6 +120,16 @@ COLUMNS: dict[str, dict[str, tuple[str, str]]] = {
         "purchase_yield": ("1/year", "yield of the purchase mix less its default cost, bond-equivalent"),
         "years_to_worst": ("year", "from the call to the old worst date"),
         "yield_given_up": ("currency", "par x (book yield - purchase yield) x years, lot by lot, added up"),
+    },
+    "puts": {
+        "scenario": ("-", "identifier"),
+        "security_id": ("-", "security"),
+        "segment": ("-", "segment"),
+        "month": ("month", "month of payment"),
+        "decided": ("month", "month of the holder's decision"),
+        "par_put": ("currency", "par put, after defaults and sales"),
+        "price": ("per 100", "clean put price"),
+        "received": ("currency", "price received, without accrued interest"),
     },
     "decisions": {
         "scenario": ("-", "identifier"),
@@ -141,7 +150,10 @@ COLUMNS: dict[str, dict[str, tuple[str, str]]] = {
         "coupon_rate": ("1/year", "coupon"),
         "coupon_frequency": ("1/year", "coupons a year, 0 = zero coupon"),
         "maturity_date": ("date", "maturity"),
-        "call_form": ("-", "none, european, bermudan, american, make_whole (with par call), or several joined by +"),
+        "call_form": (
+            "-",
+            "none, or joined by +: european, bermudan, american, make_whole (with par call), put, doubling, announced",
+        ),
         "first_call_date": ("date", "first date of a right at a stated price, empty when none"),
         "next_call_price": ("per 100", "clean price of that right"),
         "par": ("currency", "par over all lots"),
@@ -209,6 +221,7 @@ class RunResults:
     mix: pd.DataFrame
     measures: pd.DataFrame
     calls: pd.DataFrame
+    puts: pd.DataFrame
     decisions: pd.DataFrame
     securities: pd.DataFrame
     control: pd.DataFrame

@@ -11,7 +11,7 @@ from pathlib import Path
 from projector.bonds.store import SolveStore
 from projector.rates.paths import build_paths
 from projector.run.block import BlockResult, project
-from projector.run.call_table import calls_frame
+from projector.run.call_table import calls_frame, puts_frame
 from projector.run.checks import control_frame, curve_stage, special_cases, starting_asset_stage, stream_stage
 from projector.run.choices import choices_frame
 from projector.run.frames import (
@@ -117,6 +117,7 @@ def collect(staged: Staged, blocks: list[BlockResult]) -> RunResults:
         "mix": mix_frame(prepared, blocks),
         "measures": measures_frame(prepared, blocks, calls),
         "calls": calls,
+        "puts": puts_frame(prepared, blocks),
         "decisions": decisions_frame(prepared, blocks),
         "securities": securities_frame(prepared),
         "control": control_frame(prepared),

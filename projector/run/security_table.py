@@ -22,13 +22,18 @@ BELIEVABLE = 1.0  # a call days away at a loss has a yearly yield of thousands o
 STATED = ("american", "bermudan", "european")
 
 
-def call_form(row: dict[str, Any], rights: list[dict[str, Any]]) -> str:
+def call_form(terms: Terms) -> str:
     """Forms of right, joined; a make-whole security counts its par call with it."""
+    row, rights = terms.row, terms.calls
+    if terms.announced is not None:
+        return "announced"
     forms = [s for s in STATED if any(r["style"] == s for r in rights)]
     if any(r["style"] == "make_whole" for r in rights):
         forms.append("make_whole")
     elif row["par_call_date"] is not None:
         forms.append("american")
+    forms += ["put"] if terms.puts else []
+    forms += ["doubling"] if any(r["may_double"] for r in terms.sinking) else []
     return "+".join(dict.fromkeys(forms)) or "none"
 
 
@@ -48,7 +53,7 @@ def street_redemptions(row: dict[str, Any], rights: list[dict[str, Any]], settle
 
 def street_yield(bond: DatedBond, redemptions: list[Redemption], settlement: date, price: float) -> float:
     """Yield to worst at a clean price on exact dates, bond-equivalent. [1/year]; nan where none within 100 %"""
-    if price <= 100.0 and all(r.price >= 100.0 for r in redemptions):
+    if price <= 100.0 and not bond.steps and all(r.price >= 100.0 for r in redemptions):
         redemptions = []  # bought at a discount: being repaid sooner at par or more only yields more
     try:
         found = yield_to_worst(bond, settlement, price, redemptions, "street")
@@ -84,7 +89,7 @@ def securities_frame(prepared: Prepared) -> pd.DataFrame:
                 "security_id": name,
                 **{k: row[k] for k in ("issuer", "asset_class", "sector", "rating", "coupon_rate", "coupon_frequency")},
                 "maturity_date": row["maturity_date"].isoformat(),
-                "call_form": call_form(row, mine),
+                "call_form": call_form(terms),
                 "first_call_date": first_date(row, mine, study.valuation_date) if live.size else "",
                 "next_call_price": float(bonds.clean_price[u, live[0]]) if live.size else np.nan,
                 "par": par,

@@ -194,10 +194,10 @@ class Tables:
     default_costs: pd.DataFrame
     liability_streams: pd.DataFrame
     control_totals: pd.DataFrame
-    put_rights: pd.DataFrame  # this and the following are empty when the study names no such file
-    sinking_payments: pd.DataFrame
-    coupon_steps: pd.DataFrame
-    announced_calls: pd.DataFrame
+    put_rights: pd.DataFrame = field(default_factory=pd.DataFrame)  # this and the next: empty when not named
+    sinking_payments: pd.DataFrame = field(default_factory=pd.DataFrame)
+    coupon_steps: pd.DataFrame = field(default_factory=pd.DataFrame)
+    announced_calls: pd.DataFrame = field(default_factory=pd.DataFrame)
     rate_tables: dict[str, pd.DataFrame] = field(default_factory=dict)  # by the file name in the path source
 
 

@@ -10,6 +10,7 @@ from typing import Any
 import numpy as np
 import pytest
 
+from projector.bonds.exercise.path_kernels import Dates
 from projector.bonds.solving import THIRD_GRID, Jobs
 from projector.questions.explain import Life, tell
 from projector.questions.refunding import refunding_yield, shift_where_equal
@@ -143,7 +144,7 @@ def test_order_at_the_critical_shift_a_finer_grid_finds_going_on_at_the_bar(busy
         asked = Life(busy.prepared, busy_block, unit, 0, False).question(month)
         shift = asked.critical_shift()
         assert shift == pytest.approx(asked.critical_shift(0.01), abs=3e-7)  # wherever the search begins
-        jobs = Jobs(month, step, step, np.array([unit]), np.array([0]))
+        jobs = Jobs(Dates(month, step, step, 0, 0), np.array([unit]), np.array([0]))
         cost = solver.solve(jobs, asked.discount(shift), THIRD_GRID, False)[0][0]
         assert cost == pytest.approx(bonds.dirty_price[unit, month] + solver.model.cost, abs=0.0005)
     assert len(months) == 4

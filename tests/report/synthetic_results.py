@@ -85,6 +85,7 @@ def build(options: Options | None = None) -> RunResults:
         "mix": _mix(opt, names, balance),
         "measures": _measures(opt, balance, calls, securities, names),
         "calls": calls,
+        "puts": pd.DataFrame(columns=list(COLUMNS["puts"])),
         "decisions": decisions,
         "securities": securities,
         "control": _control(opt, study, securities, balance),
@@ -258,7 +259,7 @@ def _calls(opt: Options, securities: pd.DataFrame, names: list[str]) -> tuple[pd
                                   "bound" if bound else "solve", called))  # fmt: skip
                 if called:
                     par, years = bond.par * 0.98, max((last - month) / 12 - 1, 0.0)
-                    calls.append((scenario, bond.security_id, segments[j % len(segments)], month, "stated price",
+                    calls.append((scenario, bond.security_id, segments[j % len(segments)], month, month, "stated price",
                                   par, 102.0, par * 0.02, bond.book_yield, refunding, years,
                                   par * (bond.book_yield - refunding) * years))  # fmt: skip
                     break

@@ -16,6 +16,7 @@ from projector.report.parts import LARGEST_SHOWN, LONG_TABLE, Cell, Chart, Colum
 from projector.report.words import explained_call
 
 NO_CALL = "not called"
+DOUBLED, ANNOUNCED = "sinking payment doubled", "announced before"
 DECIDED_BY = ("bound", "solve", "second grid", "third grid")
 
 
@@ -28,6 +29,7 @@ class Calls:
     given_up: Table = field(metadata=told("table 10.1"))
     explained: Table = field(metadata=told("table 10.4"))
     decided: Table = field(metadata=told("table 10.5"))
+    other: Table = field(metadata=told("table 10.6"))
     par: Chart = field(metadata=told("chart 10.1"))
     map: Chart = field(metadata=told("chart 10.2"))
     sentences: tuple[str, ...] = field(metadata=told("three decisions in words"))
@@ -51,6 +53,7 @@ class CallReading:
     def months(self) -> dict[tuple[str, str], int]:
         """Month of the first payment by security and scenario."""
         frame = self.reading.results.calls
+        frame = frame[frame["right"] != DOUBLED]
         found: dict[tuple[str, str], int] = {}
         for security, scenario, month in zip(frame["security_id"], frame["scenario"], frame["month"], strict=True):
             key = str(security), str(scenario)
@@ -71,8 +74,9 @@ def calls(reading: Reading) -> Calls:
     chosen = _chosen(reading, found)
     return Calls(
         any_callable=bool(reading.callable_ids), largest=_largest(found), given_up=_given_up(found),
-        explained=_explained(reading, chosen), decided=_decided(reading), map=call_map(reading, found.months),
-        par=par_called(reading), sentences=tuple(_sentence(reading, *item) for item in chosen),
+        explained=_explained(reading, chosen), decided=_decided(reading), other=_other(reading),
+        map=call_map(reading, found.months), par=par_called(reading),
+        sentences=tuple(_sentence(reading, *item) for item in chosen),
         shown_of=reading.shown_of,
     )  # fmt: skip
 
@@ -149,6 +153,30 @@ def _given_up(found: CallReading) -> Table:
         columns=(Column(name="Securities called"), Column(name="Par called"),
                  Column(name="Of it at stated prices"), Column(name="Of callable par", unit="%"),
                  Column(name="Premium"), Column(name="Yield given up"), Column(name="Later calls would", words=True)),
+    )  # fmt: skip
+
+
+def _other(reading: Reading) -> Table:
+    """Par that left by a put, a doubled sinking payment, or a call announced before the valuation date."""
+    calls, puts = reading.results.calls, reading.results.puts
+    rows = []
+    for name in reading.scenarios:
+        called, put = calls[calls["scenario"] == name], puts[puts["scenario"] == name]
+        doubled, before = (called.loc[called["right"] == right, "par_called"] for right in (DOUBLED, ANNOUNCED))
+        rows.append(Row(name=reading.scenario(name), own_words=True, cells=(
+            reading.cell(total(put["par_put"]), f"puts.par_put/all/{name}", "M-31"),
+            reading.cell(total(put["received"]), f"puts.received/all/{name}", "M-31"),
+            reading.cell(total(doubled), f"calls.par_called/doubled/{name}", "M-31"),
+            reading.cell(total(before), f"calls.par_called/announced/{name}", "M-31"),
+        )))  # fmt: skip
+    return Table(
+        number="10.6", caption="Par that left by other rights",
+        basis=f"{reading.money.unit} over the horizon, all segments. Puts are the holder's decision: going on is worth "
+              "at most the put price to him. Doubled: as much again as a sinking payment, retired at 100. Announced: "
+              "called by the valuation date, paid after it; it stands in table 10.1 too, as doubled par does.",
+        row_head="Scenario", rows=tuple(rows), why_missing="the results hold no such figure for the scenario",
+        columns=(Column(name="Par put"), Column(name="Received for it"), Column(name="Sinking payments doubled"),
+                 Column(name="Calls announced before")),
     )  # fmt: skip
 
 
