@@ -33,6 +33,7 @@ from harbour_ridge_liabilities import (
     payout_stream,
 )
 from harbour_ridge_rights import make_bonds, make_lots
+from harbour_ridge_terms import notice_days, special_tables
 from harbour_ridge_texts import SEGMENTS, study_text
 
 from projector.rates.paths import build_paths
@@ -99,7 +100,7 @@ def right_rows(bonds: Iterable[Bond]) -> Rows:
             "style": r.style,
             "price": "" if r.price is None else f"{r.price:.3f}",
             "make_whole_spread_bp": "" if r.make_whole_bp is None else r.make_whole_bp,
-            "notice_days": 0,
+            "notice_days": notice_days(b),
         }
         for b in bonds
         for r in b.rights
@@ -216,6 +217,8 @@ class Demo:
         write_csv(
             folder / "default_costs.csv", [{"rating": r, "annual_cost": f"{c:.4f}"} for r, c in DEFAULT_COST.items()]
         )
+        for name, rows in special_tables(self.bonds).items():
+            write_csv(folder / f"{name}.csv", rows)
         write_parquet(folder / "liability_streams.parquet", stream_frame(self.blocks, self.ids))
         write_csv(folder / "control_totals.csv", control_rows(self.lots, self.blocks, self.cash))
         (folder / "study.toml").write_text(study_text(self.cash, self.digest), encoding="utf-8", newline="\n")

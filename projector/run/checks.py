@@ -16,7 +16,7 @@ from projector.study.records import Study
 from projector.study.streamchecks import check_stream_scenarios
 
 CENT = 0.005
-NAMED_AT_MOST = 20
+NAMED_AT_MOST, MOST_TO_NAME = 20, 60  # of more securities only the count is told
 
 
 def curve_stage(study: Study, paths: PathSet) -> None:
@@ -121,6 +121,12 @@ def control_frame(prepared: Prepared) -> pd.DataFrame:
     return out.assign(difference=out["read"] - out["ledger"]).reset_index(drop=True)
 
 
+def named(names: list[str]) -> str:
+    """The first names, and how many more there are."""
+    more = f", and {len(names) - NAMED_AT_MOST} more" if len(names) > NAMED_AT_MOST else ""
+    return ", ".join(names[:NAMED_AT_MOST]) + more if len(names) <= MOST_TO_NAME else ""
+
+
 def special_cases(prepared: Prepared) -> pd.DataFrame:
     """Counts of the special cases of C6 and others an examiner asks for, with par."""
     bonds, fitted, spreads = prepared.bonds, prepared.calibrated, prepared.solver.spreads
@@ -149,6 +155,23 @@ def special_cases(prepared: Prepared) -> pd.DataFrame:
             above,
             "an optimal issuer would call; the stated price then sets a low or negative spread",
         ),
+        ("call announced by the valuation date", bonds.announced, "paid as announced; no right is left"),
+        (
+            "calls with notice of a month or more",
+            stated & (bonds.call_lag > 0),
+            "decided so many whole months before the payment, the nearest to the days stated",
+        ),
+        ("puttable by the holder", bonds.puttable, "put when going on is worth at most the put price; always solved"),
+        (
+            "repaid in parts before maturity",
+            np.array([bool(prepared.terms_of[s].sinking) for s in bonds.ids]),
+            "pro rata at 100; where a payment may be doubled the issuer decides each time",
+        ),
+        (
+            "coupon steps",
+            np.array([bool(prepared.terms_of[s].steps) for s in bonds.ids]),
+            "each rate from its own coupon date on, in payments, accrued interest and exercise",
+        ),
         (
             "call rows wholly before the valuation date",
             np.array([s in past for s in bonds.ids]),
@@ -161,7 +184,7 @@ def special_cases(prepared: Prepared) -> pd.DataFrame:
                 "case": case,
                 "count": int(mask.sum()),
                 "par": float(par[mask].sum()),
-                "names": ", ".join(sorted(np.array(bonds.ids)[mask])[:NAMED_AT_MOST]) if 0 < mask.sum() <= 60 else "",
+                "names": named(sorted(np.array(bonds.ids)[mask])),
                 "treatment": text,
             }
             for case, mask, text in cases

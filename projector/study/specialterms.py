@@ -127,7 +127,8 @@ def _sinking_errors(joined: pd.DataFrame, at: RowErrors, calls: pd.DataFrame, va
     day = joined["payment_date"]
     column: dict[str, Any] = {"code": "E424", "column": "payment_date"}
     total = joined.groupby("security_id")["share_of_par"].transform("sum")
-    notice = calls.assign(months=calls["notice_days"].map(notice_months)).groupby("security_id")["months"].max()
+    used = calls[calls["style"] != "make_whole"]  # a make-whole right is never exercised before the par-call date
+    notice = used.assign(months=used["notice_days"].map(notice_months)).groupby("security_id")["months"].max()
     slow = joined["security_id"].map(notice).fillna(0) > 0
     return [
         *at(
