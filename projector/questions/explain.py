@@ -15,7 +15,7 @@ import numpy as np
 import numpy.typing as npt
 import pandas as pd
 
-from projector.bonds.decisions import PUT, SETTLED_BY, DecisionPass
+from projector.bonds.decisions import DOUBLE, PUT, SETTLED_BY, DecisionPass
 from projector.questions.records import (
     BY_BOUND,
     BY_FINER,
@@ -165,13 +165,21 @@ class Life:
 
     @cached_property
     def par_held(self) -> Array:
-        """Par held before each month's own call: lots, less what defaulted, less what was sold. [currency], (month,)"""
+        """Par held before each month's own call: lots, less repaid, defaulted and sold. [currency], (month,)"""
         holdings, column = self.prepared.holdings, self.path - self.block.path_lo
         held = self.block.held[:, :, column]
         total = np.zeros(held.shape[0])
         for k in np.flatnonzero(holdings.security == self.unit):
             total = total + holdings.par[k] * held[:, holdings.group[k]]
-        return np.asarray(total * self.prepared.survival[self.unit, : total.size])
+        total = total * self.prepared.survival[self.unit, : total.size]
+        outstanding = np.ones(total.size)  # of the par of month 0, by its schedule
+        upto = min(total.size, self.prepared.bonds.last_month + 1)
+        outstanding[:upto] = self.prepared.bonds.outstanding[self.unit, :upto]
+        events = self.block.events
+        for e in range(*events.start[self.unit, column : column + 2]):
+            if events.kind[e] == DOUBLE:
+                total[events.month[e] + 1 :] *= 1.0 - events.share[e]
+        return np.asarray(total * outstanding)
 
     def frame(self) -> pd.DataFrame:
         """One row a month, columns as `records.COLUMNS`."""

@@ -128,6 +128,7 @@ def called(story: CallStory, row: dict[str, Any]) -> str:
     paid = at(story, story.paid) if story.paid not in (None, story.decided) and story.paid is not None else None
     kind = "" if story.stated_price else ", a par call"
     accrued = f" plus accrued {fixed(row['accrued'], 2)}" if row["accrued"] else ""
+    accrued = " plus interest accrued by then" if paid else accrued
     head = f"called in {when(row)} at {fixed(row['call_price'], 2)}{accrued}{kind}"
     head += f", paid in {when(paid)}." if paid else "."
     places = 3 if row["issuer_saving"] >= CLOSE else 5

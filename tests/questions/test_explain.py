@@ -215,10 +215,12 @@ def test_order_explanations_of_the_demo_are_the_run_s() -> None:
     calls = calls_frame(prepared, blocks)
     months = np.concatenate([block.events.months() for block in blocks], axis=1)
     draw = random.Random(2022)
-    table = calls.groupby(["security_id", "scenario"])["month"].first()
+    calls = calls[calls["right"].isin(["stated price", "par call"])]
+    table = calls.groupby(["security_id", "scenario"])["decided"].first()
     par = calls.groupby(["security_id", "scenario"])["par_called"].sum()
     called = draw.sample(sorted(table.index.tolist()), CALLED)
     with_rights = prepared.bonds.with_rights()
+    with_rights &= np.isfinite(prepared.bonds.clean_price).any(axis=1)
     never = sorted((int(u), int(p)) for u, p in np.argwhere(months < 0) if with_rights[u])
     uncalled = [(prepared.bonds.ids[u], prepared.paths.ids[p]) for u, p in draw.sample(never, UNCALLED)]
     alone: dict[int, Any] = {}

@@ -111,7 +111,10 @@ def test_known_what_was_sold_before_its_call_is_said(called: CallStory) -> None:
 def test_known_a_call_paid_later_names_both_months(called: CallStory, kept: CallStory) -> None:
     months = kept.months.assign(decision=called.months["decision"].reindex(kept.months.index))
     later = replace(called, paid=13, months=months.assign(critical_yield=0.1))
-    assert "called in month 12 (2023-12-31) at 100.00, paid in month 13 (2024-01-31)." in headline(later)
+    assert (
+        "called in month 12 (2023-12-31) at 100.00 plus interest accrued by then, paid in month 13 (2024-01-31)."
+        in headline(later)
+    )
 
 
 def test_order_a_tie_is_printed_with_the_decimals_that_show_it(called: CallStory) -> None:
