@@ -9,6 +9,7 @@ from __future__ import annotations
 from pathlib import Path
 
 BANDS = (9, 13, 21)
+LANES = (16, 1)
 
 HEAD = '''"""Weighted sums over a band, unrolled (written by `band_writer`; do not edit by hand)."""
 
@@ -22,39 +23,38 @@ from projector.arithmetic.kernels import Floats, Integers, kernel
 FUNCTION = '''
 
 @kernel
-def step_back_{band}(
-    lo: int, hi: int, base: int, row: int, lanes: int, band_start: Integers, weights: Floats, carried: Floats,
+def step_back_{band}_by_{lanes}(
+    lo: int, hi: int, base: int, row: int, band_start: Integers, weights: Floats, carried: Floats,
     value: Floats, flow: Floats, factor: Floats, out: Floats,
 ) -> None:  # fmt: skip
-    """One step of the recursion, band of {band} nodes: out = factor x sum of W (V + flow), all nodes and lanes."""
-    n = np.uint64(16)  # lanes: a constant, so that the compiler needs no remainder
+    """One step of the recursion, band of {band} nodes by {lanes}: out = factor x (sum of W V + paid on the way)."""
+    n = np.uint64({lanes})  # a constant: no remainder
     for i in range(lo, hi + 1):
         r = np.uint64(i - row)
         s = np.uint64(band_start[r] - base) * n
         o = np.uint64(i - base) * n
         total = carried[r]
 {loads}
-        for lane in range(n):
-            out[o + lane] = factor[lane] * (
-{terms}
-                + total * flow[lane]
-            )
-'''
+{body}'''
 
 
-def one_function(band: int) -> str:
-    """Source of the kernel for one band width."""
+def one_function(band: int, lanes: int) -> str:
+    """Source of the kernel for one band width and number of lanes."""
     loads = "\n".join(f"        w{j} = weights[r, np.uint64({j})]" for j in range(band))
+    margin, lane = ("        ", "") if lanes == 1 else ("            ", " + lane")
+    head = "" if lanes == 1 else "        for lane in range(n):\n"
+    at = "np.uint64(0)" if lanes == 1 else "lane"
     terms = "\n".join(
-        f"                {'+ ' if j else ''}w{j} * value[s + lane{f' + np.uint64({j}) * n' if j else ''}]"
+        f"{margin}    {'+ ' if j else ''}w{j} * value[s{lane}{f' + np.uint64({j}) * n' if j else ''}]"
         for j in range(band)
     )
-    return FUNCTION.format(band=band, loads=loads, terms=terms)
+    body = f"{head}{margin}out[o{lane}] = factor[{at}] * (\n{terms}\n{margin}    + total * flow[{at}]\n{margin})\n"
+    return FUNCTION.format(band=band, lanes=lanes, loads=loads, body=body)
 
 
 def band_kernels() -> str:
     """Source of the whole file."""
-    return HEAD + "".join(one_function(band) for band in BANDS)
+    return HEAD + "".join(one_function(band, lanes) for band in BANDS for lanes in LANES)
 
 
 if __name__ == "__main__":

@@ -14,7 +14,7 @@ from projector.bonds.exercise.solver_kernels import (
     OperatorTables,
     Rights,
     leads,
-    solve_lanes,
+    solve_batch,
 )
 from projector.bonds.exercise.step_operator import Grid, Operator, build_operator
 
@@ -103,14 +103,15 @@ def solve(op: Operator, problem: Problem, both: bool = True) -> tuple[Array, Arr
     lead = np.empty((6, count))
     leads(problem.steps, first, problem.ratio, problem.holder_ratio, problem.flow, lead)
     if count == lanes:  # already one full batch
-        solve_lanes(tables, 0, lead, problem.steps, first, last, terms, rights, issuer, holder)
+        solve_batch(*tables, lead, problem.steps, first, last, *terms, *rights, issuer, holder)
         return issuer, holder
     out_issuer, out_holder = np.empty(lanes), np.empty(lanes)
     for start in range(0, count, lanes):
         take = np.minimum(np.arange(start, start + lanes), count - 1)
         part = LaneTerms(*(np.ascontiguousarray(table[:, take]) for table in terms))
         some = np.ascontiguousarray(lead[:, take])
-        solve_lanes(tables, 0, some, problem.steps[take], first[take], last[take], part, rights, out_issuer, out_holder)
+        rows = problem.steps[take], first[take], last[take]
+        solve_batch(*tables, some, *rows, *part, *rights, out_issuer, out_holder)
         stop = min(start + lanes, count)
         issuer[start:stop] = out_issuer[: stop - start]
         holder[start:stop] = out_holder[: stop - start]

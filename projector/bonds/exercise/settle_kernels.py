@@ -60,7 +60,7 @@ class StepTerms(NamedTuple):
     put_scale: Floats  # -1: a put's kink turns the other way
 
 
-@kernel
+@inlined
 def exercise(
     lo: int, hi: int, base: int, lanes: int, bar: Floats, price: Floats, both: bool, c: Floats, h: Floats, v: Floats,
     w: Floats, kink: Integers, flat_low: Floats, flat_high: Floats,
@@ -93,23 +93,25 @@ def exercise(
 @kernel
 def double(lo: int, hi: int, base: int, lanes: int, both: bool, s: Space, t: StepTerms) -> None:
     """Where no call takes all: a share is retired at the nodes where going on costs at least the doubling's bar."""
+    bar, price, shares, double_bar, double_price = t.bar, t.price, t.share, t.double_bar, t.double_price
+    c, h, v, w, kink, double_kink = s.c, s.h, s.v, s.w, s.kink, s.double_kink
     for lane in range(lanes):
-        share, count = t.share[lane], 0
+        share, count = shares[lane], 0
         if share > 0.0:
             for i in range(lo - base, hi + 1 - base):
                 at = i * lanes + lane
-                if s.c[at] < t.double_bar[lane]:
+                if c[at] < double_bar[lane]:
                     break
                 count += 1
-                if i + base > s.kink[lane]:
-                    s.v[at] = share * t.double_bar[lane] + (1.0 - share) * s.c[at]
+                if i + base > kink[lane]:
+                    v[at] = share * double_bar[lane] + (1.0 - share) * c[at]
                     if both:
-                        s.w[at] = share * t.double_price[lane] + (1.0 - share) * s.h[at]
-            for i in range(lo - base, min(s.kink[lane], hi) + 1 - base):  # called: the full price, not the bar of C
-                s.v[i * lanes + lane] = share * t.double_bar[lane] + (1.0 - share) * t.bar[lane]
+                        w[at] = share * double_price[lane] + (1.0 - share) * h[at]
+            for i in range(lo - base, min(kink[lane], hi) + 1 - base):  # called: the full price, not the bar of C
+                v[i * lanes + lane] = share * double_bar[lane] + (1.0 - share) * bar[lane]
                 if both:
-                    s.w[i * lanes + lane] = share * t.double_price[lane] + (1.0 - share) * t.price[lane]
-        s.double_kink[lane] = lo - 1 + count
+                    w[i * lanes + lane] = share * double_price[lane] + (1.0 - share) * price[lane]
+        double_kink[lane] = lo - 1 + count
 
 
 @kernel
@@ -117,19 +119,21 @@ def put(
     lo: int, hi: int, base: int, lanes: int, s: Space, flat_low: Floats, flat_high: Floats
 ) -> None:  # fmt: skip
     """Where no call takes all, the holder puts at the nodes where going on is worth at most the price; ties put."""
+    v, w, p, ph, pyh, kink = s.v, s.w, s.p, s.ph, s.pyh, s.kink
+    put_kink = s.put_kink
     for lane in range(lanes):
         kept = 0
         for i in range(lo - base, hi + 1 - base):
             at = i * lanes + lane
-            if s.pyh[at] > 0.0:
+            if pyh[at] > 0.0:
                 kept += 1
-            elif i + base > s.kink[lane]:
-                s.v[at] = s.p[at]
-                s.w[at] = s.ph[at]
-        s.put_kink[lane] = lo - 1 + kept
+            elif i + base > kink[lane]:
+                v[at] = p[at]
+                w[at] = ph[at]
+        put_kink[lane] = lo - 1 + kept
         if kept < hi + 1 - lo:
             flat_high[lane] = 1.0
-            if kept == 0 and s.kink[lane] < lo:
+            if kept == 0 and kink[lane] < lo:
                 flat_low[lane] = 1.0
 
 
@@ -187,7 +191,7 @@ def scatter_six(lanes: int, base: int, kink: Integers, scale: Floats, work: Floa
                 o += np.uint64(16)
 
 
-@kernel
+@inlined
 def correct(
     lo: int, hi: int, base: int, lanes: int, bar: Floats, price: Floats, scale: Floats, both: bool, c: Floats,
     h: Floats, kink: Integers, v: Floats, w: Floats, work: Floats,
@@ -216,7 +220,7 @@ def correct(
         scatter_six(lanes, base, kink, scale, work, w)
 
 
-@kernel
+@inlined
 def extend(
     lo: int, hi: int, base: int, lanes: int, reach: int, flat_low: Floats, flat_high: Floats, value: Floats,
     work: Floats,
@@ -249,7 +253,7 @@ def add_columns(lo: int, hi: int, base: int, lanes: int, sign: float, source: Fl
         target[n] += sign * source[n]
 
 
-@kernel
+@inlined
 def settle(
     lo: int, hi: int, base: int, lanes: int, reach: int, both: bool, notice: bool, puts: bool, doubles: bool, s: Space,
     t: StepTerms, flat_low: Floats, flat_high: Floats, zero: Floats, work: Floats,
@@ -258,43 +262,46 @@ def settle(
 
     With notice c and h are left as their differences to what a call is worth; `bar` is then 0, or inf.
     """
+    bar, price, share, double_bar, double_price = t.bar, t.price, t.share, t.double_bar, t.double_price
+    call_scale, put_scale = t.call_scale, t.put_scale
+    c, h, v, w, e, eh = s.c, s.h, s.v, s.w, s.e, s.eh
+    p, ph, py, pyh, kink, double_kink = s.p, s.ph, s.py, s.pyh, s.kink, s.double_kink
+    put_kink, used = s.put_kink, s.used
     if puts:
         for n in range(np.uint64((lo - base) * lanes), np.uint64((hi + 1 - base) * lanes)):
-            s.py[n] = s.c[n] - s.p[n]
-            s.pyh[n] = s.h[n] - s.ph[n]
+            py[n] = c[n] - p[n]
+            pyh[n] = h[n] - ph[n]
     if notice:
-        add_columns(lo, hi, base, lanes, -1.0, s.e, s.c)
+        add_columns(lo, hi, base, lanes, -1.0, e, c)
         if both:
-            add_columns(lo, hi, base, lanes, -1.0, s.eh, s.h)
-    exercise(lo, hi, base, lanes, t.bar, t.price, both, s.c, s.h, s.v, s.w, s.kink, flat_low, flat_high)
+            add_columns(lo, hi, base, lanes, -1.0, eh, h)
+    exercise(lo, hi, base, lanes, bar, price, both, c, h, v, w, kink, flat_low, flat_high)
     if doubles:
         double(lo, hi, base, lanes, both, s, t)
     if notice:
-        add_columns(lo, hi, base, lanes, 1.0, s.e, s.v)
+        add_columns(lo, hi, base, lanes, 1.0, e, v)
         if both:
-            add_columns(lo, hi, base, lanes, 1.0, s.eh, s.w)
+            add_columns(lo, hi, base, lanes, 1.0, eh, w)
     if puts:
         put(lo, hi, base, lanes, s, flat_low, flat_high)
     if reach > 0:
         if notice:  # what is exercised there still depends on the node
             flat_low[:] = 0.0
             flat_high[:] = 0.0
-        extend(lo, hi, base, lanes, reach, flat_low, flat_high, s.v, work)
+        extend(lo, hi, base, lanes, reach, flat_low, flat_high, v, work)
         if both:
-            extend(lo, hi, base, lanes, reach, flat_low, flat_high, s.w, work)
+            extend(lo, hi, base, lanes, reach, flat_low, flat_high, w, work)
     for lane in range(lanes):
-        doubled = doubles and s.double_kink[lane] >= lo
-        s.used[lane] = s.used[lane] or s.kink[lane] >= lo or doubled or (puts and s.put_kink[lane] < hi)
-    correct(lo, hi, base, lanes, t.bar, t.price, t.call_scale, both, s.c, s.h, s.kink, s.v, s.w, work)
+        doubled = doubles and double_kink[lane] >= lo
+        used[lane] = used[lane] or kink[lane] >= lo or doubled or (puts and put_kink[lane] < hi)
+    correct(lo, hi, base, lanes, bar, price, call_scale, both, c, h, kink, v, w, work)
     if doubles:
-        correct(
-            lo, hi, base, lanes, t.double_bar, t.double_price, t.share, both, s.c, s.h, s.double_kink, s.v, s.w, work
-        )
+        correct(lo, hi, base, lanes, double_bar, double_price, share, both, c, h, double_kink, v, w, work)
     if puts:
         for lane in range(lanes):  # a put that begins where calls end has no kink of its own
-            if s.put_kink[lane] <= s.kink[lane]:
-                s.put_kink[lane] = lo - 1
-        correct(lo, hi, base, lanes, zero, zero, t.put_scale, True, s.pyh, s.py, s.put_kink, s.w, s.v, work)
+            if put_kink[lane] <= kink[lane]:
+                put_kink[lane] = lo - 1
+        correct(lo, hi, base, lanes, zero, zero, put_scale, True, pyh, py, put_kink, w, v, work)
 
 
 @kernel

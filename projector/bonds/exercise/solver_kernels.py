@@ -11,8 +11,15 @@ from typing import NamedTuple
 
 import numpy as np
 
-from projector.arithmetic.kernels import Flags, Floats, Integers, kernel
-from projector.bonds.exercise.band_kernels import step_back_9, step_back_13, step_back_21
+from projector.arithmetic.kernels import Flags, Floats, Integers, inlined, kernel
+from projector.bonds.exercise.band_kernels import (
+    step_back_9_by_1,
+    step_back_9_by_16,
+    step_back_13_by_1,
+    step_back_13_by_16,
+    step_back_21_by_1,
+    step_back_21_by_16,
+)
 from projector.bonds.exercise.settle_kernels import (
     NEVER_PUT,
     Space,
@@ -93,26 +100,27 @@ def payment_columns(
 
     final  paid on top of the last; at once where there is no lag and `stop` is k
     """
+    lag, row, growth, straight_conv = op.lag, op.row, op.growth, op.straight_conv
     n, at = np.uint64(lanes), np.uint64((lo - base) * lanes + lane)
-    nodes, low = np.uint64(hi + 1 - lo), np.uint64(lo - op.row)
-    now = final if stop == k and not op.lag else 0.0
+    nodes, low = np.uint64(hi + 1 - lo), np.uint64(lo - row)
+    now = final if stop == k and not lag else 0.0
     for i in range(nodes):
         column[at + i * n] = now
     forward = 1.0
     for j in range(k, stop + 1):
         if j > k:
             forward = forward * ratio[j - 1 - begin, lane]
-        elif not op.lag:
+        elif not lag:
             continue
         amount = flow[j - begin, lane]
         if j == stop:
             amount += final
-        here = forward * paid_ratio[j - begin, lane] if op.lag else forward
-        weight = amount * here * op.straight_conv[k, j - k]
+        here = forward * paid_ratio[j - begin, lane] if lag else forward
+        weight = amount * here * straight_conv[k, j - k]
         if weight != 0.0:
             ahead = np.uint64(j - k)
             for i in range(nodes):
-                column[at + i * n] += weight * op.growth[ahead, low + i]
+                column[at + i * n] += weight * growth[ahead, low + i]
 
 
 @kernel
@@ -133,7 +141,7 @@ def step_back_any(
             out[o + lane] = factor[lane] * (total + carried[r] * flow[lane])
 
 
-@kernel
+@inlined
 def step_back(
     lo: int, hi: int, base: int, row: int, lanes: int, band: int, band_start: Integers, weights: Floats,
     carried: Floats, value: Floats, flow: Floats, factor: Floats, out: Floats,
@@ -144,11 +152,17 @@ def step_back(
     at the step come from the sum of the row's weights.
     """
     if lanes == LANES and band == 9:
-        step_back_9(lo, hi, base, row, lanes, band_start, weights, carried, value, flow, factor, out)
+        step_back_9_by_16(lo, hi, base, row, band_start, weights, carried, value, flow, factor, out)
     elif lanes == LANES and band == 13:
-        step_back_13(lo, hi, base, row, lanes, band_start, weights, carried, value, flow, factor, out)
+        step_back_13_by_16(lo, hi, base, row, band_start, weights, carried, value, flow, factor, out)
     elif lanes == LANES and band == 21:
-        step_back_21(lo, hi, base, row, lanes, band_start, weights, carried, value, flow, factor, out)
+        step_back_21_by_16(lo, hi, base, row, band_start, weights, carried, value, flow, factor, out)
+    elif lanes == 1 and band == 9:
+        step_back_9_by_1(lo, hi, base, row, band_start, weights, carried, value, flow, factor, out)
+    elif lanes == 1 and band == 13:
+        step_back_13_by_1(lo, hi, base, row, band_start, weights, carried, value, flow, factor, out)
+    elif lanes == 1 and band == 21:
+        step_back_21_by_1(lo, hi, base, row, band_start, weights, carried, value, flow, factor, out)
     else:
         step_back_any(lo, hi, base, row, lanes, band, band_start, weights, carried, value, flow, factor, out)
 
@@ -191,27 +205,42 @@ def space(size: int, lanes: int, rights: Rights) -> Space:
     )  # fmt: skip
 
 
-@kernel
+@inlined
 def step_terms(
     k: int, begin: int, first: Integers, last: Integers, terms: LaneTerms, rights: Rights, out: StepTerms
 ) -> None:  # fmt: skip
     """Fills in what each lane's rights are at step k. With notice the differences are settled against nothing."""
+    out_bar, out_price, out_share, out_double_bar, out_double_price, out_call_scale = (
+        out.bar,
+        out.price,
+        out.share,
+        out.double_bar,
+        out.double_price,
+        out.call_scale,
+    )
+    call_price, call_bar, double_share, double_price, double_bar = (
+        terms.price,
+        terms.bar,
+        terms.share,
+        terms.double_price,
+        terms.double_bar,
+    )
     for lane in range(first.shape[0]):
         live = first[lane] > 0 and k >= first[lane] and k <= last[lane]
-        bar = terms.bar[k - begin, lane] if live else np.inf
-        price = terms.price[k - begin, lane] if live else np.inf
+        bar = call_bar[k - begin, lane] if live else np.inf
+        price = call_price[k - begin, lane] if live else np.inf
         if rights.notice:
             bar, price = (0.0 if bar < np.inf else np.inf), 0.0
-        out.bar[lane], out.price[lane] = bar, price
+        out_bar[lane], out_price[lane] = bar, price
         if rights.doubles:
-            share = terms.share[k - begin, lane] if live else 0.0
-            out.share[lane] = share
-            out.double_bar[lane] = terms.double_bar[k - begin, lane] if live else np.inf
-            out.double_price[lane] = terms.double_price[k - begin, lane] if live else np.inf
-            out.call_scale[lane] = 1.0 - share
+            share = double_share[k - begin, lane] if live else 0.0
+            out_share[lane] = share
+            out_double_bar[lane] = double_bar[k - begin, lane] if live else np.inf
+            out_double_price[lane] = double_price[k - begin, lane] if live else np.inf
+            out_call_scale[lane] = 1.0 - share
             if share > 0.0 and bar < np.inf:  # the call of all, as a threshold of going on before the doubling
-                out.bar[lane] = (bar - share * out.double_bar[lane]) / (1.0 - share)
-                out.price[lane] = (price - share * out.double_price[lane]) / (1.0 - share)
+                out_bar[lane] = (bar - share * out_double_bar[lane]) / (1.0 - share)
+                out_price[lane] = (price - share * out_double_price[lane]) / (1.0 - share)
 
 
 @kernel
@@ -220,51 +249,64 @@ def right_columns(
     hi: int, base: int, s: Space,
 ) -> None:  # fmt: skip
     """What a call or a put decided at step k is worth at every node: payments until it takes effect, and its price."""
+    e, eh, p, ph = s.e, s.eh, s.p, s.ph
+    ratio, holder_ratio, paid_ratio, paid_holder_ratio, flow, call_price = (
+        terms.ratio,
+        terms.holder_ratio,
+        terms.paid_ratio,
+        terms.paid_holder_ratio,
+        terms.flow,
+        terms.price,
+    )
+    call_bar, put_price = terms.bar, terms.put
     lanes = first.shape[0]
     for lane in range(lanes):
         live = first[lane] > 0 and k >= first[lane] and k <= last[lane]
         if rights.notice:
-            bar = terms.bar[k - begin, lane] if live else np.inf
+            bar = call_bar[k - begin, lane] if live else np.inf
             if bar < np.inf:
                 stop = k + rights.call_steps
-                payment_columns(op, k, stop, bar, begin, lane, lanes, terms.flow, terms.ratio, terms.paid_ratio, lo, hi,
-                                base, s.e)  # fmt: skip
+                payment_columns(op, k, stop, bar, begin, lane, lanes, flow, ratio, paid_ratio, lo, hi,
+                                base, e)  # fmt: skip
                 if rights.both:
-                    payment_columns(op, k, stop, terms.price[k - begin, lane], begin, lane, lanes, terms.flow,
-                                    terms.holder_ratio, terms.paid_holder_ratio, lo, hi, base, s.eh)  # fmt: skip
+                    payment_columns(op, k, stop, call_price[k - begin, lane], begin, lane, lanes, flow,
+                                    holder_ratio, paid_holder_ratio, lo, hi, base, eh)  # fmt: skip
             else:
                 for i in range(lo - base, hi + 1 - base):
-                    s.e[i * lanes + lane] = 0.0
+                    e[i * lanes + lane] = 0.0
                     if rights.both:
-                        s.eh[i * lanes + lane] = 0.0
+                        eh[i * lanes + lane] = 0.0
         if rights.puts:
-            price = terms.put[k - begin, lane] if live else NEVER_PUT
+            price = put_price[k - begin, lane] if live else NEVER_PUT
             if price > NEVER_PUT:
                 stop = k + rights.put_steps
-                payment_columns(op, k, stop, price, begin, lane, lanes, terms.flow, terms.ratio, terms.paid_ratio, lo,
-                                hi, base, s.p)  # fmt: skip
-                payment_columns(op, k, stop, price, begin, lane, lanes, terms.flow, terms.holder_ratio,
-                                terms.paid_holder_ratio, lo, hi, base, s.ph)  # fmt: skip
+                payment_columns(op, k, stop, price, begin, lane, lanes, flow, ratio, paid_ratio, lo,
+                                hi, base, p)  # fmt: skip
+                payment_columns(op, k, stop, price, begin, lane, lanes, flow, holder_ratio,
+                                paid_holder_ratio, lo, hi, base, ph)  # fmt: skip
             else:
                 for i in range(lo - base, hi + 1 - base):
-                    s.p[i * lanes + lane] = NEVER_PUT
-                    s.ph[i * lanes + lane] = NEVER_PUT
+                    p[i * lanes + lane] = NEVER_PUT
+                    ph[i * lanes + lane] = NEVER_PUT
 
 
 @kernel
 def local_columns(op: OperatorTables, k: int, base: int, lanes: int, rights: Rights, s: Space, near: Space) -> None:
     """Everything a settlement asks for, on the local grid of the first sum."""
-    a, b, x = op.lo[k], op.hi[k], op.local_x[k]
-    interpolate_local(a, b, base, lanes, x, s.c, near.c)
+    near_c, near_h, near_e, near_eh, near_p, near_ph = near.c, near.h, near.e, near.eh, near.p, near.ph
+    c, h, e, eh, p, ph = s.c, s.h, s.e, s.eh, s.p, s.ph
+    op_lo, op_hi, local_x = op.lo, op.hi, op.local_x
+    a, b, x = op_lo[k], op_hi[k], local_x[k]
+    interpolate_local(a, b, base, lanes, x, c, near_c)
     if rights.both:
-        interpolate_local(a, b, base, lanes, x, s.h, near.h)
+        interpolate_local(a, b, base, lanes, x, h, near_h)
     if rights.notice:
-        interpolate_local(a, b, base, lanes, x, s.e, near.e)
+        interpolate_local(a, b, base, lanes, x, e, near_e)
         if rights.both:
-            interpolate_local(a, b, base, lanes, x, s.eh, near.eh)
+            interpolate_local(a, b, base, lanes, x, eh, near_eh)
     if rights.puts:
-        interpolate_local(a, b, base, lanes, x, s.p, near.p)
-        interpolate_local(a, b, base, lanes, x, s.ph, near.ph)
+        interpolate_local(a, b, base, lanes, x, p, near_p)
+        interpolate_local(a, b, base, lanes, x, ph, near_ph)
 
 
 @kernel
@@ -279,22 +321,40 @@ def solve_lanes(
     lead                [6, lane] by the issuer's spread and then by the holder's: discount to the first right, value of
                         the payments up to it, value of all payments (the plain bond, where no right is ever used)
     """
+    ratio, holder_ratio, paid_ratio, paid_holder_ratio, flow = (
+        terms.ratio,
+        terms.holder_ratio,
+        terms.paid_ratio,
+        terms.paid_holder_ratio,
+        terms.flow,
+    )
+    half_band, lag, op_lo, op_hi, conv, row = op.half_band, op.lag, op.lo, op.hi, op.conv, op.row
+    band_start, weights, growth, straight_conv, first_weights, first_local = (
+        op.band_start,
+        op.weights,
+        op.growth,
+        op.straight_conv,
+        op.first_weights,
+        op.first_local,
+    )
+    local_weights = op.local_weights
     lanes = steps.shape[0]
     both = rights.both
-    reach = op.half_band + GHOSTS
+    reach = half_band + GHOSTS
     top = 0
     bottom = 1 << 30
     for lane in range(lanes):
         if first[lane] > 0:
             top = max(top, last[lane])
             bottom = min(bottom, first[lane])
-    low_node, high_node = (op.lo[top], op.hi[top]) if top > 0 else (0, 0)
+    low_node, high_node = (op_lo[top], op_hi[top]) if top > 0 else (0, 0)
     for k in range(bottom, top):
-        low_node, high_node = min(low_node, op.lo[k]), max(high_node, op.hi[k])
+        low_node, high_node = min(low_node, op_lo[k]), max(high_node, op_hi[k])
     base = low_node - reach - MARGIN
-    points = op.local_weights.shape[0]
+    points = local_weights.shape[0]
     s = space(high_node + reach + MARGIN - base + 1, lanes, rights)
     near = space(points, lanes, rights)
+    c, h, v, w, used, near_v, near_w, near_used = s.c, s.h, s.v, s.w, s.used, near.v, near.w, near.used
     none = np.zeros(lanes)
     t = StepTerms(
         np.empty(lanes), np.empty(lanes), np.zeros(lanes), np.empty(lanes), np.empty(lanes), np.ones(lanes),
@@ -304,43 +364,43 @@ def solve_lanes(
     flat_low, flat_high = np.zeros(lanes), np.zeros(lanes)
     sums, sums_h = np.zeros(lanes), np.zeros(lanes)
     factor, factor_h, paid, paid_h = np.empty(lanes), np.empty(lanes), np.empty(lanes), np.empty(lanes)
-    carried = op.growth[0 if op.lag else 1]
+    carried = growth[0 if lag else 1]
     for lane in range(lanes):
         issuer_cost[lane] = 0.0
         holder_value[lane] = 0.0
     for k in range(top, bottom - 1, -1):
-        a, b = op.lo[k], op.hi[k]
+        a, b = op_lo[k], op_hi[k]
         ends = False
         for lane in range(lanes):
             live = first[lane] > 0 and k >= first[lane] and k <= last[lane]
-            factor[lane] = terms.ratio[k - begin, lane] * op.conv[k] if live else 1.0
-            factor_h[lane] = terms.holder_ratio[k - begin, lane] * op.conv[k] if live else 1.0
+            factor[lane] = ratio[k - begin, lane] * conv[k] if live else 1.0
+            factor_h[lane] = holder_ratio[k - begin, lane] * conv[k] if live else 1.0
             ends = ends or first[lane] == k
         if k < top:  # lanes not live run along on harmless numbers
             for lane in range(lanes):
-                if op.lag:
-                    amount = terms.flow[k - begin, lane] * op.straight_conv[k, 0]
-                    paid[lane] = amount * terms.paid_ratio[k - begin, lane] / factor[lane]
-                    paid_h[lane] = amount * terms.paid_holder_ratio[k - begin, lane] / factor_h[lane]
+                if lag:
+                    amount = flow[k - begin, lane] * straight_conv[k, 0]
+                    paid[lane] = amount * paid_ratio[k - begin, lane] / factor[lane]
+                    paid_h[lane] = amount * paid_holder_ratio[k - begin, lane] / factor_h[lane]
                 else:
-                    paid[lane] = terms.flow[k + 1 - begin, lane]
+                    paid[lane] = flow[k + 1 - begin, lane]
                     paid_h[lane] = paid[lane]
-            step_back(a, b, base, op.row, lanes, 2 * op.half_band + 1, op.band_start, op.weights, carried, s.v, paid,
-                      factor, s.c)  # fmt: skip
+            step_back(a, b, base, row, lanes, 2 * half_band + 1, band_start, weights, carried, v, paid,
+                      factor, c)  # fmt: skip
             if both:
-                step_back(a, b, base, op.row, lanes, 2 * op.half_band + 1, op.band_start, op.weights, carried, s.w,
-                          paid_h, factor_h, s.h)  # fmt: skip
+                step_back(a, b, base, row, lanes, 2 * half_band + 1, band_start, weights, carried, w,
+                          paid_h, factor_h, h)  # fmt: skip
         for lane in range(lanes):
             if first[lane] > 0 and k == last[lane]:
-                payment_columns(op, k, steps[lane], 0.0, begin, lane, lanes, terms.flow, terms.ratio, terms.paid_ratio,
-                                a, b, base, s.c)  # fmt: skip
+                payment_columns(op, k, steps[lane], 0.0, begin, lane, lanes, flow, ratio, paid_ratio,
+                                a, b, base, c)  # fmt: skip
                 if both:
-                    payment_columns(op, k, steps[lane], 0.0, begin, lane, lanes, terms.flow, terms.holder_ratio,
-                                    terms.paid_holder_ratio, a, b, base, s.h)  # fmt: skip
+                    payment_columns(op, k, steps[lane], 0.0, begin, lane, lanes, flow, holder_ratio,
+                                    paid_holder_ratio, a, b, base, h)  # fmt: skip
         step_terms(k, begin, first, last, terms, rights, t)
         if rights.notice or rights.puts:
             right_columns(op, k, begin, first, last, terms, rights, a, b, base, s)
-        local = ends and op.first_local[k]
+        local = ends and first_local[k]
         if local:
             local_columns(op, k, base, lanes, rights, s, near)
         settle(a, b, base, lanes, reach, both, rights.notice, rights.puts, rights.doubles, s, t, flat_low, flat_high,
@@ -348,25 +408,48 @@ def solve_lanes(
         if not ends:
             continue
         if local:
-            near.used[:] = False
+            near_used[:] = False
             settle(0, points - 1, 0, lanes, 0, both, rights.notice, rights.puts, rights.doubles, near, t, flat_low,
                    flat_high, none, work)  # fmt: skip
-            weighted_sum(0, lanes, op.local_weights, points, near.v, sums)
+            weighted_sum(0, lanes, local_weights, points, near_v, sums)
             if both:
-                weighted_sum(0, lanes, op.local_weights, points, near.w, sums_h)
+                weighted_sum(0, lanes, local_weights, points, near_w, sums_h)
         else:
-            weighted_sum(a - base, lanes, op.first_weights[k], b - a + 1, s.v, sums)
+            weighted_sum(a - base, lanes, first_weights[k], b - a + 1, v, sums)
             if both:
-                weighted_sum(a - base, lanes, op.first_weights[k], b - a + 1, s.w, sums_h)
+                weighted_sum(a - base, lanes, first_weights[k], b - a + 1, w, sums_h)
         for lane in range(lanes):
             if first[lane] == k:
                 issuer_cost[lane] = sums[lane]
                 holder_value[lane] = sums_h[lane]
-                s.used[lane] = s.used[lane] or (local and near.used[lane])
+                used[lane] = used[lane] or (local and near_used[lane])
     for lane in range(lanes):
-        used = s.used[lane]
-        issuer_cost[lane] = lead[1, lane] + lead[0, lane] * issuer_cost[lane] if used else lead[2, lane]
+        touched = used[lane]
+        issuer_cost[lane] = lead[1, lane] + lead[0, lane] * issuer_cost[lane] if touched else lead[2, lane]
         if both:
-            holder_value[lane] = lead[4, lane] + lead[3, lane] * holder_value[lane] if used else lead[5, lane]
+            holder_value[lane] = lead[4, lane] + lead[3, lane] * holder_value[lane] if touched else lead[5, lane]
         else:
             holder_value[lane] = issuer_cost[lane]
+
+
+@kernel
+def solve_batch(
+    half_band: int, lag: bool, lo: Integers, hi: Integers, conv: Floats, row: int, band_start: Integers,
+    weights: Floats, growth: Floats, straight_conv: Floats, first_weights: Floats, first_local: Flags,
+    local_x: Floats, local_weights: Floats, lead: Floats, steps: Integers, first: Integers, last: Integers,
+    ratio: Floats, holder_ratio: Floats, paid_ratio: Floats, paid_holder_ratio: Floats, flow: Floats, price: Floats,
+    bar: Floats, put: Floats, share: Floats, double_price: Floats, double_bar: Floats, call_steps: int, put_steps: int,
+    both: bool, notice: bool, puts: bool, doubles: bool, issuer_cost: Floats, holder_value: Floats,
+) -> None:  # fmt: skip
+    """`solve_lanes` from step 0 on, for callers outside: records are taken apart, since looking at them costs more than
+    a solve.
+    """
+    op = OperatorTables(
+        half_band, lag, lo, hi, conv, row, band_start, weights, growth, straight_conv, first_weights, first_local,
+        local_x, local_weights,
+    )  # fmt: skip
+    terms = LaneTerms(
+        ratio, holder_ratio, paid_ratio, paid_holder_ratio, flow, price, bar, put, share, double_price, double_bar
+    )
+    rights = Rights(call_steps, put_steps, both, notice, puts, doubles)
+    solve_lanes(op, 0, lead, steps, first, last, terms, rights, issuer_cost, holder_value)
