@@ -1,0 +1,114 @@
+"""The yield at which an issuer is indifferent to calling, and the yield it would pay today.
+
+The critical refunding yield belongs to the next right: with today's curve moved in parallel until the cost of going on
+equals the bar at that right, it is the yield of the issuer's own new par bond for the life then remaining. Where the
+issuer's present yield lies below it, the issuer calls at the next right if the curve stays as it is.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+import numpy.typing as npt
+
+from projector.arithmetic.elementary import exp_array
+from projector.bonds.calibration import spread_roots
+from projector.bonds.exercise.step_operator import GRID_FINE
+from projector.bonds.solving import Jobs, MonthSolver
+from projector.rates.curve import CurveReading
+from projector.rates.key_rates import shifted_discounts
+
+Array = npt.NDArray[np.float64]
+IntArray = npt.NDArray[np.int64]
+
+SHIFTS = (-0.10, 0.10)  # parallel shifts looked at [1/year]
+TOLERANCE = 1e-6  # per 100
+USUAL_SLOPE = 0.0025  # shift for one point of value, for the first step only [1/year]
+
+
+@dataclass(frozen=True)
+class Refunding:
+    """By security, nan where no right is ahead. shape (unit,)
+
+    present   yield of the issuer's new par bond on today's curve, for the life remaining at the next right [1/year]
+    critical  the same on the curve at which calling at the next right is just worth it [1/year]; nan also where no
+              shift within 10 points reaches it
+    """
+
+    present: Array
+    critical: Array
+
+
+def new_bond_yield(discount: Array, months: int) -> float:
+    """Coupon rate, paid half-yearly, at which a new bond is worth par. [1/year]
+
+    discount  on the issuer's own curve, P(tau) by month, shape (tau,)
+    months    life; payments are counted back from its end, and a first period shorter than six months pays its share
+
+    Source: Kalotay, Williams and Fabozzi, A Model for Valuing Bonds and Embedded Options, Financial Analysts Journal
+    49(3), 1993, refunding at the issuer's par yield (cited from memory).
+    """
+    at = np.arange(months, 0, -6)
+    share = np.minimum(at, 6) / 6.0
+    return float(2.0 * (1.0 - discount[months]) / (share * discount[at]).sum())
+
+
+def next_rights(solver: MonthSolver, units: IntArray) -> IntArray:
+    """Month of the next right, 0 where there is none. shape (unit,)"""
+    return solver.bonds.right_ends[0][units]
+
+
+@dataclass(frozen=True)
+class CostAtNextRight:
+    """The issuer's cost of going on at each security's next right, as a function of a parallel shift of the curve."""
+
+    solver: MonthSolver
+    yields: Array  # of the written-out starting curve [1/year]
+    reading: CurveReading
+
+    def discounts(self, shift: Array, months: int) -> Array:
+        """Today's curve, each column moved by its shift. [-], shape (tau, job)"""
+        return shifted_discounts(self.yields, self.reading, shift[None, :], months)
+
+    def __call__(self, units: IntArray, shift: Array) -> Array:
+        """Less the bar: above nothing the issuer calls. [per 100], shape (unit,)"""
+        bonds, out = self.solver.bonds, np.empty(units.size)
+        month, step = next_rights(self.solver, units), bonds.step[units]
+        for m, s in sorted({(int(a), int(b)) for a, b in zip(month, step)}):
+            rows = np.flatnonzero((month == m) & (step == s))
+            mine = units[rows]
+            discount = self.discounts(shift[rows], int(bonds.maturity[mine].max()) - m)
+            jobs = Jobs(m, s, s, mine, np.arange(rows.size))
+            cost = self.solver.solve(jobs, discount, GRID_FINE, both=False)[0]
+            out[rows] = cost - bonds.dirty_price[mine, m] - self.solver.model.cost
+        return out
+
+    def yield_at(self, unit: int, month: int, shift: float) -> float:
+        """Yield of the issuer's new par bond for the life remaining at the next right. [1/year]"""
+        life = int(self.solver.bonds.maturity[unit]) - month
+        discount = self.discounts(np.array([shift]), life)[:, 0]
+        spread = float(self.solver.spreads.refunding[unit, month])
+        return new_bond_yield(discount * exp_array(-spread * np.arange(life + 1) / 12.0), life)
+
+
+def refunding_yields(solver: MonthSolver, units: IntArray, yields: Array, reading: CurveReading) -> Refunding:
+    """Present and critical refunding yield of every security.
+
+    yields, reading  the starting curve, written out
+
+    The curve of the next right's date is taken to be today's, moved in parallel: no forward drift, so that the yield
+    can be held against today's. Later rights and the issuer's cost are inside, at the spread of the life remaining.
+    """
+    present, critical = np.full(units.size, np.nan), np.full(units.size, np.nan)
+    month = next_rights(solver, units)
+    rows = np.flatnonzero(month > 0)
+    cost = CostAtNextRight(solver, yields, reading)
+    nothing = np.zeros(rows.size)
+    slope = np.full(rows.size, USUAL_SLOPE)
+    root = spread_roots(cost, units[rows], nothing, nothing, slope, TOLERANCE, SHIFTS).spread
+    for row, shift in zip(rows, root):
+        present[row] = cost.yield_at(int(units[row]), int(month[row]), 0.0)
+        if not np.isnan(shift):
+            critical[row] = cost.yield_at(int(units[row]), int(month[row]), float(shift))
+    return Refunding(present, critical)
