@@ -48,7 +48,11 @@ def cash_transition(op: Operator) -> tuple[IntArray, Array]:
     centre = op.model.g(op.step)
     m = (1.0 - op.model.a * centre) * nodes  # e^(-a step) = 1 - a G(step)
     start = np.rint(m).astype(np.int64) - op.half_band
-    z = (start[:, None] + np.arange(2 * op.half_band + 1)[None, :] - m[:, None]) * op.h / op.model.variance(op.step) ** 0.5
+    z = (
+        (start[:, None] + np.arange(2 * op.half_band + 1)[None, :] - m[:, None])
+        * op.h
+        / op.model.variance(op.step) ** 0.5
+    )
     w = exp_array(-0.5 * z * z)
     return start, w / w.sum(axis=1)[:, None]
 

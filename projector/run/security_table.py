@@ -9,16 +9,14 @@ import numpy as np
 import pandas as pd
 
 from projector.bonds.mapped import plain_records
-from projector.bonds.schedule import DatedBond
-from projector.bonds.worst import yield_to_worst
-from projector.bonds.yields import Redemption, accrued_interest, bond_equivalent
+from projector.bonds.yields import accrued_interest
 from projector.run.call_table import bond_equivalent_of_growth
 from projector.run.mapping_check import mapping_differences
 from projector.run.prepare import Prepared
 from projector.run.results import COLUMNS
+from projector.run.street import street_redemptions, worst_yield
 from projector.study.clock import month_end
 
-BELIEVABLE = 1.0  # a call days away at a loss has a yearly yield of thousands of percent, which says nothing
 STATED = ("american", "bermudan", "european")
 
 
@@ -32,39 +30,11 @@ def call_form(row: dict[str, Any], rights: list[dict[str, Any]]) -> str:
     return "+".join(dict.fromkeys(forms)) or "none"
 
 
-def street_redemptions(row: dict[str, Any], rights: list[dict[str, Any]], settlement: date) -> list[Redemption]:
-    """First and last date of every price still ahead: with one price in between, one of the two is the worst."""
-    after = settlement + timedelta(days=1)
-    price: dict[date, float] = {}  # a row that starts on a day rules that day, so later rows overwrite
-    for r in rights:
-        if r["style"] != "make_whole" and r["last_date"] >= after:
-            price[max(r["first_date"], after)] = float(r["price"])
-            price[r["last_date"]] = float(r["price"])
-    if row["par_call_date"] is not None:
-        price[max(row["par_call_date"], after)] = 100.0
-        price[row["maturity_date"] - timedelta(days=1)] = 100.0
-    return [Redemption(day, k) for day, k in sorted(price.items()) if after <= day < row["maturity_date"]]
-
-
-def street_yield(bond: DatedBond, redemptions: list[Redemption], settlement: date, price: float) -> float:
-    """Yield to worst at a clean price on exact dates, bond-equivalent. [1/year]; nan where none within 100 %"""
-    if price <= 100.0 and all(r.price >= 100.0 for r in redemptions):
-        redemptions = []  # bought at a discount: being repaid sooner at par or more only yields more
-    try:
-        found = yield_to_worst(bond, settlement, price, redemptions, "street")
-    except ValueError:
-        return float("nan")
-    equivalent = bond_equivalent(found.annual_yield, bond.periods_a_year)
-    return equivalent if abs(equivalent) < BELIEVABLE else float("nan")
-
-
 def securities_frame(prepared: Prepared) -> pd.DataFrame:
     """The securities table in the order of their identifiers."""
     study, bonds, fitted = prepared.study, prepared.bonds, prepared.calibrated
     rows = prepared.security_rows
-    rights: dict[str, list[dict[str, Any]]] = {}
-    for r in plain_records(study.tables.call_rights):
-        rights.setdefault(r["security_id"], []).append(r)
+    rights = rights_by_security(prepared)
     sums, mapping = lot_sums(prepared), mapping_differences(prepared)["difference_bp"].to_numpy()
     out = []
     for u, name in enumerate(bonds.ids):
@@ -95,17 +65,25 @@ def securities_frame(prepared: Prepared) -> pd.DataFrame:
                 "spread_from": fitted.origin[u],
                 "book_yield": float(sums["yield"][u]),
                 "worst_date": month_end(int(sums["worst"][u]), study.valuation_date).isoformat(),
-                "yield_to_worst": street_yield(
+                "yield_to_worst": worst_yield(
                     prepared.dated_bonds[u],
-                    street_redemptions(row, mine, study.valuation_date),
+                    street_redemptions(prepared.dated_bonds[u], row, mine, study.valuation_date),
                     study.valuation_date,
                     clean,
-                ),
+                ).annual_yield,
                 "make_whole_spread_bp": make_whole[0] if make_whole else np.nan,
             }
         )
     frame = pd.DataFrame(out).sort_values("security_id").reset_index(drop=True)
     return frame[list(COLUMNS["securities"])]
+
+
+def rights_by_security(prepared: Prepared) -> dict[str, list[dict[str, Any]]]:
+    """Rows of the call schedule by security, dates as `datetime.date`."""
+    out: dict[str, list[dict[str, Any]]] = {}
+    for r in plain_records(prepared.study.tables.call_rights):
+        out.setdefault(r["security_id"], []).append(r)
+    return out
 
 
 def first_date(row: dict[str, Any], rights: list[dict[str, Any]], valuation: date) -> str:
