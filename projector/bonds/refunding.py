@@ -7,15 +7,15 @@ issuer's present yield lies below it, the issuer calls at the next right if the 
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 import numpy.typing as npt
 
 from projector.arithmetic.elementary import exp_array
-from projector.bonds.calibration import spread_roots
+from projector.bonds.calibration import NEAR_TOLERANCE, spread_roots
 from projector.bonds.exercise.step_operator import GRID_FINE
-from projector.bonds.solving import Jobs, MonthSolver
+from projector.bonds.solving import Jobs, MonthSolver, production_grid
 from projector.rates.curve import CurveReading
 from projector.rates.key_rates import shifted_discounts
 
@@ -66,6 +66,7 @@ class CostAtNextRight:
     solver: MonthSolver
     yields: Array  # of the written-out starting curve [1/year]
     reading: CurveReading
+    fine: bool = True  # on the fine grid, or on the coarser one of the paths
 
     def discounts(self, shift: Array, months: int) -> Array:
         """Today's curve, each column moved by its shift. [-], shape (tau, job)"""
@@ -80,16 +81,21 @@ class CostAtNextRight:
             mine = units[rows]
             discount = self.discounts(shift[rows], int(bonds.maturity[mine].max()) - m)
             jobs = Jobs(m, s, s, mine, np.arange(rows.size))
-            cost = self.solver.solve(jobs, discount, GRID_FINE, both=False)[0]
+            cost = self.solver.solve(jobs, discount, GRID_FINE if self.fine else production_grid(s), both=False)[0]
             out[rows] = cost - bonds.dirty_price[mine, m] - self.solver.model.cost
         return out
 
-    def yield_at(self, unit: int, month: int, shift: float) -> float:
-        """Yield of the issuer's new par bond for the life remaining at the next right. [1/year]"""
-        life = int(self.solver.bonds.maturity[unit]) - month
-        discount = self.discounts(np.array([shift]), life)[:, 0]
-        spread = float(self.solver.spreads.refunding[unit, month])
-        return new_bond_yield(discount * exp_array(-spread * np.arange(life + 1) / 12.0), life)
+    def new_bond_yields(self, units: IntArray, shift: Array) -> Array:
+        """Yields of the issuers' new par bonds for the lives remaining at the next rights. [1/year], shape (unit,)"""
+        bonds, out = self.solver.bonds, np.empty(units.size)
+        month = next_rights(self.solver, units)
+        lives = bonds.maturity[units] - month
+        discount = self.discounts(shift, int(lives.max(initial=1)))
+        spread = self.solver.spreads.refunding[units, month]
+        for i, life in enumerate(lives.tolist()):
+            fade = exp_array(np.asarray(-spread[i] / 12.0 * np.arange(life + 1), dtype=np.float64))
+            out[i] = new_bond_yield(discount[: life + 1, i] * fade, life)
+        return out
 
 
 def refunding_yields(solver: MonthSolver, units: IntArray, yields: Array, reading: CurveReading) -> Refunding:
@@ -103,12 +109,14 @@ def refunding_yields(solver: MonthSolver, units: IntArray, yields: Array, readin
     present, critical = np.full(units.size, np.nan), np.full(units.size, np.nan)
     month = next_rights(solver, units)
     rows = np.flatnonzero(month > 0)
+    mine, nothing = units[rows], np.zeros(rows.size)
     cost = CostAtNextRight(solver, yields, reading)
-    nothing = np.zeros(rows.size)
-    slope = np.full(rows.size, USUAL_SLOPE)
-    root = spread_roots(cost, units[rows], nothing, nothing, slope, TOLERANCE, SHIFTS).spread
-    for row, shift in zip(rows, root):
-        present[row] = cost.yield_at(int(units[row]), int(month[row]), 0.0)
-        if not np.isnan(shift):
-            critical[row] = cost.yield_at(int(units[row]), int(month[row]), float(shift))
+    usual = np.full(rows.size, USUAL_SLOPE)
+    near = spread_roots(replace(cost, fine=False), mine, nothing, nothing, usual, NEAR_TOLERANCE, SHIFTS)
+    found = ~np.isnan(near.spread)
+    start, slope = np.where(found, near.spread, 0.0), np.where(found, near.slope, usual)
+    shift = spread_roots(cost, mine, nothing, start, slope, TOLERANCE, SHIFTS).spread
+    present[rows] = cost.new_bond_yields(mine, nothing)
+    reached = ~np.isnan(shift)
+    critical[rows[reached]] = cost.new_bond_yields(mine[reached], shift[reached])
     return Refunding(present, critical)

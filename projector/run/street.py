@@ -69,7 +69,7 @@ def believable(bond: DatedBond, annual_yield: float) -> float:
 
 
 def yield_to(bond: DatedBond, settlement: date, price: float, redemption: Redemption | None = None) -> float:
-    """Yield to a redemption (None: maturity) at a clean price, bond-equivalent. [1/year]; nan where none within 100 %"""
+    """Yield to a redemption (None: maturity) at a clean price, bond-equivalent. [1/year]; nan: none within 100 %"""
     try:
         return believable(bond, yield_from_clean(bond, settlement, price, "street", redemption))
     except (ValueError, OverflowError, ZeroDivisionError):

@@ -58,7 +58,8 @@ VALUE_COLUMNS: dict[str, dict[str, tuple[str, str]]] = {
         "effective_convexity": ("year^2", f"the same, second difference over the value, not halved {MAPPED}"),
         **{
             f"key_rate_{name}": (
-                "year", f"two-sided, 5 bp on the quoted yields around {name}, triangular; the twelve add to the duration",
+                "year",
+                f"two-sided, 5 bp on the quoted yields around {name}, triangular; the twelve add up to the duration",
             )
             for name in KEY_NAMES
         },
