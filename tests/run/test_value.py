@@ -327,3 +327,16 @@ def test_limit_a_refused_study_or_a_broken_writer_leaves_nothing(
     assert command("value", hand_folder, "--out", tmp_path / "out")[0] == 2
     assert [p.name for p in tmp_path.iterdir()] == ["hand"]
     assert not list(tmp_path.glob(f"{STALE_PREFIX}*"))
+
+
+def test_pinned_the_example_of_the_readme_is_what_the_demo_prints() -> None:
+    root = Path(__file__).resolve().parents[2]
+    if not (root / "README.md").is_file():
+        pytest.skip("README.md is not there")
+    said = value_text(projector.value_tables(root / "scenarios" / "harbour_ridge_2022", 0.06)).split("\n")
+    page = (root / "README.md").read_text(encoding="utf-8").split("\n")
+    start = next(i for i, line in enumerate(page) if line.startswith("    security "))
+    shown = [line[4:] for line in page[start : page.index("", start)]]
+    assert len(shown) == 10
+    for line in shown:
+        assert line in said
