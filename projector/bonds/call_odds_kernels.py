@@ -253,6 +253,11 @@ def odds_of_units(
         k, q = first + 1, np.zeros(width)
         there, gone = np.zeros(steps + 1), np.zeros(steps + 1)
         after_first(line, 0.0, y1, 0.0, variance[k], decay, h, lo[k], hi[k], q)
+        total = 0.0
+        for i in range(hi[k] - lo[k] + 1):
+            total += q[i]
+        # The nodes are centred for the other measure, whose drift is downward: what they miss lies above them.
+        q[hi[k] - lo[k]] += 1.0 - odds[n, when] - total
         carry(
             lo, hi, row, band, cash_start, cash_weights, ones, first, last, bar, node, share, q, gone, there
         )  # fmt: skip

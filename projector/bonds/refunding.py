@@ -16,7 +16,7 @@ from projector.arithmetic.elementary import exp_array
 from projector.bonds.calibration import NEAR_TOLERANCE, spread_roots
 from projector.bonds.exercise.step_operator import GRID_FINE
 from projector.bonds.solving import Jobs, MonthSolver, production_grid
-from projector.rates.curve import CurveReading
+from projector.rates.curve import CurveError, CurveReading
 from projector.rates.key_rates import shifted_discounts
 
 Array = npt.NDArray[np.float64]
@@ -69,8 +69,13 @@ class CostAtNextRight:
     fine: bool = True  # on the fine grid, or on the coarser one of the paths
 
     def discounts(self, shift: Array, months: int) -> Array:
-        """Today's curve, each column moved by its shift. [-], shape (tau, job)"""
-        return shifted_discounts(self.yields, self.reading, shift[None, :], months)
+        """Today's curve, each column moved by its shift; nan where the moved curve is none. [-], shape (tau, job)"""
+        try:
+            return shifted_discounts(self.yields, self.reading, shift[None, :], months)
+        except CurveError:
+            if shift.size == 1:
+                return np.full((months + 1, 1), np.nan)
+            return np.hstack([self.discounts(shift[[i]], months) for i in range(shift.size)])
 
     def __call__(self, units: IntArray, shift: Array) -> Array:
         """Less the bar: above nothing the issuer calls. [per 100], shape (unit,)"""

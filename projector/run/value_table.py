@@ -22,6 +22,7 @@ from projector.bonds.sensitivities import (
     straight_on_curves,
 )
 from projector.bonds.yields import accrued_interest
+from projector.rates.curve import CurveError
 from projector.rates.key_rates import KEY_NAMES, key_rate_shifts, par_yield_at, shifted_discounts, written_out
 from projector.run.frames import canonical_digest
 from projector.run.prepare import Prepared
@@ -36,6 +37,7 @@ from projector.run.street import (
 )
 from projector.run.value_columns import value_columns
 from projector.study.clock import month_end
+from projector.study.errors import LocatedError, StudyRefused
 from projector.study.records import Study
 
 Array = npt.NDArray[np.float64]
@@ -83,7 +85,10 @@ def model_figures(prepared: Prepared, progress: Callable[[str, int, int], None] 
     solver, reach = prepared.solver, max(prepared.bonds.last_month + 6, 12)
     yields, reading = written_out(prepared.paths.yields[0, :, 0], prepared.paths.reading)
     shifts = key_rate_shifts(reading.tenor_months, SHIFT, KEY_SHIFT)
-    curves = shifted_discounts(yields, reading, shifts, reach)
+    try:
+        curves = shifted_discounts(yields, reading, shifts, reach)
+    except CurveError as fault:
+        raise StudyRefused([shift_refusal(prepared.study, shifts[:, fault.path])]) from fault
     start = np.ascontiguousarray(curves[:, :1])
     units = np.arange(len(prepared.bonds.ids))
     progress("durations", 0, 3)
@@ -95,6 +100,18 @@ def model_figures(prepared: Prepared, progress: Callable[[str, int, int], None] 
     return ModelFigures(
         start[:, 0], straight_on_curves(solver, units, start)[:, 0], sensitivity, refunding, odds
     )  # fmt: skip
+
+
+def shift_refusal(study: Study, shift: Array) -> LocatedError:
+    """The starting curve does not bear a shift that a duration asks for."""
+    size = 1e4 * float(shift[np.argmax(np.abs(shift))])
+    return LocatedError(
+        code="E454",
+        file=str(study.tables.yield_curve.attrs.get("file", "yield_curve")),
+        column="rate",
+        problem=f"the starting curve moved by {size:+.0f} bp leaves no positive discount, so there is no duration",
+        remedy="look for a yield in the wrong unit or with too steep a step between tenors",
+    )
 
 
 def refuse_required(required: float | None) -> None:

@@ -4,10 +4,11 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
-from valuation_bonds import HUMPED, Terms, every, reading, solver
+from valuation_bonds import HUMPED, TENORS, Terms, every, reading, solver
 
 from projector.bonds.refunding import CostAtNextRight, Refunding, new_bond_yield, refunding_yields
 from projector.bonds.solving import MonthSolver
+from projector.rates.curve import CurveReading
 from projector.rates.key_rates import written_out
 
 
@@ -70,3 +71,14 @@ def test_known_on_a_flat_curve_the_new_bond_pays_the_flat_yield() -> None:
     """31 CFR 356, Appendix B: at a level half-yearly yield a bond with that coupon is worth par."""
     discount = 1.03 ** (-np.arange(361) / 6.0)
     assert new_bond_yield(discount, 240) == pytest.approx(0.06, abs=1e-13)
+
+
+def test_limit_a_shift_that_leaves_no_curve_is_passed_over() -> None:
+    """3 % to ten years, 5 % at thirty: 10 points higher the last par bonds leave no discount."""
+    steep = np.array([0.03] * 9 + [0.037, 0.05])
+    dense, how = written_out(steep, CurveReading(TENORS, par_basis=True, linear=True))
+    s = solver(Terms(120, 6, 5.0, 6, every(12, 120, 6)))
+    both = CostAtNextRight(s, dense, how).discounts(np.array([-0.02, 0.10]), 120)
+    assert np.isfinite(both[:, 0]).all()
+    assert np.isnan(both[:, 1]).all()
+    assert 0.02 < refunding_yields(s, np.arange(1), dense, how).critical[0] < 0.05

@@ -21,6 +21,7 @@ import projector
 from projector import cli
 from projector.bonds.mapped import dated
 from projector.bonds.yields import from_bond_equivalent
+from projector.rates.curve import CurveError
 from projector.rates.key_rates import KEY_NAMES
 from projector.run.publish import STALE_PREFIX, file_digest
 from projector.run.street import price_at_required_yield, street_redemptions, worst_yield
@@ -327,6 +328,22 @@ def test_limit_a_refused_study_or_a_broken_writer_leaves_nothing(
     assert command("value", hand_folder, "--out", tmp_path / "out")[0] == 2
     assert [p.name for p in tmp_path.iterdir()] == ["hand"]
     assert not list(tmp_path.glob(f"{STALE_PREFIX}*"))
+
+
+def test_limit_a_curve_that_bears_no_shift_is_refused_in_one_sentence(
+    hand_folder: Path, tmp_path: Path, monkeypatch: pytest.MonkeyPatch, command: Command
+) -> None:
+    def steep(*_: object) -> None:
+        raise CurveError(0, 3)
+
+    monkeypatch.setattr("projector.run.value_table.shifted_discounts", steep)
+    code, said, errors = command("value", hand_folder, "--out", tmp_path / "out")
+    assert (code, said) == (2, "")
+    assert errors == (
+        "E454 yield_curve.csv, column rate: the starting curve moved by +5 bp leaves no positive discount, so there is"
+        " no duration; look for a yield in the wrong unit or with too steep a step between tenors."
+    )
+    assert not list(tmp_path.iterdir())
 
 
 def test_pinned_the_example_of_the_readme_is_what_the_demo_prints() -> None:
