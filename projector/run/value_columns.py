@@ -23,7 +23,8 @@ VALUE_COLUMNS: dict[str, dict[str, tuple[str, str]]] = {
         "maturity_date": ("date", "maturity"),
         "call_form": ("-", "none, european, bermudan, american, make_whole (with par call), or several joined by +"),
         "par": ("currency", "par over all lots"),
-        "market_value": ("currency", "dirty price x par"),
+        "market_value": ("currency", "clean price x par, as in the securities table of a run"),
+        "market_value_with_accrued": ("currency", "dirty price x par"),
         "clean_price": ("per 100", f"price stated or, where a spread was stated, modelled {MAPPED}"),
         "accrued": ("per 100", f"accrued interest {EXACT} by the day count"),
         "dirty_price": ("per 100", "clean price + accrued"),
@@ -32,10 +33,12 @@ VALUE_COLUMNS: dict[str, dict[str, tuple[str, str]]] = {
         "worst_date": ("date", "redemption that gives the yield to worst, of equals the latest"),
         "worst_price": ("per 100", "clean price paid then"),
         "spread_to_treasury_maturity_bp": (
-            "bp", "yield to maturity less the starting curve's par yield for the life to maturity",
+            "bp",
+            "yield to maturity less the starting curve's par yield for that life, linear between half-years, a simple"
+            " yield below half a year",
         ),
         "spread_to_treasury_worst_bp": (
-            "bp", "yield to worst less the starting curve's par yield for the life to the worst date",
+            "bp", "yield to worst less the starting curve's par yield for the life to the worst date, the same",
         ),
         "oas_bp": (
             "bp",

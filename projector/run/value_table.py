@@ -172,7 +172,8 @@ def security_rows(
         rows.append(street | model_row(prepared, figures, u) | {"par": float(par[u])})
         yields += listed
     holdings = pd.DataFrame(rows)
-    holdings["market_value"] = holdings["par"] * holdings["dirty_price"] / 100.0
+    holdings["market_value"] = holdings["par"] * holdings["clean_price"] / 100.0
+    holdings["market_value_with_accrued"] = holdings["par"] * holdings["dirty_price"] / 100.0
     return add_treasury_spreads(holdings, prepared, figures.discount), pd.DataFrame(yields)
 
 

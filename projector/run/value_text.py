@@ -38,9 +38,9 @@ def shown_row(row: pd.Series) -> tuple[str, ...]:
 
 
 def weighted(holdings: pd.DataFrame, column: str) -> float:
-    """Mean of a column by market value, over securities that have the figure. Same unit as the column"""
-    has = holdings[column].notna() & (holdings["market_value"] > 0.0)
-    weight = holdings.loc[has, "market_value"].to_numpy()
+    """Mean of a column by market value with accrued, over securities that have the figure. Same unit as the column"""
+    has = holdings[column].notna() & (holdings["market_value_with_accrued"] > 0.0)
+    weight = holdings.loc[has, "market_value_with_accrued"].to_numpy()
     return float((holdings.loc[has, column].to_numpy() * weight).sum() / weight.sum()) if weight.size else float("nan")
 
 
@@ -57,7 +57,7 @@ def portfolio_line(holdings: pd.DataFrame) -> str:
     """All holdings together, by market value."""
     parts = [
         f"{len(holdings):,} securities, par {holdings['par'].sum():,.2f}, market value with accrued"
-        f" {holdings['market_value'].sum():,.2f}",
+        f" {holdings['market_value_with_accrued'].sum():,.2f}",
         f"by market value: yield to worst {100 * weighted(holdings, 'yield_to_worst'):.3f} %",
         f"OAS {weighted(holdings, 'oas_bp'):.1f} bp",
         f"duration {weighted(holdings, 'effective_duration'):.2f} years",

@@ -132,7 +132,8 @@ def test_order_the_parts_of_a_price_add_up(values: ValueResults) -> None:
     plain = h["next_call_date"] == ""
     np.testing.assert_allclose(h.loc[plain, "option_value"], 0.0, atol=1e-10)
     assert (h.loc[~plain, "option_value"] > 0.0).all()
-    np.testing.assert_allclose(h["market_value"], h["par"] * h["dirty_price"] / 100.0, rtol=1e-15)
+    np.testing.assert_allclose(h["market_value"], h["par"] * h["clean_price"] / 100.0, rtol=1e-15)
+    np.testing.assert_allclose(h["market_value_with_accrued"], h["par"] * h["dirty_price"] / 100.0, rtol=1e-15)
     keys = h[[f"key_rate_{name}" for name in KEY_NAMES]].sum(axis=1)
     np.testing.assert_allclose(keys, h["effective_duration"], rtol=0.0, atol=0.03)
 
