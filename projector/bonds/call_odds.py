@@ -126,4 +126,4 @@ def value_from_weights(odds: CallOdds, flow: Array, price: Array, discount: Arra
     the issuer's cost: the check that the odds belong to the prices.
     """
     paid = np.where(odds.called > 0.0, price, 0.0) * odds.called
-    return ((flow * odds.alive + paid) * discount).sum(axis=1)
+    return np.asarray(((flow * odds.alive + paid) * discount).sum(axis=1), dtype=np.float64)

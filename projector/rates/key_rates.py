@@ -86,4 +86,4 @@ def par_yield_at(discount: Array, years: Array) -> Array:
     par = 2.0 * (1.0 - discount[months]) / np.cumsum(discount[months])
     short = [12.0 / m * (1.0 / discount[m] - 1.0) for m in (1, 3)]
     at = np.concatenate([[1.0, 3.0], months]) / 12.0
-    return np.interp(years, at, np.concatenate([short, par]))
+    return np.asarray(np.interp(years, at, np.concatenate([short, par])), dtype=np.float64)
