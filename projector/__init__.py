@@ -20,10 +20,12 @@ if TYPE_CHECKING:
 
     from projector.run.results import RunResults
     from projector.run.runner import Staged
+    from projector.run.value_table import ValueResults
 
 __version__ = VERSION
 __all__ = [
     "check_study", "explain_call", "explain_columns", "new_study", "render_report", "result_columns", "run_study",
+    "value_columns", "value_study", "value_tables",
 ]  # fmt: skip
 
 
@@ -39,6 +41,31 @@ def check_study(folder: str | PathLike[str]) -> Staged:
     from projector.run.runner import stage
 
     return stage(Path(folder))
+
+
+def value_study(folder: str | PathLike[str], required_yield: float | None = None) -> pd.DataFrame:
+    """Holdings at the valuation date, one row a security: prices, yields, spreads, durations, odds of a call.
+
+    required_yield  minimum yield, bond-equivalent [1/year]: adds the price that gives it whenever the bond is repaid
+
+    Raises StudyRefused with every located error, ValueError for a required yield that is none. Columns and units:
+    `projector.value_columns()`; yields to each call and odds by year: `value_tables`.
+    """
+    return value_tables(folder, required_yield).holdings
+
+
+def value_tables(folder: str | PathLike[str], required_yield: float | None = None) -> ValueResults:
+    """As `value_study`, with the long tables: `holdings`, `call_yields`, `call_odds`."""
+    from projector.run import value_table
+
+    return value_table.value_tables(Path(folder), required_yield)
+
+
+def value_columns(required_yield: bool = False) -> dict[str, dict[str, tuple[str, str]]]:
+    """Tables of `value_tables`: table -> column -> (unit, meaning)."""
+    from projector.run import value_columns as listed
+
+    return listed.value_columns(required_yield)
 
 
 def run_study(folder: str | PathLike[str], threads: int | None = None, block_paths: int | None = None) -> RunResults:

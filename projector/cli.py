@@ -54,6 +54,40 @@ def check(
 
 
 @app.command()
+def value(
+    folder: Folder,
+    out: Annotated[
+        Path | None, typer.Option(help="folder for the tables (default: reports/<study>-<digest>-value)")
+    ] = None,
+    required_yield: Annotated[
+        float | None,
+        typer.Option(help="minimum yield a year, 0.05 is 5 %: adds the price that gives it whenever repaid"),
+    ] = None,
+) -> None:
+    """Value the holdings at the valuation date: prices, yields, spreads, durations, call odds; projects nothing."""
+    from projector.run.results_folder import folder_name
+    from projector.run.value_folder import write_values
+    from projector.run.value_table import refuse_required, value_tables
+    from projector.run.value_text import value_text
+
+    try:
+        refuse_required(required_yield)
+    except ValueError as fault:
+        raise typer.BadParameter(f"--required-yield: {fault}") from None
+    if out is not None:
+        refuse_target(folder, out, "value")
+    with Bar() as bar:
+        results = value_tables(folder, required_yield, bar.show)
+        target = out or Path("reports") / f"{folder_name(folder, results.study.input_digest)}-value"
+        refuse_target(folder, target, "value")
+        write_values(
+            results, target, {"command": f"projector value {folder.resolve().name}", "required_yield": required_yield}
+        )
+    print(value_text(results))
+    print(f"tables: {target / 'tables'}")
+
+
+@app.command()
 def run(
     folder: Folder,
     out: Annotated[Path | None, typer.Option(help="folder for the results (default: reports/<study>-<digest>)")] = None,
@@ -144,8 +178,11 @@ def no_value(_: object) -> None:
     """Drops a count of bytes written."""
 
 
-def refuse_target(folder: Path, target: Path) -> None:
-    """Results never land in or over the study, nor over anything that a run has not written."""
+def refuse_target(folder: Path, target: Path, command: str = "run") -> None:
+    """Results never land in or over the study, nor over anything that a run has not written.
+
+    command  what is about to write: `value` does not replace the results of a year-end run
+    """
     if target.is_symlink():
         raise typer.BadParameter(f"--out {target} is a link; name the folder itself")
     place, study = target.resolve(), folder.resolve()
@@ -157,6 +194,8 @@ def refuse_target(folder: Path, target: Path) -> None:
         strange = strange_files(place)
         if strange:
             raise typer.BadParameter(f"--out {target} holds {strange[0]}, which no run wrote; choose a new folder")
+        if command == "value" and (place / "tables").exists() and not (place / "tables" / "holdings.parquet").exists():
+            raise typer.BadParameter(f"--out {target} holds the results of a run; choose another folder for the tables")
 
 
 def strange_files(folder: Path) -> list[str]:

@@ -27,6 +27,7 @@ def _load(name: str, path: Path) -> ModuleType:
 
 _load("small_study", HERE / "study" / "small_study.py")
 _load("fine_grid", HERE / "bonds" / "fine_grid.py")
+_load("valuation_bonds", HERE / "valuation_bonds.py")
 studies = _load("projection_studies", HERE / "projection_studies.py")
 
 

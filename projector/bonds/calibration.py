@@ -98,14 +98,15 @@ class Roots:
 
 def spread_roots(
     price: Callable[[IntArray, Array], Array], units: IntArray, target: Array, start: Array, slope: Array,
-    tolerance: float = PRICE_TOLERANCE,
+    tolerance: float = PRICE_TOLERANCE, bounds: tuple[float, float] = (LOWEST, HIGHEST),
 ) -> Roots:  # fmt: skip
     """Spread at which each price meets its target, by a secant kept inside a bracket. [1/year]
 
     start, slope  where to begin, and the spread to add for one point of price too high on the first step
+    bounds        where to look; a falling function of anything else than a spread brings its own
     """
-    low, high = np.full(units.size, LOWEST), np.full(units.size, HIGHEST)
-    x, slope = np.clip(start, LOWEST, HIGHEST), slope.copy()
+    low, high = np.full(units.size, bounds[0]), np.full(units.size, bounds[1])
+    x, slope = np.clip(start, *bounds), slope.copy()
     before, miss_before = x.copy(), np.zeros(units.size)
     root = np.full(units.size, np.nan)
     open_ = np.arange(units.size)

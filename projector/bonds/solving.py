@@ -168,6 +168,14 @@ class MonthSolver:
         paid = self.payment_month(units, at.month, at.call_lag)
         return self.worth_now(at, units, paid, self.bonds.tables.price, True, discount)
 
+    def job_bars(self, at: Dates, units: IntArray, paths: IntArray, discount: Array) -> Array:
+        """What calling this month costs the issuer, job by job; a call must be live. [per 100], shape (job,)"""
+        paid = self.payment_month(units, at.month, at.call_lag)
+        amount = self.bonds.tables.price[units, paid] + self.model.cost * self.bonds.outstanding[units, paid]
+        if at.call_lag == 0:
+            return amount
+        return self.settled(at.month, units, paths, paid, amount, self.spreads.refunding[units, at.month], discount)
+
     def worth_now(
         self, at: Dates, units: IntArray, paid: IntArray, table: Array, issuer: bool, discount: Array
     ) -> Array:

@@ -219,6 +219,13 @@ def bond_equivalent(annual_yield: float, periods_a_year: int) -> float:
     return 2.0 * ((1.0 + annual_yield / periods_a_year) ** (periods_a_year / 2) - 1.0)
 
 
+def from_bond_equivalent(annual_yield: float, periods_a_year: int) -> float:
+    """A yield compounded half-yearly, compounded at other periods; undoes `bond_equivalent`. [1/year]"""
+    if periods_a_year == 2:
+        return annual_yield
+    return periods_a_year * ((1.0 + annual_yield / 2.0) ** (2.0 / periods_a_year) - 1.0)
+
+
 def macaulay_duration(payments: RemainingPayments, annual_yield: float) -> float:
     """Mean time of the payments, weighted by their values at the yield. [year]
 

@@ -172,10 +172,13 @@ def decisions_frame(prepared: Prepared, blocks: list[BlockResult]) -> pd.DataFra
 ROUNDED = {"currency": 2, "1/year": 10, "per 100": 6, "bp": 4}
 
 
-def canonical_digest(name: str, frame: pd.DataFrame) -> str:
-    """SHA-256 of a table's rounded content: money to 2 decimals, rates to 10, prices to 6 (C15)."""
+def canonical_digest(name: str, frame: pd.DataFrame, columns: dict[str, tuple[str, str]] | None = None) -> str:
+    """SHA-256 of a table's rounded content: money to 2 decimals, rates to 10, prices to 6 (C15).
+
+    columns  unit and meaning by column, of a table that is not among those of a run
+    """
     digest = hashlib.sha256(name.encode())
-    for column, (unit, _) in COLUMNS[name].items():
+    for column, (unit, _) in (columns or COLUMNS[name]).items():
         digest.update(column.encode())
         values = frame[column]
         if pd.api.types.is_float_dtype(values):

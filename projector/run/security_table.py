@@ -9,16 +9,14 @@ import numpy as np
 import pandas as pd
 
 from projector.bonds.mapped import Terms
-from projector.bonds.schedule import DatedBond
-from projector.bonds.worst import yield_to_worst
-from projector.bonds.yields import Redemption, accrued_interest, bond_equivalent, yield_from_clean
+from projector.bonds.yields import accrued_interest
 from projector.run.call_table import bond_equivalent_of_growth
 from projector.run.mapping_check import mapping_differences
 from projector.run.prepare import Prepared
 from projector.run.results import COLUMNS
+from projector.run.street import worst_of
 from projector.study.clock import month_end
 
-BELIEVABLE = 1.0  # a call days away at a loss has a yearly yield of thousands of percent, which says nothing
 STATED = ("american", "bermudan", "european")
 
 
@@ -35,40 +33,6 @@ def call_form(terms: Terms) -> str:
     forms += ["put"] if terms.puts else []
     forms += ["doubling"] if any(r["may_double"] for r in terms.sinking) else []
     return "+".join(dict.fromkeys(forms)) or "none"
-
-
-def street_redemptions(row: dict[str, Any], rights: list[dict[str, Any]], settlement: date) -> list[Redemption]:
-    """First and last date of every price still ahead: with one price in between, one of the two is the worst."""
-    after = settlement + timedelta(days=1)
-    price: dict[date, float] = {}  # a row that starts on a day rules that day, so later rows overwrite
-    for r in rights:
-        if r["style"] != "make_whole" and r["last_date"] >= after:
-            price[max(r["first_date"], after)] = float(r["price"])
-            price[r["last_date"]] = float(r["price"])
-    if row["par_call_date"] is not None:
-        price[max(row["par_call_date"], after)] = 100.0
-        price[row["maturity_date"] - timedelta(days=1)] = 100.0
-    return [Redemption(day, k) for day, k in sorted(price.items()) if after <= day < row["maturity_date"]]
-
-
-def street_yield(bond: DatedBond, redemptions: list[Redemption], settlement: date, price: float) -> float:
-    """Yield to worst at a clean price on exact dates, bond-equivalent. [1/year]; nan where none within 100 %"""
-    if price <= 100.0 and not bond.steps and all(r.price >= 100.0 for r in redemptions):
-        redemptions = []  # bought at a discount: being repaid sooner at par or more only yields more
-    try:
-        found = yield_to_worst(bond, settlement, price, redemptions, "street")
-    except ValueError:
-        return float("nan")
-    equivalent = bond_equivalent(found.annual_yield, bond.periods_a_year)
-    return equivalent if abs(equivalent) < BELIEVABLE else float("nan")
-
-
-def announced_yield(bond: DatedBond, terms: Terms, settlement: date, price: float) -> float:
-    """Yield to the day a call already announced is paid, bond-equivalent. [1/year]; nan where none within 100 %"""
-    assert terms.announced is not None
-    way = Redemption(terms.announced["payment_date"], float(terms.announced["price"]))
-    equivalent = bond_equivalent(yield_from_clean(bond, settlement, price, "street", way), bond.periods_a_year)
-    return equivalent if abs(equivalent) < BELIEVABLE else float("nan")
 
 
 def securities_frame(prepared: Prepared) -> pd.DataFrame:
@@ -106,14 +70,7 @@ def securities_frame(prepared: Prepared) -> pd.DataFrame:
                 "spread_from": fitted.origin[u],
                 "book_yield": float(sums["yield"][u]),
                 "worst_date": month_end(int(sums["worst"][u]), study.valuation_date).isoformat(),
-                "yield_to_worst": announced_yield(prepared.dated_bonds[u], terms, study.valuation_date, clean)
-                if terms.announced is not None
-                else street_yield(
-                    prepared.dated_bonds[u],
-                    street_redemptions(row, mine, study.valuation_date),
-                    study.valuation_date,
-                    clean,
-                ),
+                "yield_to_worst": worst_of(prepared.dated_bonds[u], terms, study.valuation_date, clean).annual_yield,
                 "make_whole_spread_bp": make_whole[0] if make_whole else np.nan,
             }
         )

@@ -10,16 +10,27 @@ import os
 import platform
 from importlib import metadata
 from pathlib import Path
-from typing import Any
+from typing import Any, Protocol
 
 from projector.arithmetic import KERNELS_DIGEST
 from projector.run.publish import file_digest
-from projector.run.results import RunResults
+from projector.study.records import Study
 
 PACKAGES = (
     "projector", "numpy", "pandas", "scipy", "pyarrow", "jinja2", "numba", "llvmlite", "pydantic", "matplotlib",
     "XlsxWriter", "python-calamine",
 )  # fmt: skip
+
+
+class Stated(Protocol):
+    """What a statement is made of: a run's results or those of another command."""
+
+    @property
+    def study(self) -> Study: ...
+    @property
+    def set_digest(self) -> str: ...
+    @property
+    def result_digests(self) -> dict[str, str]: ...
 
 
 def processor() -> str:
@@ -42,7 +53,7 @@ def versions() -> dict[str, str]:
     return out
 
 
-def run_statement(results: RunResults, folder: Path, options: dict[str, Any]) -> dict[str, Any]:
+def run_statement(results: Stated, folder: Path, options: dict[str, Any]) -> dict[str, Any]:
     """The statement of a finished folder: subjects by digest, inputs, options, versions and machine."""
     subjects = [
         {"name": path.relative_to(folder).as_posix(), "digest": {"sha256": file_digest(path)}}
@@ -73,7 +84,7 @@ def run_statement(results: RunResults, folder: Path, options: dict[str, Any]) ->
     }
 
 
-def write_statement(results: RunResults, folder: Path, options: dict[str, Any]) -> None:
+def write_statement(results: Stated, folder: Path, options: dict[str, Any]) -> None:
     """Written last, so that a folder with a statement is a whole one."""
     text = json.dumps(run_statement(results, folder, options), indent=2, sort_keys=True, ensure_ascii=False)
     (folder / "run_statement.json").write_text(text + "\n", encoding="utf-8")

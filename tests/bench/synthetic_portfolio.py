@@ -12,8 +12,8 @@ CURVE = {1: 4.12, 3: 4.42, 6: 4.76, 12: 4.73, 24: 4.41, 36: 4.22, 60: 3.99, 84: 
 ORIGIN = 'source = "invented"\nas_of = 2022-12-30\nrationale = "benchmark"\n'
 
 
-def securities(count: int, callable_count: int, seed: int) -> tuple[pd.DataFrame, pd.DataFrame]:
-    """Securities and call rights: of the callable ones 15 % monthly, the rest on coupon dates; of the others most
+def securities(count: int, callable_count: int, seed: int, monthly: float = 0.15) -> tuple[pd.DataFrame, pd.DataFrame]:
+    """Securities and call rights: of the callable ones a share `monthly`, the rest on coupon dates; of the others most
     have a make-whole right with a par-call date.
     """
     rng = np.random.default_rng(seed)
@@ -34,7 +34,7 @@ def securities(count: int, callable_count: int, seed: int) -> tuple[pd.DataFrame
             rights.append((name, maturity - pd.DateOffset(years=years + 1), par_call, "make_whole", np.nan, 20.0))
         if callable_ and years > 2:
             first = maturity - pd.DateOffset(years=int(rng.integers(1, years)))
-            style = "american" if rng.random() < 0.15 else "bermudan"
+            style = "american" if rng.random() < monthly else "bermudan"
             last = maturity - pd.DateOffset(days=1)
             premium = coupon * 50.0 if rng.random() < 0.5 else 0.0
             step = first + pd.DateOffset(years=1)
@@ -51,10 +51,12 @@ def securities(count: int, callable_count: int, seed: int) -> tuple[pd.DataFrame
     return frame, pd.DataFrame(rights, columns=right_columns)
 
 
-def write_study(folder: Path, count: int, callable_count: int, paths: int = 7, seed: int = 1) -> Path:
+def write_study(
+    folder: Path, count: int, callable_count: int, paths: int = 7, seed: int = 1, monthly: float = 0.15
+) -> Path:
     """Writes the study; more than seven paths repeat the seven as shift tables would, by further presets."""
     folder.mkdir(parents=True, exist_ok=True)
-    bonds, rights = securities(count, callable_count, seed)
+    bonds, rights = securities(count, callable_count, seed, monthly)
     lots = pd.DataFrame({"lot_id": [f"L{i:06d}" for i in range(count)], "security_id": bonds["security_id"]})
     lots = lots.assign(segment="general", par=1e6, book_value=985_000.0, tax_basis=985_000.0)
     reserve = 1.03e6 * count

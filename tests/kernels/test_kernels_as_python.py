@@ -13,7 +13,9 @@ import projector
 
 CODE = """
 import numpy as np
+from valuation_bonds import Terms, every, solver
 from projector.balance.statement_kernels import statement_path
+from projector.bonds.call_odds import call_odds
 from projector.bonds.exercise.pricing import Problem, operator_for, solve
 from projector.bonds.exercise.step_operator import GRID_HALF_YEAR, GRID_MONTHLY
 from projector.rates.curve import CurveReading, log_discount_nodes, monthly_discounts
@@ -33,6 +35,11 @@ coupon, accrued = np.zeros(13), np.zeros(13); coupon[[6, 12]] = 2.5; accrued[:12
 book, accretion, growth, worst = np.zeros(13), np.zeros(13), np.ones(13), np.zeros(13, dtype=np.int64)
 statement_path(12, 12, 100.0, price, accrued, coupon, coupon, 102.0, book, accretion, growth, worst)
 out += [float(v).hex() for v in (*book, *accretion, *growth)]
+s = solver(Terms(18, 6, 5.0, 6, every(6, 18, 6)), Terms(5, 1, 6.0, 3, every(1, 5, 1)), Terms(9, 3, 5.0, 3, {3: 100.0}))
+curve = np.exp(-0.045 * np.arange(19) / 12.0)
+odds = call_odds(s, np.arange(3), curve)
+for figures in (odds.odds, odds.never, odds.called, odds.alive):
+    out += [float(v).hex() for v in figures.ravel()]
 print(" ".join(out))
 """
 
@@ -40,7 +47,8 @@ print(" ".join(out))
 def figures(tmp_path: Path, **extra: str) -> str:
     """The figures as hexadecimal, from a process of its own with its own kernel folder."""
     home = Path(projector.__file__).resolve().parents[1]
-    environment = {**os.environ, "PYTHONPATH": str(home), "NUMBA_CACHE_DIR": str(tmp_path), **extra}
+    paths = os.pathsep.join([str(home), str(Path(__file__).resolve().parents[1])])
+    environment = {**os.environ, "PYTHONPATH": paths, "NUMBA_CACHE_DIR": str(tmp_path), **extra}
     done = subprocess.run([sys.executable, "-c", CODE], env=environment, capture_output=True, text=True, check=True)
     return done.stdout
 
