@@ -19,7 +19,7 @@ from projection_studies import busy_study, call_right, hand_study
 
 import projector
 from projector import cli
-from projector.bonds.mapped import dated
+from projector.bonds.mapped import Terms
 from projector.bonds.yields import from_bond_equivalent
 from projector.rates.curve import CurveError
 from projector.rates.key_rates import KEY_NAMES
@@ -190,7 +190,7 @@ def test_limit_a_bermudan_row_is_used_on_coupon_dates_and_no_price_is_above_par_
         {"style": "american", "first_date": date(2026, 6, 2), "last_date": date(2030, 1, 1), "price": 100.5},
         {"style": "make_whole", "first_date": date(2021, 1, 1), "last_date": date(2029, 12, 14), "price": np.nan},
     ]
-    found = [(way.day, way.price) for way in street_redemptions(dated(row), row, rights, TODAY)]
+    found = [(way.day, way.price) for way in street_redemptions(Terms(row).dated(), row, rights, TODAY)]
     assert found == [
         (date(2024, 6, 15), 102.0), (date(2025, 12, 15), 102.0), (date(2026, 6, 2), 100.5),
         (date(2029, 12, 15), 100.0), (date(2030, 1, 1), 100.0), (date(2030, 6, 14), 100.0),
@@ -204,7 +204,7 @@ def test_limit_a_yield_beyond_belief_is_left_empty_with_its_date() -> None:
         "par_call_date": None,
     }  # fmt: skip
     rights = [{"style": "american", "first_date": date(2021, 1, 1), "last_date": date(2030, 6, 1), "price": 100.0}]
-    bond = dated(row)
+    bond = Terms(row).dated()
     found = worst_yield(bond, street_redemptions(bond, row, rights, TODAY), TODAY, 104.0)
     assert np.isnan(found.annual_yield)
     assert found.redemption == (date(2023, 1, 1), 100.0)
