@@ -103,6 +103,7 @@ def tell(prepared: Prepared, block: BlockResult, unit: int, path: int, solve_all
         announced=bool(prepared.bonds.announced[unit]),
         redemption=float(prepared.bonds.redemption[unit]),
         put=life.put,
+        doubled=life.doubled,
         notice=int(prepared.bonds.call_lag[unit]),
         decided=life.decided,
         paid=life.paid,
@@ -147,6 +148,13 @@ class Life:
         ends = [int(self.prepared.bonds.maturity[self.unit]), self.prepared.months]
         ends += [] if self.put is None else [self.put[0]]
         return min([*ends, self.paid] if self.paid is not None else ends)
+
+    @property
+    def doubled(self) -> tuple[int, ...]:
+        """Months whose sinking payment the issuer doubled."""
+        events, column = self.block.events, self.path - self.block.path_lo
+        mine = range(*events.start[self.unit, column : column + 2])
+        return tuple(int(events.month[e]) for e in mine if events.kind[e] == DOUBLE)
 
     @property
     def put(self) -> tuple[int, int, float] | None:

@@ -67,6 +67,7 @@ class CallStory:
     announced: bool  # called before the valuation date, paid at `maturity` at `redemption`
     redemption: float  # [per 100 of the par left]
     put: tuple[int, int, float] | None  # the holder's put: months of payment and decision, clean price
+    doubled: tuple[int, ...]  # months whose sinking payment the issuer doubled
     notice: int  # from the issuer's decision to the payment [month]
     decided: int | None
     paid: int | None

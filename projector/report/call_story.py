@@ -101,6 +101,20 @@ def money(story: CallStory, amount: float) -> str:
 
 def end_of_life(story: CallStory) -> str:
     """Where a story that ends without a call ends."""
+    return doubled(story) + ending(story)
+
+
+def doubled(story: CallStory) -> str:
+    """Which sinking payments the issuer doubled, with a blank after; nothing where none was."""
+    if not story.doubled:
+        return ""
+    months = ", ".join(fixed(m) for m in story.doubled)
+    unit = "month" if len(story.doubled) == 1 else "months"
+    return f"The issuer doubled {count_of(len(story.doubled), 'sinking payment')}, in {unit} {months}. "
+
+
+def ending(story: CallStory) -> str:
+    """A put, maturity, or the horizon."""
     if story.put is not None:
         paid, decided, price = story.put
         said = "" if paid == decided else f" (decided in month {fixed(decided)})"
@@ -115,6 +129,8 @@ def no_right(story: CallStory) -> str:
     """A security that could not be called on this path."""
     if story.rights:
         first = story.rights[0]
+        if story.put is not None and story.put[0] <= first:
+            return f"not called: its rights begin in month {fixed(first)}. {end_of_life(story)}"
         beyond = f"its rights begin in month {fixed(first)}, after the horizon of {fixed(story.horizon)} months"
         return f"not called, because {beyond}. {end_of_life(story)}"
     if story.make_whole:

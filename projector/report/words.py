@@ -162,7 +162,9 @@ def title_par_called(called: Sequence[tuple[str, float]], callable_par: float) -
 def explained_call(decision: str, month: str, continuation: str, bar: str) -> str:
     """One decision in words."""
     if decision == "called":
-        return f"Called in {month}: issuer's cost of keeping it {continuation}, price plus cost and accrued {bar}."
+        return (
+            f"Call decided in {month}: issuer's cost of keeping it {continuation}, price plus cost and accrued {bar}."
+        )
     return f"Kept in {month}: issuer's cost of keeping it {continuation}, price plus cost and accrued {bar}."
 
 

@@ -117,6 +117,24 @@ def test_known_a_call_paid_later_names_both_months(called: CallStory, kept: Call
     )
 
 
+def test_known_a_put_before_the_first_right_is_told(kept: CallStory) -> None:
+    months = kept.months.assign(call_price=float("nan")).iloc[:7]
+    story = replace(kept, rights=(12,), put=(6, 5, 99.0), months=months)
+    said = headline(story)
+    assert "not called: its rights begin in month 12. The holder puts it in month 6 (2023-06-30) at 99.00" in said
+    assert "(decided in month 5): holding on was worth less." in said
+
+
+def test_known_doubled_sinking_payments_are_told(kept: CallStory) -> None:
+    assert "The issuer doubled 2 sinking payments, in months 6, 18. " in headline(replace(kept, doubled=(6, 18)))
+    assert "doubled" not in headline(kept)
+
+
+def test_known_an_announced_call_leaves_no_decision(kept: CallStory) -> None:
+    said = headline(replace(kept, announced=True, redemption=101.5, maturity=2))
+    assert "called before the valuation date; paid in month 2 at 101.50" in said
+
+
 def test_order_a_tie_is_printed_with_the_decimals_that_show_it(called: CallStory) -> None:
     months = called.months.copy()
     months.loc[12, ["continuation", "issuer_saving"]] = [100.50031, 0.00031]

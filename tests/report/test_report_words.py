@@ -165,4 +165,4 @@ def test_known_line_under_a_surplus_panel():
 
 def test_known_decision_in_words():
     said = words.explained_call("called", "2027-02", "101.37", "101.25")
-    assert said == "Called in 2027-02: issuer's cost of keeping it 101.37, price plus cost and accrued 101.25."
+    assert said == "Call decided in 2027-02: issuer's cost of keeping it 101.37, price plus cost and accrued 101.25."

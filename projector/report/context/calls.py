@@ -229,7 +229,8 @@ def _explained(reading: Reading, chosen: list[Chosen]) -> Table:
     none = tuple(cells.quiet("none", f"decisions/none/{k}") for k in range(6))
     return Table(
         number="10.4", caption="Decisions explained",
-        basis="Per 100 of par, with accrued interest. Upper bound: cost of the best policy fixed in advance. The "
+        basis="Per 100 of par, with accrued interest. Month of the decision; where notice is due the payment follows "
+              "and the bar is seen from the decision. Upper bound: cost of the best policy fixed in advance. The "
               "largest solved call, the kept decision nearest to its bar, and the largest security never called, by "
               "rule.",
         row_head="Security", rows=tuple(rows) or (Row(name="No decision to explain", cells=none),),
