@@ -218,7 +218,7 @@ def special_study(folder: Path) -> SmallStudy:
 
     s.tables["call_rights"] = [
         call("NB", "2023-06-30", "2029-12-31", "100", "bermudan", 30),
-        call("NA", "2023-04-30", "2030-05-31", "100.5", "american", 60),
+        call("NA", "2023-01-31", "2030-05-31", "100.5", "american", 60),
         call("CP", "2023-12-31", "2029-12-31", "101", "bermudan", 0),
         call("CN", "2023-12-31", "2029-12-31", "101", "bermudan", 30),
         call("SC", "2023-03-31", "2030-05-31", "101", "american", 5),
@@ -242,7 +242,7 @@ def special_study(folder: Path) -> SmallStudy:
         {"security_id": "ST", "start_date": "2025-12-31", "coupon_rate": "0.065"},
     ]
     s.tables["announced_calls"] = [
-        {"security_id": "AN", "payment_date": "2023-02-15", "price": "101.5"},
+        {"security_id": "AN", "payment_date": "2023-05-15", "price": "101.5"},
         {"security_id": "AM", "payment_date": "2023-06-30", "price": "100"},
     ]
     names = ("put_rights", "sinking_payments", "coupon_steps", "announced_calls")

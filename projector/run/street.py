@@ -42,6 +42,9 @@ def street_redemptions(
 ) -> list[Redemption]:
     """First and last usable date of every price still ahead: with one price in between, one of the two is the worst.
 
+    That holds while the coupon stays: on its way to a date the yield moves towards what the coupon then pays on the
+    price, and never past it. So the dates on which a coupon steps are looked at too.
+
     A bermudan row is usable on the coupon dates inside it. Make-whole rights have no price and are left out; from the
     par-call date on no price is above 100.
     """
@@ -54,7 +57,8 @@ def street_redemptions(
         if r["style"] == "bermudan":
             usable = [c.payment for c in coupons_between(bond, usable[0] - timedelta(days=1), usable[1])]
         if usable:
-            price[usable[0]] = price[usable[-1]] = float(r["price"])
+            changes = [day for day, _ in bond.steps if usable[0] < day < usable[-1]]
+            price |= dict.fromkeys((usable[0], *changes, usable[-1]), float(r["price"]))
     par_call = row["par_call_date"]
     if par_call is not None:
         price = {day: min(k, 100.0) if day >= par_call else k for day, k in price.items()}

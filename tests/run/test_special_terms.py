@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from datetime import date
 from pathlib import Path
 from types import SimpleNamespace
 from typing import Any
@@ -12,12 +13,15 @@ from fine_grid import Security, fine_values
 from projection_studies import special_study
 
 import projector
-from projector.balance.market_values import GroupValues
+from projector.balance.holdings_kernels import DEFAULT_PAR, ITEMS, PAR, HeldTerms, Left, add_holdings
+from projector.balance.market_values import GroupValues, outstanding
 from projector.bonds.decisions import CALL, DOUBLE, PUT
+from projector.bonds.yields import Redemption, yield_from_clean
 from projector.run.block import discounts_of, project
 from projector.run.identities import check_identities
 from projector.run.prepare import prepare
 from projector.run.runner import run_study
+from projector.run.street import worst_of
 from projector.study.reading import read_study
 
 
@@ -126,16 +130,65 @@ def test_order_notice_falls_so_many_months_before_the_payment(special: Any) -> N
 
 
 def test_known_cash_of_an_announced_call_and_of_a_sinking_fund(special: Any) -> None:
-    """Per 100: AN is repaid at 101.5 with two months of a 7 % coupon; SC repays a tenth each June."""
+    """Per 100: AN is repaid at 101.5 with five months of a 7 % coupon; SC repays a tenth each June."""
     b = special.prepared.bonds
     an, sc = b.ids.index("AN"), b.ids.index("SC")
-    assert b.maturity[an] == 2
-    assert b.flow[an, :3] == pytest.approx([0.0, 0.0, 101.5 + 3.5 * 2 / 6])
+    assert b.maturity[an] == 5
+    assert b.flow[an, :7] == pytest.approx([0.0, 0.0, 0.0, 0.0, 0.0, 101.5 + 3.5 * 5 / 6, 0.0])
+    assert b.flow[an].sum() == b.flow[an, 5]
     assert b.flow[sc, [6, 12, 18, 24, 90]] == pytest.approx(
         [2.875 + 10.0, 2.875 * 0.9, 2.875 * 0.9 + 10.0, 2.875 * 0.8, 2.875 * 0.3 + 30.0]
     )
     assert b.outstanding[sc, [0, 6, 18, 89, 90]] == pytest.approx([1.0, 0.9, 0.8, 0.3, 0.0])
     assert b.coupon[b.ids.index("ST"), [6, 12, 18, 36, 42]] == pytest.approx([2.0, 2.0, 2.75, 2.75, 3.25])
+
+
+def test_limit_what_would_have_been_announced_by_the_valuation_date_cannot_be_called(special: Any) -> None:
+    """NA may be called from January on, with notice of two months: the first payment is that of March."""
+    b = special.prepared.bonds
+    assert np.flatnonzero(np.isfinite(b.clean_price[b.ids.index("NA")]))[0] == 3
+
+
+def test_order_what_is_announced_is_not_valued_as_callable(special: Any) -> None:
+    """From the month of its decision on, a called security has no share left to be solved."""
+    unit, path = special.prepared.bonds.ids.index("NA"), 6
+    ((_, decided, paid, *_),) = left(special, "NA", path)
+    shares = [float(outstanding(special.block.events, m)[unit, path]) for m in (decided - 1, decided, paid)]
+    assert shares == [1.0, 0.0, 0.0]
+
+
+def test_order_a_stepped_bond_at_a_discount_has_its_worst_yield_before_the_steps(special: Any) -> None:
+    """Bought under par it yields less when called early: the least of the yields to every date the schedule allows."""
+    bond = special.prepared.terms_of["ST"].dated()
+    today, clean = special.prepared.study.valuation_date, 99.0
+    ways = [Redemption(c.payment, 100.0) for c in bond.coupons if date(2023, 6, 30) <= c.payment < bond.maturity]
+    each = [yield_from_clean(bond, today, clean, "street", way) for way in (*ways, None)]
+    assert worst_of(bond, special.prepared.terms_of["ST"], today, clean).annual_yield == pytest.approx(
+        min(each), abs=1e-9
+    )
+    assert min(each) < each[-1] - 1e-4
+
+
+def test_known_par_that_defaults_is_par_not_yet_repaid(special: Any) -> None:
+    """SC repays a tenth in month 6: until then all its par may default, after it nine tenths."""
+    p, block = special.prepared, special.block
+    unit = p.bonds.ids.index("SC")
+    survival, left_of = p.survival[unit], p.bonds.outstanding[unit]
+    b = p.bonds
+    tables = (x[:, : p.months + 1].copy() for x in (b.coupon, b.accrued, b.principal, b.outstanding))
+    held = HeldTerms(b.maturity, p.survival, np.zeros(len(b.ids)), *tables, b.redemption, b.announced)
+    out = np.zeros((ITEMS, p.months + 1, 1, 1))
+    n = int(np.flatnonzero(p.holdings.security == unit)[0])
+    none = np.zeros((len(p.bonds.ids), 2), dtype=np.int64)
+    events = block.events
+    add_holdings(
+        p.months, np.array([unit]), np.zeros(1, np.int64), np.array([100.0]), held, p.holdings.book[[n]],
+        p.holdings.accretion[[n]], Left(events.month, events.part, events.kind, events.price, none), out,
+    )  # fmt: skip
+    months = np.arange(1, p.months + 1)
+    expected = 100.0 * (survival[months - 1] - survival[months]) * left_of[months - 1]
+    assert out[DEFAULT_PAR, 1:, 0, 0] == pytest.approx(expected, rel=1e-12)
+    assert out[PAR, 6, 0, 0] == pytest.approx(90.0 * survival[6])
 
 
 def test_known_what_is_announced_is_valued_as_certain(special: Any) -> None:
@@ -165,6 +218,7 @@ def test_order_identities_hold_and_every_share_is_accounted_for(special: Any) ->
     cell = np.repeat(np.arange(events.start.shape[0] * 7), np.diff(events.start, axis=1).ravel())
     total = np.bincount(cell, weights=events.part, minlength=cell.max() + 1)
     assert (total <= 1.0 + 1e-12).all()
+    assert (events.part > 0.0).all()  # what is gone is asked no more
     assert {CALL, PUT, DOUBLE} == set(events.kind.tolist())
 
 
