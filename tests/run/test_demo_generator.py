@@ -18,7 +18,18 @@ ROOT = Path(__file__).resolve().parents[2]
 SCRIPT = ROOT / "scenarios" / "make_harbour_ridge_2022.py"
 DEMO = ROOT / "scenarios" / "harbour_ridge_2022"
 BYTES = (
-    *("study.toml", "securities.csv", "lots.csv", "call_rights.csv", "yield_curve.csv", "class_spreads.csv"),
+    *(
+        "study.toml",
+        "securities.csv",
+        "lots.csv",
+        "call_rights.csv",
+        "yield_curve.csv",
+        "class_spreads.csv",
+        "put_rights.csv",
+        "sinking_payments.csv",
+        "coupon_steps.csv",
+        "announced_calls.csv",
+    ),
     *("default_costs.csv", "control_totals.csv"),
 )
 STREAMS = "liability_streams.parquet"
