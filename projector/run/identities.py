@@ -8,12 +8,13 @@ from __future__ import annotations
 
 from collections.abc import Iterable
 from datetime import date
+from typing import Any
 
 import numpy as np
 import numpy.typing as npt
 import pandas as pd
 
-from projector.bonds.mapped import Terms
+from projector.bonds.schedule import DatedBond
 from projector.liabilities.streams import SuppliedStream
 from projector.run.block import BlockResult
 from projector.run.prepare import Prepared
@@ -138,15 +139,15 @@ def surplus_terms(r: BlockResult) -> list[Array]:
     return [surplus[:-1], -surplus[1:], *(t[1:] for t in income), -(b["reserve"][1:] - b["reserve"][:-1])]
 
 
-def promised_coupons(terms: Terms, valuation: date) -> float:
+def promised_coupons(bond: DatedBond, announced: dict[str, Any] | None, valuation: date) -> float:
     """Coupons after the valuation date by the dated schedule, up to a call already announced. [per 100]
 
     What such a call pays between two coupons counts mapped months of the coupon then earned (C1).
     """
-    coupons = [c for c in terms.dated().coupons if c.payment > valuation]
-    if terms.announced is None:
+    coupons = [c for c in bond.coupons if c.payment > valuation]
+    if announced is None:
         return sum(c.amount for c in coupons)
-    end = month_of(terms.announced["payment_date"], valuation)
+    end = month_of(announced["payment_date"], valuation)
     total = sum(c.amount for c in coupons if month_of(c.payment, valuation) <= end)
     broken = [c for c in coupons if month_of(c.start, valuation) < end < month_of(c.payment, valuation)]
     for c in broken:
@@ -159,7 +160,12 @@ def coupon_sums(prepared: Prepared) -> Sums:
     """I5: what each security pays on mapped months is what its dated schedule promises after the valuation date."""
     check = Sums("I5", "coupons over life: mapped months = dated schedule, per 100 of par")
     valuation = prepared.study.valuation_date
-    promised = np.array([promised_coupons(prepared.terms_of[s], valuation) for s in prepared.bonds.ids])
+    promised = np.array(
+        [
+            promised_coupons(bond, prepared.terms_of[name].announced, valuation)
+            for name, bond in zip(prepared.bonds.ids, prepared.dated_bonds)
+        ]
+    )
     check.add([prepared.bonds.coupon.sum(axis=1)[None, :], -promised[None, :]], (prepared.bonds.ids,), 0)
     return check
 

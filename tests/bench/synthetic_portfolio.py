@@ -48,7 +48,7 @@ def securities(count: int, callable_count: int, seed: int, monthly: float = 0.15
                "par_call_date"]  # fmt: skip
     frame = pd.DataFrame(rows, columns=columns)
     right_columns = ["security_id", "first_date", "last_date", "style", "price", "make_whole_spread_bp"]
-    return frame, pd.DataFrame(rights, columns=right_columns)
+    return frame, pd.DataFrame(rights, columns=right_columns).assign(notice_days=0)
 
 
 def write_study(

@@ -57,15 +57,16 @@ def upper_bounds(
     maturity; inf where the holder may put, since his answer to the policy is not known. -inf where it is gone.
     """
     paths = discount.shape[1]
-    flow, price = tables.flow, tables.price
+    flow, price, put_price = tables.flow, tables.price, tables.put
+    outstanding, ends = tables.outstanding, tables.maturity
     pace = at.step if at.call_lag % at.step == 0 else 1
     for n in range(units.shape[0]):
         u = units[n]
         decay = exp_one(-spread[n] * pace / 12.0)
-        maturity = tables.maturity[u]
+        maturity = ends[u]
         puttable = False
         for t in range(at.month + 1, maturity):
-            puttable = puttable or tables.put[u, t] > NEVER_PUT
+            puttable = puttable or put_price[u, t] > NEVER_PUT
         for p in range(paths):
             if not alive[n, p]:
                 out[n, p] = -np.inf
@@ -81,7 +82,7 @@ def upper_bounds(
                 d = discount[t - at.month, p] * factor
                 paid += flow[u, t] * d
                 if t < maturity and price[u, t] < np.inf and t - at.call_lag > at.month:
-                    stop = paid + (price[u, t] + cost * tables.outstanding[u, t]) * d
+                    stop = paid + (price[u, t] + cost * outstanding[u, t]) * d
                     if stop < best:
                         best = stop
             out[n, p] = paid if paid < best else best
@@ -133,14 +134,15 @@ def straight_values(
 @kernel
 def first_and_last(at: Dates, unit: int, tables: UnitTables) -> tuple[int, int]:
     """First and last step at which a right can be decided, 0 and 0 where there is none."""
+    ends, call_price, put_price, double_share = tables.maturity, tables.price, tables.put, tables.double_share
     first = 0
     last = 0
     k = 1
-    maturity = tables.maturity[unit]
+    maturity = ends[unit]
     for d in range(at.month + at.offset, maturity, at.step):
-        live = d + at.call_lag < maturity and tables.price[unit, d + at.call_lag] < np.inf
-        live = live or (d + at.put_lag < maturity and tables.put[unit, d + at.put_lag] > NEVER_PUT)
-        if live or tables.double_share[unit, d] > 0.0:
+        live = d + at.call_lag < maturity and call_price[unit, d + at.call_lag] < np.inf
+        live = live or (d + at.put_lag < maturity and put_price[unit, d + at.put_lag] > NEVER_PUT)
+        if live or double_share[unit, d] > 0.0:
             first = k if first == 0 else first
             last = k
         k += 1
@@ -157,6 +159,7 @@ def fill_lead(
     lag    months from each step's date to its payment
     first  step of the first right, 0: none, and only the last of the three is meant
     """
+    ends, flow = tables.maturity, tables.flow
     ahead = at.offset + lag - (at.step if at.offset + lag > at.step else 0)  # months to the first payment
     issuer, decay = exp_one(-issuer_spread * ahead / 12.0), exp_one(-issuer_spread * at.step / 12.0)
     holder, held = exp_one(-holder_spread * ahead / 12.0), exp_one(-holder_spread * at.step / 12.0)
@@ -167,8 +170,8 @@ def fill_lead(
         lead[0, lane] = here * exp_one(-issuer_spread * (stop - at.month) / 12.0)
         lead[3, lane] = here * exp_one(-holder_spread * (stop - at.month) / 12.0)
         lead[1, lane], lead[4, lane] = 0.0, 0.0
-    for t in range(at.month + ahead, tables.maturity[unit] + 1, at.step):
-        amount = tables.flow[unit, t]
+    for t in range(at.month + ahead, ends[unit] + 1, at.step):
+        amount = flow[unit, t]
         if amount != 0.0:
             value = amount * discount[t - at.month, path]
             paid += value * issuer
@@ -189,32 +192,55 @@ def fill_lane(
     issuer_spread: float, holder_spread: float, discount: Floats, terms: LaneTerms,
 ) -> None:  # fmt: skip
     """Lays one job out in its lane from step `begin` on; a lane's bits do not depend on its neighbours' rights."""
+    ratio, holder_ratio, paid_ratio, paid_holder_ratio, flow_out = (
+        terms.ratio,
+        terms.holder_ratio,
+        terms.paid_ratio,
+        terms.paid_holder_ratio,
+        terms.flow,
+    )
+    price_out, bar_out, put_out, share_out, double_price_out = (
+        terms.price,
+        terms.bar,
+        terms.put,
+        terms.share,
+        terms.double_price,
+    )
+    double_bar_out = terms.double_bar
+    ends, flow, call_price, put_price, outstanding = (
+        tables.maturity,
+        tables.flow,
+        tables.price,
+        tables.put,
+        tables.outstanding,
+    )
+    double_share = tables.double_share
     decay, held = exp_one(-issuer_spread * at.step / 12.0), exp_one(-holder_spread * at.step / 12.0)
     late, held_late = exp_one(-issuer_spread * lag / 12.0), exp_one(-holder_spread * lag / 12.0)
     before = discount[at.offset + (begin - 1) * at.step, path] if begin > 0 else 1.0
-    maturity = tables.maturity[unit]
+    maturity = ends[unit]
     for k in range(begin + 1, steps + 1):
         d = at.month + at.offset + (k - 1) * at.step
         here = discount[d - at.month, path]
         n = k - begin
-        terms.ratio[n - 1, lane] = here / before * decay
-        terms.holder_ratio[n - 1, lane] = here / before * held
+        ratio[n - 1, lane] = here / before * decay
+        holder_ratio[n - 1, lane] = here / before * held
         before = here
-        terms.flow[n, lane] = tables.flow[unit, d + lag]
+        flow_out[n, lane] = flow[unit, d + lag]
         if lag > 0:
-            terms.paid_ratio[n, lane] = discount[d + lag - at.month, path] / here * late
-            terms.paid_holder_ratio[n, lane] = discount[d + lag - at.month, path] / here * held_late
+            paid_ratio[n, lane] = discount[d + lag - at.month, path] / here * late
+            paid_holder_ratio[n, lane] = discount[d + lag - at.month, path] / here * held_late
         effect = d + at.call_lag
-        if effect < maturity and tables.price[unit, effect] < np.inf:
-            terms.price[n, lane] = tables.price[unit, effect]
-            terms.bar[n, lane] = tables.price[unit, effect] + cost * tables.outstanding[unit, effect]
+        if effect < maturity and call_price[unit, effect] < np.inf:
+            price_out[n, lane] = call_price[unit, effect]
+            bar_out[n, lane] = call_price[unit, effect] + cost * outstanding[unit, effect]
         effect = d + at.put_lag
-        if terms.put.shape[0] > 0 and effect < maturity:
-            terms.put[n, lane] = tables.put[unit, effect]
-        if terms.share.shape[0] > 0 and d < maturity and tables.double_share[unit, d] > 0.0:
-            terms.share[n, lane] = tables.double_share[unit, d]
-            terms.double_price[n, lane] = 100.0 * tables.outstanding[unit, d]
-            terms.double_bar[n, lane] = (100.0 + cost) * tables.outstanding[unit, d]
+        if put_out.shape[0] > 0 and effect < maturity:
+            put_out[n, lane] = put_price[unit, effect]
+        if share_out.shape[0] > 0 and d < maturity and double_share[unit, d] > 0.0:
+            share_out[n, lane] = double_share[unit, d]
+            double_price_out[n, lane] = 100.0 * outstanding[unit, d]
+            double_bar_out[n, lane] = (100.0 + cost) * outstanding[unit, d]
 
 
 @kernel
@@ -240,6 +266,7 @@ def run_jobs(
     issuer_spread, holder_spread  [job]
     """
     jobs = job_unit.shape[0]
+    ends = tables.maturity
     lag = at.call_lag % at.step if rights.notice else (at.put_lag % at.step if rights.puts else 0)
     for start in range(0, jobs, LANES):
         count = min(LANES, jobs - start)
@@ -250,7 +277,7 @@ def run_jobs(
         begin = 1 << 30
         for lane in range(LANES):
             u = job_unit[start + min(lane, count - 1)]  # a short batch is filled with copies of its last job
-            steps[lane] = (tables.maturity[u] - lag - at.month - at.offset) // at.step + 1
+            steps[lane] = (ends[u] - lag - at.month - at.offset) // at.step + 1
             first[lane], last[lane] = first_and_last(at, u, tables)
             top = max(top, steps[lane])
             begin = min(begin, max(first[lane] if first[lane] > 0 else steps[lane], 1) - 1)

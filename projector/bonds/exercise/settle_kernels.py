@@ -254,6 +254,23 @@ def add_columns(lo: int, hi: int, base: int, lanes: int, sign: float, source: Fl
 
 
 @inlined
+def settle_calls(
+    lo: int, hi: int, base: int, lanes: int, reach: int, both: bool, bar: Floats, price: Floats, scale: Floats,
+    c: Floats, h: Floats, v: Floats, w: Floats, kink: Integers, used: Flags, flat_low: Floats, flat_high: Floats,
+    work: Floats,
+) -> None:  # fmt: skip
+    """`settle` where there are calls without notice and nothing else."""
+    exercise(lo, hi, base, lanes, bar, price, both, c, h, v, w, kink, flat_low, flat_high)
+    for lane in range(lanes):
+        used[lane] = used[lane] or kink[lane] >= lo
+    if reach > 0:
+        extend(lo, hi, base, lanes, reach, flat_low, flat_high, v, work)
+        if both:
+            extend(lo, hi, base, lanes, reach, flat_low, flat_high, w, work)
+    correct(lo, hi, base, lanes, bar, price, scale, both, c, h, kink, v, w, work)
+
+
+@kernel
 def settle(
     lo: int, hi: int, base: int, lanes: int, reach: int, both: bool, notice: bool, puts: bool, doubles: bool, s: Space,
     t: StepTerms, flat_low: Floats, flat_high: Floats, zero: Floats, work: Floats,

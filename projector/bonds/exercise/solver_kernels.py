@@ -26,6 +26,7 @@ from projector.bonds.exercise.settle_kernels import (
     StepTerms,
     interpolate_local,
     settle,
+    settle_calls,
 )
 
 LANES = 16
@@ -93,14 +94,13 @@ class Rights(NamedTuple):
 
 @kernel
 def payment_columns(
-    op: OperatorTables, k: int, stop: int, final: float, begin: int, lane: int, lanes: int, flow: Floats,
-    ratio: Floats, paid_ratio: Floats, lo: int, hi: int, base: int, column: Floats,
+    lag: bool, row: int, straight_conv: Floats, growth: Floats, k: int, stop: int, final: float, begin: int, lane: int,
+    lanes: int, flow: Floats, ratio: Floats, paid_ratio: Floats, lo: int, hi: int, base: int, column: Floats,
 ) -> None:  # fmt: skip
     """Value at step k, on every node of one lane, of the payments after it up to that of step `stop`, in closed form.
 
     final  paid on top of the last; at once where there is no lag and `stop` is k
     """
-    lag, row, growth, straight_conv = op.lag, op.row, op.growth, op.straight_conv
     n, at = np.uint64(lanes), np.uint64((lo - base) * lanes + lane)
     nodes, low = np.uint64(hi + 1 - lo), np.uint64(lo - row)
     now = final if stop == k and not lag else 0.0
@@ -167,7 +167,7 @@ def step_back(
         step_back_any(lo, hi, base, row, lanes, band, band_start, weights, carried, value, flow, factor, out)
 
 
-@kernel
+@inlined
 def weighted_sum(begin: int, lanes: int, weights: Floats, count: int, value: Floats, total: Floats) -> None:
     """Sum over nodes from row `begin` in their order, lane by lane."""
     n = np.uint64(lanes)
@@ -206,6 +206,18 @@ def space(size: int, lanes: int, rights: Rights) -> Space:
 
 
 @inlined
+def call_terms(
+    k: int, begin: int, first: Integers, last: Integers, call_bar: Floats, call_price: Floats, bar: Floats,
+    price: Floats,
+) -> None:  # fmt: skip
+    """Bar and price of each lane's call at step k, inf where none is live."""
+    for lane in range(first.shape[0]):
+        live = first[lane] > 0 and k >= first[lane] and k <= last[lane]
+        bar[lane] = call_bar[k - begin, lane] if live else np.inf
+        price[lane] = call_price[k - begin, lane] if live else np.inf
+
+
+@kernel
 def step_terms(
     k: int, begin: int, first: Integers, last: Integers, terms: LaneTerms, rights: Rights, out: StepTerms
 ) -> None:  # fmt: skip
@@ -259,6 +271,7 @@ def right_columns(
         terms.price,
     )
     call_bar, put_price = terms.bar, terms.put
+    lag, row, straight_conv, growth = op.lag, op.row, op.straight_conv, op.growth
     lanes = first.shape[0]
     for lane in range(lanes):
         live = first[lane] > 0 and k >= first[lane] and k <= last[lane]
@@ -266,11 +279,15 @@ def right_columns(
             bar = call_bar[k - begin, lane] if live else np.inf
             if bar < np.inf:
                 stop = k + rights.call_steps
-                payment_columns(op, k, stop, bar, begin, lane, lanes, flow, ratio, paid_ratio, lo, hi,
-                                base, e)  # fmt: skip
+                payment_columns(
+                    lag, row, straight_conv, growth, k, stop, bar, begin, lane,
+                    lanes, flow, ratio, paid_ratio, lo, hi, base, e,
+                )  # fmt: skip
                 if rights.both:
-                    payment_columns(op, k, stop, call_price[k - begin, lane], begin, lane, lanes, flow,
-                                    holder_ratio, paid_holder_ratio, lo, hi, base, eh)  # fmt: skip
+                    payment_columns(
+                        lag, row, straight_conv, growth, k, stop, call_price[k - begin, lane], begin,
+                        lane, lanes, flow, holder_ratio, paid_holder_ratio, lo, hi, base, eh,
+                    )  # fmt: skip
             else:
                 for i in range(lo - base, hi + 1 - base):
                     e[i * lanes + lane] = 0.0
@@ -280,10 +297,14 @@ def right_columns(
             price = put_price[k - begin, lane] if live else NEVER_PUT
             if price > NEVER_PUT:
                 stop = k + rights.put_steps
-                payment_columns(op, k, stop, price, begin, lane, lanes, flow, ratio, paid_ratio, lo,
-                                hi, base, p)  # fmt: skip
-                payment_columns(op, k, stop, price, begin, lane, lanes, flow, holder_ratio,
-                                paid_holder_ratio, lo, hi, base, ph)  # fmt: skip
+                payment_columns(
+                    lag, row, straight_conv, growth, k, stop, price, begin, lane,
+                    lanes, flow, ratio, paid_ratio, lo, hi, base, p,
+                )  # fmt: skip
+                payment_columns(
+                    lag, row, straight_conv, growth, k, stop, price, begin, lane,
+                    lanes, flow, holder_ratio, paid_holder_ratio, lo, hi, base, ph,
+                )  # fmt: skip
             else:
                 for i in range(lo - base, hi + 1 - base):
                     p[i * lanes + lane] = NEVER_PUT
@@ -338,6 +359,7 @@ def solve_lanes(
         op.first_local,
     )
     local_weights = op.local_weights
+    call_bar, call_price, local_x = terms.bar, terms.price, op.local_x
     lanes = steps.shape[0]
     both = rights.both
     reach = half_band + GHOSTS
@@ -354,12 +376,15 @@ def solve_lanes(
     points = local_weights.shape[0]
     s = space(high_node + reach + MARGIN - base + 1, lanes, rights)
     near = space(points, lanes, rights)
-    c, h, v, w, used, near_v, near_w, near_used = s.c, s.h, s.v, s.w, s.used, near.v, near.w, near.used
+    c, h, v, w, kink, used = s.c, s.h, s.v, s.w, s.kink, s.used
+    near_c, near_h, near_v, near_w, near_kink, near_used = near.c, near.h, near.v, near.w, near.kink, near.used
+    plain = not (rights.notice or rights.puts or rights.doubles)  # most are: no record is looked at step by step
     none = np.zeros(lanes)
     t = StepTerms(
         np.empty(lanes), np.empty(lanes), np.zeros(lanes), np.empty(lanes), np.empty(lanes), np.ones(lanes),
         np.full(lanes, -1.0),
     )  # fmt: skip
+    bars, prices, whole = t.bar, t.price, t.call_scale
     work = np.zeros(20 * 16)
     flat_low, flat_high = np.zeros(lanes), np.zeros(lanes)
     sums, sums_h = np.zeros(lanes), np.zeros(lanes)
@@ -392,25 +417,42 @@ def solve_lanes(
                           paid_h, factor_h, h)  # fmt: skip
         for lane in range(lanes):
             if first[lane] > 0 and k == last[lane]:
-                payment_columns(op, k, steps[lane], 0.0, begin, lane, lanes, flow, ratio, paid_ratio,
-                                a, b, base, c)  # fmt: skip
+                payment_columns(
+                    lag, row, straight_conv, growth, k, steps[lane], 0.0, begin, lane,
+                    lanes, flow, ratio, paid_ratio, a, b, base, c,
+                )  # fmt: skip
                 if both:
-                    payment_columns(op, k, steps[lane], 0.0, begin, lane, lanes, flow, holder_ratio,
-                                    paid_holder_ratio, a, b, base, h)  # fmt: skip
-        step_terms(k, begin, first, last, terms, rights, t)
-        if rights.notice or rights.puts:
-            right_columns(op, k, begin, first, last, terms, rights, a, b, base, s)
+                    payment_columns(
+                        lag, row, straight_conv, growth, k, steps[lane], 0.0, begin, lane,
+                        lanes, flow, holder_ratio, paid_holder_ratio, a, b, base, h,
+                    )  # fmt: skip
         local = ends and first_local[k]
-        if local:
-            local_columns(op, k, base, lanes, rights, s, near)
-        settle(a, b, base, lanes, reach, both, rights.notice, rights.puts, rights.doubles, s, t, flat_low, flat_high,
-               none, work)  # fmt: skip
+        if plain:
+            call_terms(k, begin, first, last, call_bar, call_price, bars, prices)
+            if local:
+                interpolate_local(a, b, base, lanes, local_x[k], c, near_c)
+                if both:
+                    interpolate_local(a, b, base, lanes, local_x[k], h, near_h)
+            settle_calls(a, b, base, lanes, reach, both, bars, prices, whole, c, h, v, w, kink, used, flat_low,
+                         flat_high, work)  # fmt: skip
+        else:
+            step_terms(k, begin, first, last, terms, rights, t)
+            if rights.notice or rights.puts:
+                right_columns(op, k, begin, first, last, terms, rights, a, b, base, s)
+            if local:
+                local_columns(op, k, base, lanes, rights, s, near)
+            settle(a, b, base, lanes, reach, both, rights.notice, rights.puts, rights.doubles, s, t, flat_low,
+                   flat_high, none, work)  # fmt: skip
         if not ends:
             continue
         if local:
             near_used[:] = False
-            settle(0, points - 1, 0, lanes, 0, both, rights.notice, rights.puts, rights.doubles, near, t, flat_low,
-                   flat_high, none, work)  # fmt: skip
+            if plain:
+                settle_calls(0, points - 1, 0, lanes, 0, both, bars, prices, whole, near_c, near_h, near_v, near_w,
+                             near_kink, near_used, flat_low, flat_high, work)  # fmt: skip
+            else:
+                settle(0, points - 1, 0, lanes, 0, both, rights.notice, rights.puts, rights.doubles, near, t, flat_low,
+                       flat_high, none, work)  # fmt: skip
             weighted_sum(0, lanes, local_weights, points, near_v, sums)
             if both:
                 weighted_sum(0, lanes, local_weights, points, near_w, sums_h)
