@@ -9,6 +9,7 @@ import numpy as np
 import numpy.typing as npt
 
 from projector.arithmetic.elementary import exp_array
+from projector.bonds.refunding import new_bond_yield
 from projector.bonds.solving import SECOND_GRID, Jobs, MonthSolver
 from projector.rates.curve import CurveError, CurveReading, log_discount_nodes, monthly_discounts
 
@@ -25,19 +26,11 @@ def refunding_yield(discount: Array, spread: float, months: int) -> float:
     spread    issuer's refunding spread, continuously compounded [1/year]
     months    remaining life, at least 1 [month]
 
-    Coupons fall every six months counted back from the end. The first one is short when the life is no whole number
-    of half-years, and bears interest for its own months only.
-
-    Source: Hull, Options, Futures, and Other Derivatives, chapter on interest rates, for the par yield; simple
-    interest over a short first period as in 31 CFR Part 356 Appendix B (both cited from memory).
+    The yield itself is `bonds.refunding.new_bond_yield`, on the issuer's own curve.
     """
-    first = (months - 1) % 6 + 1
-    tau: npt.NDArray[np.int64] = np.arange(first, months + 1, 6)
-    decay = np.asarray(tau * (-spread / 12.0), dtype=np.float64)
-    own = discount[tau] * exp_array(decay)
-    years = np.full(tau.size, 0.5)
-    years[0] = first / 12.0
-    return float((1.0 - own[-1]) / np.sum(years * own))
+    decay = np.asarray(np.arange(months + 1) * (-spread / 12.0), dtype=np.float64)
+    own = np.asarray(discount[: months + 1] * exp_array(decay), dtype=np.float64)
+    return new_bond_yield(own, months)
 
 
 def shift_where_equal(gap: Callable[[float], float], start: float = 0.0) -> float | None:

@@ -78,7 +78,8 @@ def test_limit_notice_of_different_months_on_one_security_is_refused(small: Any,
 
 
 def test_limit_days_that_are_the_same_months_of_notice_go_together(small: Any) -> None:
-    read_study(small.cell("call_rights", 3, "notice_days", "10").write())
+    study, _ = read_study(small.cell("call_rights", 3, "notice_days", "10").write())
+    assert sorted(study.tables.call_rights["notice_days"]) == [0, 10]
 
 
 def test_limit_doubling_beside_a_month_of_notice_is_refused_by_name(small: Any, only_fault: Any) -> None:
