@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import importlib.util
 import sys
+from collections.abc import Callable
 from pathlib import Path
 from types import ModuleType
 from typing import Any
@@ -29,6 +30,27 @@ _load("small_study", HERE / "study" / "small_study.py")
 _load("fine_grid", HERE / "bonds" / "fine_grid.py")
 _load("valuation_bonds", HERE / "valuation_bonds.py")
 studies = _load("projection_studies", HERE / "projection_studies.py")
+
+
+@pytest.fixture
+def run_command(
+    monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]
+) -> Callable[..., tuple[int, str, str]]:
+    """Runs a command in this process: exit code, output, error output."""
+    from projector import cli
+
+    def run(*arguments: object) -> tuple[int, str, str]:
+        monkeypatch.setattr(sys, "argv", ["projector", *map(str, arguments)])
+        capsys.readouterr()
+        code = 0
+        try:
+            cli.main()
+        except SystemExit as ended:
+            code = int(ended.code or 0)
+        said = capsys.readouterr()
+        return code, said.out, said.err
+
+    return run
 
 
 def _staged(folder: Path) -> Any:

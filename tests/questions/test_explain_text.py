@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import re
-import sys
 import xml.etree.ElementTree as ET
 from collections.abc import Callable
 from dataclasses import replace
@@ -12,7 +11,6 @@ from typing import Any
 
 import pytest
 
-from projector import cli
 from projector.questions.explain import tell
 from projector.questions.records import CallStory
 from projector.report import call_story
@@ -28,21 +26,9 @@ Command = Callable[..., tuple[int, str, str]]
 
 
 @pytest.fixture
-def command(monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]) -> Command:
+def command(run_command: Command) -> Command:
     """Runs a command in this process: exit code, output, error output."""
-
-    def run(*arguments: object) -> tuple[int, str, str]:
-        monkeypatch.setattr(sys, "argv", ["projector", *map(str, arguments)])
-        capsys.readouterr()
-        code = 0
-        try:
-            cli.main()
-        except SystemExit as ended:
-            code = int(ended.code or 0)
-        said = capsys.readouterr()
-        return code, said.out, said.err
-
-    return run
+    return run_command
 
 
 @pytest.fixture(scope="module")

@@ -20,7 +20,6 @@ import pytest
 from projection_studies import hand_study
 
 import projector
-from projector import cli
 from projector.run import limits, publish
 from projector.run.publish import STALE_PREFIX, file_digest
 from projector.run.results import COLUMNS
@@ -38,21 +37,9 @@ class Ended:
 
 
 @pytest.fixture
-def command(monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]) -> Callable[..., Ended]:
+def command(run_command: Callable[..., tuple[int, str, str]]) -> Callable[..., Ended]:
     """Runs a command in this process."""
-
-    def run(*arguments: object) -> Ended:
-        monkeypatch.setattr(sys, "argv", ["projector", *map(str, arguments)])
-        capsys.readouterr()
-        code = 0
-        try:
-            cli.main()
-        except SystemExit as ended:
-            code = int(ended.code or 0)
-        said = capsys.readouterr()
-        return Ended(code, said.out, said.err)
-
-    return run
+    return lambda *arguments: Ended(*run_command(*arguments))
 
 
 def process(*arguments: object, folder: Path) -> subprocess.Popen[str]:

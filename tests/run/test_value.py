@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import json
-import sys
 from collections.abc import Callable
 from datetime import date
 from pathlib import Path
@@ -18,7 +17,6 @@ import QuantLib as ql
 from projection_studies import busy_study, call_right, hand_study
 
 import projector
-from projector import cli
 from projector.bonds.mapped import Terms
 from projector.bonds.yields import from_bond_equivalent
 from projector.rates.curve import CurveError
@@ -41,19 +39,12 @@ def values(busy: Any) -> ValueResults:
 
 
 @pytest.fixture
-def command(monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]) -> Command:
+def command(run_command: Command) -> Command:
     """Runs a command in this process: exit code, output, errors on one line."""
 
     def run(*arguments: object) -> tuple[int, str, str]:
-        monkeypatch.setattr(sys, "argv", ["projector", *map(str, arguments)])
-        capsys.readouterr()
-        code = 0
-        try:
-            cli.main()
-        except SystemExit as ended:
-            code = int(ended.code or 0)
-        said = capsys.readouterr()
-        return code, said.out, " ".join(said.err.replace("│", " ").split())
+        code, out, err = run_command(*arguments)
+        return code, out, " ".join(err.replace("│", " ").split())
 
     return run
 
